@@ -1,0 +1,70 @@
+"""What the case format knows and this version does not do: one line each, taken out when done."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from bemwave.case.model import Case
+from bemwave.errors import NotYetError
+
+
+def refuse_not_yet(case: Case) -> None:
+    """Raise for the first thing in a case that this version cannot do.
+
+    Raises
+    ------
+    NotYetError
+        Names the key, its value and what to write instead.
+    """
+    for key, advice in _not_yet(case):
+        raise NotYetError(f"not yet: {key} comes with a later version; {advice}")
+
+
+def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
+    if case.surface.route == "grid":
+        yield '[surface] route = "grid"', 'write route = "panels"'
+    if any(case.water.current):
+        yield "[water] current", "take it out"
+    for body in case.body:
+        where = f'[[body]] "{body.name}"'
+        if body.path != "fixed":
+            yield f"{where} path other than fixed", 'write path = "fixed"'
+        if body.attitude not in ("fixed", "forced"):
+            yield f'{where} attitude = "{body.attitude}"', 'write attitude = "fixed" or "forced"'
+        if body.thin:
+            yield f"{where} thin", "take it out"
+    yield from _run_not_yet(case)
+    yield from _handoff_not_yet(case)
+    yield from _frames_not_yet(case)
+
+
+def _run_not_yet(case: Case) -> Iterator[tuple[str, str]]:
+    if case.run.history_region is not None:
+        yield "[run] history_region", "take it out: the whole surface is recorded"
+    if case.run.precision != "double":
+        yield '[run] precision = "single"', "take it out"
+
+
+def _handoff_not_yet(case: Case) -> Iterator[tuple[str, str]]:
+    for handoff in case.handoff:
+        where = f'[[handoff]] "{handoff.name}"'
+        if handoff.body is not None:
+            yield f'{where} axes = "{handoff.axes}"', 'write axes = "earth"'
+        if handoff.format != "netcdf":
+            yield f'{where} format = "{handoff.format}"', 'write format = "netcdf"'
+        if handoff.layout != "points":
+            yield f'{where} layout = "{handoff.layout}"', 'write layout = "points"'
+        for switch in ("average", "balance"):
+            if getattr(handoff, switch):
+                yield f"{where} {switch} = true", "take it out"
+
+
+def _frames_not_yet(case: Case) -> Iterator[tuple[str, str]]:
+    if case.frames is None:
+        return
+    for name in case.frames.formats:
+        if name not in ("vtk", "ply"):
+            yield f'[frames] format "{name}"', 'write "vtk" or "ply"'
+    for switch in ("horizontal_displacement", "shading", "displacement_maps", "loop"):
+        if getattr(case.frames, switch):
+            yield f"[frames] {switch}", "take it out"
