@@ -1,0 +1,1 @@
+"""Meshes: files, faults, cutting at the waterline, hull forms, the water surface."""
