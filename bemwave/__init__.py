@@ -27,6 +27,8 @@ if TYPE_CHECKING:
     from bemwave.running import run, steps
     from bemwave.waves import wavenumber
 
+__version__ = "0.1.0"
+
 _homes = {
     "Case": "case",
     "read_case": "case",
@@ -57,14 +59,10 @@ __all__ = [
 
 
 def __getattr__(name: str) -> Any:
-    if name == "__version__":
-        from importlib.metadata import version
-
-        return version("bemwave")
     if name not in _homes:
         raise AttributeError(f"module 'bemwave' has no attribute '{name}'")
     return getattr(import_module(f"bemwave.{_homes[name]}"), name)
 
 
 def __dir__() -> list[str]:
-    return [*__all__, "__version__"]
+    return sorted({*globals(), *__all__})

@@ -165,9 +165,10 @@ class Body(Table):
     def _motion_faults(self) -> list[Fault]:
         owner = f'attitude = "{self.attitude}"'
         needed = ("forced",) if self.attitude == "forced" else ()
-        refused = () if self.attitude == "forced" else ("forced",)
-        if self.attitude != "floating":
-            refused += ("free", "released")
+        refused = {
+            "forced": ("free", "released"),
+            "floating": ("forced",),
+        }.get(self.attitude, ("forced", "free", "released"))
         faults = keys_for(self, owner, needed, refused)
         if self.free is not None and len(set(self.free)) < len(self.free):
             faults.append(Fault(("free",), f"names a mode twice: {', '.join(self.free)}"))

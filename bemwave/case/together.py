@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from typing import TYPE_CHECKING
 
-from bemwave.case.faults import Fault, did_you_mean, shown
+from bemwave.case.faults import Fault, Path, did_you_mean, shown
 
 if TYPE_CHECKING:
     from bemwave.case.model import Case
@@ -31,21 +31,20 @@ def faults_together(case: Case) -> list[Fault]:
 
 
 def _duplicates(case: Case) -> Iterator[Fault]:
-    for table, entries in (("body", case.body), ("gauge", case.gauge), ("handoff", case.handoff)):
-        seen: set[str] = set()
-        for index, entry in enumerate(entries):
-            if entry.name in seen:
-                text = f'got "{entry.name}" a second time, expected a name of its own'
-                yield Fault((table, index, "name"), text)
-            seen.add(entry.name)
-            if table == "handoff" and getattr(entry, "volume_at_start", False):
-                seen.add(f"{entry.name}-start")  # the file of its starting volume
-    sides: set[str] = set()
-    for index, maker in enumerate(case.wavemaker):
-        if maker.side in sides:
-            text = f'got "{maker.side}" a second time, expected one wavemaker a side'
-            yield Fault(("wavemaker", index, "side"), text)
-        sides.add(maker.side)
+    starts = {f"{box.name}-start" for box in case.handoff if box.volume_at_start}
+    yield from _twice("body", "name", [body.name for body in case.body], set())
+    yield from _twice("gauge", "name", [gauge.name for gauge in case.gauge], set())
+    # handoff/NAME-start.nc is the starting volume of NAME
+    yield from _twice("handoff", "name", [box.name for box in case.handoff], starts)
+    yield from _twice("wavemaker", "side", [maker.side for maker in case.wavemaker], set())
+
+
+def _twice(table: str, key: str, words: Sequence[str], taken: set[str]) -> Iterator[Fault]:
+    for index, word in enumerate(words):
+        if word in taken:
+            text = f'got "{word}", which is taken, expected each {table} to have its own {key}'
+            yield Fault((table, index, key), text)
+        taken.add(word)
 
 
 def _waves(case: Case) -> Iterator[Fault]:
@@ -106,9 +105,11 @@ def _places(case: Case) -> Iterator[Fault]:
 def _times(case: Case) -> Iterator[Fault]:
     duration = case.run.duration
     yield from _interval(("run", "record_every"), case.run.record_every, duration, "duration")
-    tables = [(("handoff", i), h.start, h.end, False) for i, h in enumerate(case.handoff)]
+    tables: list[tuple[Path, float, float, bool]] = [
+        (("handoff", i), h.start, h.end, False) for i, h in enumerate(case.handoff)
+    ]
     if case.frames is not None:
-        tables.append((("frames",), case.frames.start, case.frames.end, True))  # type: ignore[arg-type]
+        tables.append((("frames",), case.frames.start, case.frames.end, True))
     for place, start, end, one_instant in tables:
         if end > duration:
             text = f"got {end:g}, expected at most the run's duration ({duration:g})"
@@ -123,9 +124,7 @@ def _times(case: Case) -> Iterator[Fault]:
             yield from _interval(place, handoff.every, span, "end - start")
 
 
-def _interval(
-    path: tuple[str | int, ...], interval: float, span: float, what: str
-) -> Iterator[Fault]:
+def _interval(path: Path, interval: float, span: float, what: str) -> Iterator[Fault]:
     steps = span / interval
     if steps < 0.5 or abs(steps - round(steps)) > 1e-6 * steps:
         nearest = span / max(round(steps), 1)
