@@ -8,7 +8,7 @@ is one real matrix product [cos | sin](time, 2n) @ base(2n, point).
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from bemwave.waves.sea import Sea
 
 Array = NDArray[np.float64]
+Weights = NDArray[np.floating[Any]] | NDArray[np.complexfloating[Any, Any]]
 Base = Literal["surface", "cosh", "sinh"]
 
 BLOCK_BYTES = 2**26  # of one block of a base, and of one block of time factors
@@ -67,21 +68,20 @@ class SeaAtPoints:
 
     def elevation(self, t: ArrayLike) -> Array:
         """Surface elevation in metres at the points' x, y."""
-        return self._field(t, "surface", np.ones((1, self.sea.count)))[0]
+        return self._scalar(t, "surface", np.ones(self.sea.count))
 
     def elevation_rate(self, t: ArrayLike) -> Array:
         """d(elevation)/dt in m/s; equals the vertical velocity at z = 0."""
-        return self._field(t, "surface", -1j * self.sea.frequency[None])[0]
+        return self._scalar(t, "surface", -1j * self.sea.frequency)
 
     def potential(self, t: ArrayLike) -> Array:
         """Velocity potential in m^2/s."""
-        sea = self.sea
-        return self._field(t, "cosh", -1j * (sea.gravity / sea.frequency)[None])[0]
+        return self._scalar(t, "cosh", -1j * self.sea.gravity / self.sea.frequency)
 
     def pressure(self, t: ArrayLike) -> Array:
         """Dynamic pressure -rho phi_t in Pa."""
-        sea = self.sea
-        return self._field(t, "cosh", np.full((1, sea.count), sea.density * sea.gravity))[0]
+        weight = self.sea.density * self.sea.gravity
+        return self._scalar(t, "cosh", np.full(self.sea.count, weight))
 
     def velocity(self, t: ArrayLike) -> Array:
         """Velocity in m/s; the last axis holds u, v, w."""
@@ -100,33 +100,36 @@ class SeaAtPoints:
         weights = np.stack([weight * tanh * east, weight * tanh * north, -1j * weight])
         return np.moveaxis(self._field(t, "surface", weights), 0, -1)
 
-    def _vector(self, t: ArrayLike, weight: NDArray[np.complex128] | Array) -> Array:
+    def _scalar(self, t: ArrayLike, base: Base, weight: ArrayLike) -> Array:
+        field: Array = self._field(t, base, np.asarray(weight)[None])[0]
+        return field
+
+    def _vector(self, t: ArrayLike, weight: Weights) -> Array:
         """Field whose potential is weight/k sin: horizontal on the cosh base, vertical on sinh."""
         along = np.stack([np.cos(self.sea.heading), np.sin(self.sea.heading)]) * weight
         horizontal = self._field(t, "cosh", along)
         vertical = self._field(t, "sinh", -1j * weight[None])
         return np.moveaxis(np.concatenate([horizontal, vertical]), 0, -1)
 
-    def _field(self, t: ArrayLike, base: Base, weights: ArrayLike) -> Array:
+    def _field(self, t: ArrayLike, base: Base, weights: Weights) -> Array:
         """Sum over components for each row of weights (q, n): shape (q, *t.shape, *points)."""
         times = np.asarray(t, dtype=float)
         flat = times.reshape(-1)
-        factors_of = np.asarray(weights)
         if self._on_surface and base == "sinh":
-            factors_of = factors_of * np.tanh(self.sea.wavenumber * self.sea.depth)
+            weights = weights * np.tanh(self.sea.wavenumber * self.sea.depth)
         if self._on_surface:
             base = "surface"
-        rows = len(factors_of)
+        rows = len(weights)
         out = np.empty((rows, flat.size, len(self._points)))
         step = _block(rows * self.sea.count)
         for first in range(0, flat.size, step):
-            factors = self._time_factors(flat[first : first + step], factors_of)
+            factors = self._time_factors(flat[first : first + step], weights)
             for start, stop in self._blocks():
                 product = factors @ self._base(base, start, stop)
                 out[:, first : first + step, start:stop] = product.reshape(rows, -1, stop - start)
         return out.reshape(rows, *times.shape, *self._shape)
 
-    def _time_factors(self, t: Array, weights: NDArray[np.complex128] | Array) -> Array:
+    def _time_factors(self, t: Array, weights: Weights) -> Array:
         """Real and (negative) imaginary part of weight exp(-i w t), shape (q nt, 2n)."""
         turned = weights[:, None, :] * np.exp(-1j * np.outer(t, self.sea.frequency))
         turned = turned.reshape(len(weights) * len(t), self.sea.count)

@@ -43,7 +43,7 @@ def wavenumber(period: ArrayLike, depth: ArrayLike, gravity: float = STANDARD_GR
     Examples
     --------
     >>> round(float(wavenumber(8.0, 20.0)), 8)
-    0.07078301
+    0.07078053
     """
     return wavenumber_of_frequency(2 * np.pi / _positive("period", period), depth, gravity)
 
@@ -71,12 +71,14 @@ def wavenumber_of_frequency(
 
 def wavelength(period: ArrayLike, depth: ArrayLike, gravity: float = STANDARD_GRAVITY) -> Array:
     """Wavelength in metres, 2 pi/k."""
-    return 2 * np.pi / wavenumber(period, depth, gravity)
+    length: Array = 2 * np.pi / wavenumber(period, depth, gravity)
+    return length
 
 
 def phase_speed(period: ArrayLike, depth: ArrayLike, gravity: float = STANDARD_GRAVITY) -> Array:
     """Speed of the crests in m/s, w/k."""
-    return wavelength(period, depth, gravity) / np.asarray(period, dtype=float)
+    speed: Array = wavelength(period, depth, gravity) / np.asarray(period, dtype=float)
+    return speed
 
 
 def group_speed(period: ArrayLike, depth: ArrayLike, gravity: float = STANDARD_GRAVITY) -> Array:
@@ -116,7 +118,9 @@ def irregular_wave_power(
     It is the integral of rho g S Cg with Cg = g/(2w); Te = 2 pi m_-1/m_0 in seconds.
     """
     square = np.asarray(significant_height, dtype=float) ** 2
-    return density * gravity**2 / (64 * np.pi) * square * np.asarray(energy_period, dtype=float)
+    factor = density * gravity**2 / (64 * np.pi)
+    power: Array = factor * square * np.asarray(energy_period, dtype=float)
+    return power
 
 
 def _positive(name: str, value: ArrayLike) -> Array:

@@ -88,8 +88,10 @@ class Sea:
         """Sea of given components (radians inside); the wavenumbers follow from the depth."""
         w = np.atleast_1d(np.asarray(frequency, dtype=float))
         k = wavenumber_of_frequency(w, depth, gravity)
-        parts = [np.broadcast_to(np.asarray(p, dtype=float), w.shape) for p in
-                 (heading, amplitude, phase)]
+        parts = [
+            np.broadcast_to(np.asarray(p, dtype=float), w.shape)
+            for p in (heading, amplitude, phase)
+        ]
         return cls(w, parts[0], parts[1], parts[2], k, depth, density, gravity, share)
 
     @classmethod
@@ -143,8 +145,14 @@ class Sea:
 
     def keep(self, chosen: NDArray[np.bool_]) -> Sea:
         """Sea of the chosen components alone, amplitudes as they are."""
-        names = ("frequency", "heading", "amplitude", "phase", "wavenumber")
-        return replace(self, **{name: getattr(self, name)[chosen] for name in names})
+        return replace(
+            self,
+            frequency=self.frequency[chosen],
+            heading=self.heading[chosen],
+            amplitude=self.amplitude[chosen],
+            phase=self.phase[chosen],
+            wavenumber=self.wavenumber[chosen],
+        )
 
     def __add__(self, other: Sea) -> Sea:
         for name in ("depth", "density", "gravity"):
@@ -153,12 +161,18 @@ class Sea:
                     f"seas of {name} {getattr(self, name):g} and {getattr(other, name):g} were "
                     "added; expected the same water for both"
                 )
-        names = ("frequency", "heading", "amplitude", "phase", "wavenumber")
-        parts = {n: np.concatenate([getattr(self, n), getattr(other, n)]) for n in names}
         energy = np.array([self.moment(0), other.moment(0)])
         shares = np.array([self.share, other.share])
         share = float(energy @ shares / energy.sum()) if energy.any() else 1.0
-        return replace(self, share=share, **parts)
+        return replace(
+            self,
+            frequency=np.concatenate([self.frequency, other.frequency]),
+            heading=np.concatenate([self.heading, other.heading]),
+            amplitude=np.concatenate([self.amplitude, other.amplitude]),
+            phase=np.concatenate([self.phase, other.phase]),
+            wavenumber=np.concatenate([self.wavenumber, other.wavenumber]),
+            share=share,
+        )
 
     def moment(self, order: float) -> float:
         """Moment sum a^2/2 w^order of the components, m^2 (rad/s)^order."""
