@@ -1,0 +1,101 @@
+"""Images of the boundary: flat bed, straight walls, still water seen from outside the sheet.
+
+With images in the Green's function, the bed and straight walls carry no panels; and where the
+water is open the plane outside the meshed sheet, on which the potential is zero, carries none
+either (the half-space kernel: the image in z = 0 with a minus sign).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+Array = npt.NDArray[np.float64]
+
+# Images above and below kept for the half-space over a bed.  Their signs alternate, so a smooth
+# taper of the sum over this many leaves less than 1e-7 of 1/depth; see tests/unit/test_images.py.
+BED_LAYERS = 24
+
+
+@dataclass(frozen=True)
+class Mirror:
+    """A straight wall that is not meshed: the plane where coordinate `axis` equals `position`."""
+
+    axis: str
+    position: float
+
+
+@dataclass(frozen=True)
+class Images:
+    """The maps x -> signs x + shifts, each with its weight; the first is the identity.
+
+    signs, shifts : (k, 3); weights : (k,).
+    """
+
+    signs: Array
+    shifts: Array
+    weights: Array
+
+    @property
+    def curl_weights(self) -> Array:
+        """(k, 3) weights of x, y and z components of curls in the hypersingular form.
+
+        On a mirrored surface n x grad turns into det(D) D (n x grad), D the mirror's diagonal.
+        """
+        turn: Array = np.prod(self.signs, axis=1)[:, None] * self.signs
+        return self.weights[:, None] * turn
+
+
+def make_images(
+    depth: float, half_space: bool, mirrors: tuple[Mirror, ...] = (), span: float = 0.0
+) -> Images:
+    """The images for water of one depth.
+
+    Parameters
+    ----------
+    depth : metres, or math.inf.
+    half_space : whether the plane z = 0 outside the mesh is still water (phi = 0 there).
+    mirrors : walls; two of one axis make a channel, whose images are cut off at a distance.
+    span : largest horizontal extent of the water [m], which sets that distance.
+    """
+    groups = [_axis_group("x", mirrors, span), _axis_group("y", mirrors, span)]
+    groups.append(_vertical_group(depth, half_space))
+    signs, shifts, weights = [], [], []
+    for sx, bx, wx in groups[0]:
+        for sy, by, wy in groups[1]:
+            for sz, bz, wz in groups[2]:
+                signs.append((sx, sy, sz))
+                shifts.append((bx, by, bz))
+                weights.append(wx * wy * wz)
+    return Images(np.array(signs), np.array(shifts), np.array(weights))
+
+
+_Group = list[tuple[float, float, float]]
+
+
+def _axis_group(axis: str, mirrors: tuple[Mirror, ...], span: float) -> _Group:
+    walls = sorted(m.position for m in mirrors if m.axis == axis)
+    if not walls:
+        return [(1.0, 0.0, 1.0)]
+    if len(walls) == 1:
+        return [(1.0, 0.0, 1.0), (-1.0, 2 * walls[0], 1.0)]
+    period = 2 * (walls[1] - walls[0])
+    layers = max(6, math.ceil(4 * span / period))
+    shifts = sorted((m * period for m in range(-layers, layers + 1)), key=abs)
+    return [(s, b if s > 0 else 2 * walls[0] + b, 1.0) for b in shifts for s in (1.0, -1.0)]
+
+
+def _vertical_group(depth: float, half_space: bool) -> _Group:
+    if math.isinf(depth):
+        return [(1.0, 0.0, 1.0), (-1.0, 0.0, -1.0)] if half_space else [(1.0, 0.0, 1.0)]
+    if not half_space:
+        return [(1.0, 0.0, 1.0), (-1.0, -2 * depth, 1.0)]
+    group: _Group = []
+    for m in sorted(range(-BED_LAYERS, BED_LAYERS + 1), key=abs):
+        taper = 0.5 * math.erfc(6.0 * (abs(m) / BED_LAYERS - 0.5))
+        sign = (-1.0) ** m * taper
+        group += [(1.0, 2 * m * depth, sign), (-1.0, 2 * m * depth, -sign)]
+    return group

@@ -1,0 +1,195 @@
+"""Route "panels": mixed symmetric Galerkin boundary elements, dense.
+
+The potential is linear on the whole boundary, the flux uniform per triangle.  With G the Green's
+function with its images, V its single layer, K its double layer, D its hypersingular form
+(through curls, so that only V is ever integrated: Steinbach 2008, Numerical Approximation Methods
+for Elliptic Boundary Value Problems, ch. 6), M the shares of hats in triangles, and normals out of
+the water, the water's energy is the quadratic form
+
+    Q = D + R' V_FF^-1 R,   R = M/2 + K on F      (closed water: the flux on F is an unknown)
+    Q = D                                          (open water: G vanishes on z = 0)
+
+in all nodes, and a given flux q_B on hulls and walls enters through
+
+    N = (K_B - M_B/2)' - R' V_FF^-1 V_FB           (the last term in closed water only).
+
+Hull nodes b follow the surface nodes f from Q_bb phi_b = -Q_bf phi_f - N_b q_B, and what is left
+is the flow map M_F d(eta)/dt = S phi_f + C q_B, with S the Schur complement of Q_bb: symmetric
+and positive semi-definite on any mesh, hence no growing mode and no need of smoothing.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+import numpy.typing as npt
+from scipy import linalg, sparse
+from scipy.sparse.linalg import splu
+
+from bemwave.errors import RunError
+from bemwave.flow.elements import Elements, split
+from bemwave.flow.images import Images, Mirror, make_images
+from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.kernels import panels as kernel
+
+Array = npt.NDArray[np.float64]
+
+
+class PanelFlow:
+    """The flow map of one boundary mesh, factored once.
+
+    Parameters
+    ----------
+    mesh : the whole boundary, part "water" at z = 0; see `geometry.boundary_mesh`.
+    depth : m, or math.inf.
+    closed : whether meshed walls (or mirrors) close the water all round.
+    mirrors : straight walls that are not meshed.
+    progress : called with the share of the work done, 0 to 1.
+
+    Attributes
+    ----------
+    elements : the mesh cut into F and B, nodes renumbered.
+    mass : (free, free) sparse M_F [m^2].
+    surface_matrix : (free, free) S [m].
+    hull_flux_matrix : (free, mB) C [m^2].
+    """
+
+    def __init__(
+        self,
+        mesh: SurfaceMesh,
+        depth: float,
+        *,
+        closed: bool,
+        mirrors: tuple[Mirror, ...] = (),
+        progress: Callable[[float], None] = lambda share: None,
+    ) -> None:
+        self.mesh = mesh
+        self.depth = depth
+        self.closed = closed
+        self.mirrors = mirrors
+        self.elements = split(mesh, closed, mirrors, depth)
+        span = float(np.ptp(mesh.points[:, :2], axis=0).max())
+        self.images = make_images(depth, not closed, mirrors, span)
+        self.mass = self.elements.mass
+        self._solve_mass = splu(self.mass).solve
+        energy, given = _forms(self.elements, self.images, closed, progress)
+        self._eliminate_hull(energy, given)
+        progress(1.0)
+
+    def _eliminate_hull(self, energy: Array, given: Array) -> None:
+        f = self.elements.free
+        factor = _cholesky(energy[f:, f:], "hull")
+        to_surface = linalg.solve_triangular(factor, energy[f:, :f], lower=True)
+        to_flux = linalg.solve_triangular(factor, given[f:], lower=True)
+        self.surface_matrix: Array = energy[:f, :f] - to_surface.T @ to_surface
+        self.hull_flux_matrix: Array = given[:f] - to_surface.T @ to_flux
+        self._hull_from_surface = -linalg.solve_triangular(factor, to_surface, lower=True, trans=1)
+        self._hull_from_flux = -linalg.solve_triangular(factor, to_flux, lower=True, trans=1)
+
+    def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
+        """Vertical velocity of the surface, (free,) or (free, k) [m/s]."""
+        load = self.surface_matrix @ potential + self.hull_flux_matrix @ hull_flux
+        result: Array = self._solve_mass(load)
+        return result
+
+    def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
+        """Potential at hull and wall nodes, (below,) or (below, k) [m^2/s]."""
+        result: Array = self._hull_from_surface @ potential + self._hull_from_flux @ hull_flux
+        return result
+
+    def solve_mass(self, load: Array) -> Array:
+        """M_F^-1 load."""
+        result: Array = self._solve_mass(load)
+        return result
+
+
+def _cholesky(matrix: Array, where: str) -> Array:
+    try:
+        factor: Array = linalg.cholesky(matrix, lower=True) if len(matrix) else matrix
+    except linalg.LinAlgError as fault:
+        raise RunError(
+            f"the influence matrix of the {where} is not positive definite ({fault}); "
+            "its panels are probably folded or far too thin: remesh it"
+        ) from fault
+    return factor
+
+
+def _single_layers(
+    targets: Array, sources: Array, images: Images, weights: Array, same: bool
+) -> Array:
+    """One single layer per column of weights, columns that agree computed once: (k, n, m)."""
+    unique, back = np.unique(weights, axis=1, return_inverse=True)
+    unique = np.ascontiguousarray(unique)
+    if same:
+        layers = kernel.single_layer_self(targets, images.signs, images.shifts, unique)
+    else:
+        layers = kernel.single_layer(targets, sources, images.signs, images.shifts, unique)
+    return _Columns(layers, back.ravel())
+
+
+class _Columns:
+    """Layers by weight column, without copies for columns that agree."""
+
+    def __init__(self, layers: Array, back: npt.NDArray[np.int64]) -> None:
+        self.layers, self.back = layers, back
+
+    def __getitem__(self, k: int) -> Array:
+        layer: Array = self.layers[self.back[k]]
+        return layer
+
+
+def _forms(
+    e: Elements, images: Images, closed: bool, progress: Callable[[float], None]
+) -> tuple[Array, Array]:
+    """Q (nodes, nodes) and N (nodes, mB)."""
+    water, hull = e.water_table, e.hull_table
+    curl_f, curl_b = e.curls(e.water, water), e.curls(e.hull, hull)
+    weights = np.column_stack([images.curl_weights, images.weights])
+    flat = [0, 1, 3] if closed else [0, 1]  # curls on still water are horizontal
+
+    layers = _single_layers(water, water, images, weights[:, flat], same=True)
+    energy = sum(_sandwich(curl_f[a], layers[a], curl_f[a]) for a in (0, 1))
+    factor = _cholesky(layers[2], "water surface") if closed else None
+    del layers
+    progress(0.4)
+    layers = _single_layers(water, hull, images, weights[:, flat], same=False)
+    mixed = sum(_sandwich(curl_f[a], layers[a], curl_b[a]) for a in (0, 1))
+    energy += mixed + mixed.T
+    across = layers[2] if closed else None
+    layers = _single_layers(hull, hull, images, weights[:, :3], same=True)
+    energy += sum(_sandwich(curl_b[a], layers[a], curl_b[a]) for a in (0, 1, 2))
+    del layers
+    progress(0.7)
+    given = (_double_layer(e, hull, images, closed) - 0.5 * e.shares(e.hull, hull)).T
+    if factor is not None and across is not None:
+        share = e.shares(e.water, water)
+        row = _double_layer(e, water, images, closed) + 0.5 * share
+        inner = linalg.solve_triangular(factor, row, lower=True, overwrite_b=True)
+        energy += inner.T @ inner
+        given -= inner.T @ linalg.solve_triangular(factor, across, lower=True)
+    return energy, np.ascontiguousarray(given)
+
+
+def _sandwich(left: sparse.csr_matrix, layer: Array, right: sparse.csr_matrix) -> Array:
+    """left' layer right, dense."""
+    product: Array = left.T @ (right.T @ layer.T).T
+    return product
+
+
+def _double_layer(e: Elements, targets: Array, images: Images, closed: bool) -> Array:
+    """K of all linear potentials, tested on the targets: (len(targets), nodes)."""
+    corners = np.vstack([e.water, e.hull])
+    sources = np.vstack([e.water_table, e.hull_table])
+    layer: Array = kernel.double_layer(
+        targets, sources, corners, len(e.points), images.signs, images.shifts, images.weights
+    )
+    layer = np.asarray(layer[:, : e.nodes])
+    if closed:
+        # a uniform potential in closed water has K = -1/2: give what quadrature and cut-off
+        # images miss to all nodes as the dipole moment of each, which is what is missing
+        missing = -0.5 * targets[:, 28] - layer.sum(axis=1)
+        upward = np.zeros(e.nodes)
+        np.add.at(upward, corners.ravel(), np.repeat(sources[:, 28] * sources[:, 11] / 3.0, 3))
+        layer += np.outer(missing, upward / upward.sum())
+    return layer
