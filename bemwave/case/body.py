@@ -55,11 +55,11 @@ SixNotNegative = Annotated[
 
 _shape_keys = {
     "mesh": {"mesh", "scale", "up", "without", "draught", "trim", "heel"},
-    "wigley": {"length", "beam", "draught", "thin", "trim", "heel"},
-    "box": {"length", "beam", "draught", "trim", "heel"},
-    "cylinder": {"radius", "draught", "trim", "heel"},
+    "wigley": {"length", "beam", "draught", "thin"},
+    "box": {"length", "beam", "draught"},
+    "cylinder": {"radius", "draught"},
     "sphere": {"radius", "centre_depth"},
-    "columns": {"spacing", "column_radius", "pontoon", "draught", "trim", "heel"},
+    "columns": {"spacing", "column_radius", "pontoon", "draught"},
 }
 _needed = {
     "mesh": (),

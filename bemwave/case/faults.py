@@ -47,16 +47,20 @@ def spell(path: Path, table: dict[str, Any]) -> str:
     if not path:
         return ""
     head, rest = str(path[0]), path[1:]
+    entries = table.get(head)
     if rest and isinstance(rest[0], int):
-        entries = table.get(head)
         words = f"[[{head}]]{_which(entries, rest[0])}"
         rest = rest[1:]
-    elif not rest and not isinstance(table.get(head), dict | list):
-        return head
+    elif _is_tables(entries):
+        words = f"[[{head}]]"
     else:
-        words = f"[{head}]"
+        words = f"[{head}]" if rest or isinstance(entries, dict | BaseModel) else head
     keys = ".".join(str(part) for part in rest)
     return f"{words} {keys}" if keys else words
+
+
+def _is_tables(value: object) -> bool:
+    return isinstance(value, list | tuple) and all(isinstance(v, dict | BaseModel) for v in value)
 
 
 def _which(entries: object, index: int) -> str:
