@@ -27,7 +27,19 @@ def _above_0(context: click.Context, option: click.Parameter, value: float | Non
     return value
 
 
-@click.group(invoke_without_command=True)
+class _Interrupted(Exception):
+    """Ctrl-C, kept from click, which would print an empty line before our message."""
+
+
+class _Commands(click.Group):
+    def invoke(self, context: click.Context) -> Any:
+        try:
+            return super().invoke(context)
+        except KeyboardInterrupt:
+            raise _Interrupted from None
+
+
+@click.group(cls=_Commands, invoke_without_command=True)
 @click.version_option(__version__, prog_name="bemwave")
 @click.pass_context
 def commands(context: click.Context) -> None:
@@ -131,8 +143,8 @@ def status_of(arguments: Sequence[str] | None = None) -> int:
         return _fail(f"{error.format_message().rstrip('.')}; see {path} --help", 2)
     except BemwaveError as error:
         return _fail(str(error), error.exit_code)
-    except (KeyboardInterrupt, click.Abort):
-        return _fail("interrupted", 130)
+    except _Interrupted:
+        return _fail("interrupted; a run goes on with bemwave run CASE --resume", 130)
     except MemoryError:
         return _fail("the machine has no memory left; see bemwave plan for what a case needs", 3)
     except OSError as error:
