@@ -8,6 +8,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from bemwave.errors import InputError
+from bemwave.geometry.hull import Hull
 from bemwave.geometry.outline import SIDES
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.geometry.surface_mesh import BoolArray, FloatArray, IntArray, SurfaceMesh, joined
@@ -18,7 +19,7 @@ RIM = "rim"
 
 def boundary_mesh(
     water: SurfaceMesh,
-    hulls: Sequence[SurfaceMesh] = (),
+    hulls: Sequence[Hull] = (),
     walls: Sequence[str] = (),
     depth: float = math.inf,
 ) -> SurfaceMesh:
@@ -31,9 +32,9 @@ def boundary_mesh(
     ----------
     water : SurfaceMesh
         Part "water", as `water_surface` makes it.
-    hulls : sequence of SurfaceMesh
-        Wetted hulls in place, one part each, named by the body; those that cut the surface have
-        their waterlines in `water`.
+    hulls : sequence of Hull
+        One part each, named by the body; those that cut the surface have their waterlines in
+        `water`.
     walls : sequence of str
         Sides to mesh: "x_min", "x_max", "y_min", "y_max", or "rim" for the whole rim (round
         water). Their parts are called "wall_x_min", ..., "wall_rim".
@@ -54,10 +55,10 @@ def boundary_mesh(
     """
     mesh = water
     for hull in hulls:
-        mesh, missing = attached(mesh, hull, hull.points[:, 2] == 0.0)
+        mesh, missing = attached(mesh, hull.mesh, hull.mesh.points[:, 2] == 0.0)
         if missing:
             raise InputError(
-                f"{missing} waterline points of {' '.join(hull.part_names)} are not in the water "
+                f"{missing} waterline points of {hull.name} are not in the water "
                 "mesh: the water mesh must have been made for this hull in this place; "
                 "leave out [surface] mesh to have it made, or make it again"
             )
@@ -76,7 +77,7 @@ def outer_rim(water: SurfaceMesh, mesh: SurfaceMesh) -> IntArray:
     hull_edges = {tuple(edge) for edge in boundary_edges(others).tolist()}
     # hull and water run along a common waterline in opposite directions
     free = [(b, a) not in hull_edges for a, b in edges.tolist()]
-    return edges[np.array(free, dtype=bool)]
+    return np.asarray(edges[np.array(free, dtype=bool)])
 
 
 def _on_side(water: SurfaceMesh, rim: IntArray, side: str) -> BoolArray:
@@ -119,4 +120,4 @@ def wall_layers(depth: float, first: float, growth: float = 1.15) -> FloatArray:
     """
     count = max(1, math.ceil(math.log1p(depth / first * (growth - 1.0)) / math.log(growth)))
     heights = growth ** np.arange(count)
-    return depth * np.concatenate([[0.0], np.cumsum(heights)]) / heights.sum()
+    return np.asarray(depth * np.concatenate([[0.0], np.cumsum(heights)]) / heights.sum())

@@ -111,8 +111,8 @@ def _waterplane(
     if area <= 0.0:
         return area, np.full(2, np.nan), 0.0, 0.0, 0.0
     centre = np.array([np.sum((xa + xb) * cross), np.sum((ya + yb) * cross)]) / (6.0 * area)
-    xx = float(np.sum((xa * xa + xa * xb + xb * xb) * cross)) / 12.0 - area * centre[0] ** 2
-    yy = float(np.sum((ya * ya + ya * yb + yb * yb) * cross)) / 12.0 - area * centre[1] ** 2
+    xx = np.sum((xa * xa + xa * xb + xb * xb) * cross) / 12.0 - area * centre[0] ** 2
+    yy = np.sum((ya * ya + ya * yb + yb * yb) * cross) / 12.0 - area * centre[1] ** 2
     mixed = xa * yb + 2.0 * xa * ya + 2.0 * xb * yb + xb * ya
-    xy = float(np.sum(mixed * cross)) / 24.0 - area * centre[0] * centre[1]
-    return area, origin + centre, xx, yy, xy
+    xy = np.sum(mixed * cross) / 24.0 - area * centre[0] * centre[1]
+    return area, origin + centre, float(xx), float(yy), float(xy)

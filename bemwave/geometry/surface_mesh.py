@@ -132,7 +132,7 @@ class SurfaceMesh:
 def joined(meshes: Sequence[SurfaceMesh]) -> SurfaceMesh:
     """Put meshes side by side in one; points are not merged, parts of equal name are."""
     names = tuple(dict.fromkeys(name for mesh in meshes for name in mesh.part_names))
-    starts = np.cumsum([0, *(len(mesh.points) for mesh in meshes)])
+    starts = np.cumsum([0, *(len(mesh.points) for mesh in meshes[:-1])])
     parts = [
         np.array([names.index(name) for name in mesh.part_names], dtype=np.int64)[mesh.part]
         for mesh in meshes
@@ -140,7 +140,7 @@ def joined(meshes: Sequence[SurfaceMesh]) -> SurfaceMesh:
     return SurfaceMesh(
         np.concatenate([mesh.points for mesh in meshes]),
         np.concatenate(
-            [mesh.triangles + start for mesh, start in zip(meshes, starts, strict=False)]
+            [mesh.triangles + start for mesh, start in zip(meshes, starts, strict=True)]
         ),
         np.concatenate(parts),
         names,

@@ -16,7 +16,7 @@ def directed_edges(triangles: IntArray) -> IntArray:
 
 
 def edge_uses(triangles: IntArray) -> tuple[IntArray, IntArray, IntArray]:
-    """Undirected edges (e, 2), how often each is used (e,), and the edge of each directed one (3 m,)."""
+    """Undirected edges (e, 2), uses of each (e,), and which of them each directed one is (3 m,)."""
     edges, which, count = np.unique(
         np.sort(directed_edges(triangles), axis=1), axis=0, return_inverse=True, return_counts=True
     )
@@ -26,7 +26,7 @@ def edge_uses(triangles: IntArray) -> tuple[IntArray, IntArray, IntArray]:
 def boundary_edges(triangles: IntArray) -> IntArray:
     """Directed edges that only one triangle uses, (b, 2)."""
     _, count, which = edge_uses(triangles)
-    return directed_edges(triangles)[count[which] == 1]
+    return np.asarray(directed_edges(triangles)[count[which] == 1])
 
 
 def boundary_loops(triangles: IntArray) -> list[IntArray]:
@@ -56,23 +56,21 @@ def boundary_loops(triangles: IntArray) -> list[IntArray]:
     return loops
 
 
-def pieces(triangles: IntArray, point_count: int) -> IntArray:
-    """Label of the connected piece each triangle belongs to, (m,), largest piece first.
+def pieces(mesh: SurfaceMesh) -> IntArray:
+    """Number of the connected piece each triangle belongs to, (m,), the largest area first.
 
-    Connected means sharing points. Size is the number of triangles; ties go by numbering.
+    Connected means sharing points: weld first.
     """
     from scipy.sparse import coo_array
     from scipy.sparse.csgraph import connected_components
 
-    edges = directed_edges(triangles)
-    graph = coo_array((np.ones(len(edges)), edges.T), shape=(point_count, point_count))
+    count = len(mesh.points)
+    edges = directed_edges(mesh.triangles)
+    graph = coo_array((np.ones(len(edges)), edges.T), shape=(count, count))
     _, label = connected_components(graph, directed=False)
-    _, first, piece, count = np.unique(
-        label[triangles[:, 0]], return_index=True, return_inverse=True, return_counts=True
-    )
-    rank = np.empty(len(count), dtype=np.int64)
-    rank[np.lexsort((first, -count))] = np.arange(len(count))
-    return rank[piece]
+    _, piece = np.unique(label[mesh.triangles[:, 0]], return_inverse=True)
+    rank = np.argsort(np.argsort(-np.bincount(piece, weights=mesh.areas), kind="stable"))
+    return np.asarray(rank[piece], dtype=np.int64)
 
 
 def extent(points: FloatArray) -> float:
