@@ -205,18 +205,25 @@ class Case(Table):
     def _fill_handoffs(
         cls, handoffs: tuple[Handoff, ...], info: ValidationInfo
     ) -> tuple[Handoff, ...]:
+        run, surface = info.data.get("run"), info.data.get("surface")
+        if run is None or surface is None:
+            return handoffs  # those are at fault and told, so there is nothing to fill in from
+        fine = surface.fine_spacing or surface.spacing / 2
         filled = []
         for number, handoff in enumerate(handoffs, 1):
-            defaults = {"name": f"handoff{number}", **_from_the_case(info)}
-            if "fine" in defaults:
-                defaults["spacing"] = (defaults["fine"], defaults["fine"])
+            defaults = {"name": f"handoff{number}", "end": run.duration}
+            if handoff.box is not None:
+                defaults["spacing"] = (fine, fine)
             filled.append(_filled(handoff, defaults))
         return tuple(filled)
 
     @field_validator("frames")
     @classmethod
     def _fill_frames(cls, frames: Frames | None, info: ValidationInfo) -> Frames | None:
-        return None if frames is None else _filled(frames, _from_the_case(info))
+        run, surface = info.data.get("run"), info.data.get("surface")
+        if frames is None or run is None or surface is None:
+            return frames
+        return _filled(frames, {"end": run.duration, "spacing": surface.spacing})
 
     @model_validator(mode="after")
     def _check(self) -> Self:
@@ -224,18 +231,6 @@ class Case(Table):
         return self
 
 
-def _from_the_case(info: ValidationInfo) -> dict[str, Any]:
-    """Defaults that come from other tables, as far as those are sound."""
-    defaults: dict[str, Any] = {}
-    if "run" in info.data:
-        defaults["end"] = info.data["run"].duration
-    if "surface" in info.data:
-        surface = info.data["surface"]
-        defaults["spacing"] = surface.spacing
-        defaults["fine"] = surface.fine_spacing or surface.spacing / 2
-    return defaults
-
-
 def _filled(table: _Filled, defaults: dict[str, Any]) -> _Filled:
-    missing = set(type(table).model_fields) - table.model_fields_set
-    return table.model_copy(update={k: v for k, v in defaults.items() if k in missing})
+    missing = defaults.keys() - table.model_fields_set
+    return table.model_copy(update={key: defaults[key] for key in missing})
