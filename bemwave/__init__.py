@@ -4,7 +4,7 @@
 >>> case = bemwave.read_case("case.toml")  # doctest: +SKIP
 >>> run = bemwave.run(case, "out")  # doctest: +SKIP
 >>> round(float(bemwave.wavenumber(8.0, 40.0)), 6)  # period s, depth m; 1/m
-0.063347
+0.063677
 
 The names are imported when first used, so that `import bemwave` is quick and needs no library.
 """

@@ -45,19 +45,17 @@ def read_case(path: str | os.PathLike[str]) -> Case:
 
 
 def _text_of(path: Path) -> str:
-    if path.is_dir():
-        raise InputError(f"{path}: got a folder, expected a case file; try {path / 'case.toml'}")
     try:
-        size = path.stat().st_size
-        if size > LARGEST:
-            raise InputError(
-                f"{path}: got a file of {size / 1e6:.0f} MB, expected a case file (TOML text of at "
-                f"most {LARGEST / 1e6:.0f} MB)"
-            )
-        return path.read_bytes().decode("utf-8-sig").replace("\r\n", "\n")
+        with path.open("rb") as file:
+            content = file.read(LARGEST + 1)
+        text = content.decode("utf-8-sig").replace("\r\n", "\n")
     except FileNotFoundError:
         raise InputError(
             f"{path}: there is no such file; write one with: bemwave new FOLDER"
+        ) from None
+    except IsADirectoryError:
+        raise InputError(
+            f"{path}: got a folder, expected a case file; try {path / 'case.toml'}"
         ) from None
     except UnicodeDecodeError as error:
         raise InputError(
@@ -65,6 +63,10 @@ def _text_of(path: Path) -> str:
         ) from None
     except OSError as error:
         raise InputError(f"{path}: cannot be read: {error.strerror}") from None
+    if len(content) > LARGEST:
+        limit = f"TOML text of at most {LARGEST / 1e6:.0f} MB"
+        raise InputError(f"{path}: got a file that is too large, expected a case file ({limit})")
+    return text
 
 
 def _parse(text: str, path: Path) -> dict[str, Any]:
