@@ -48,7 +48,10 @@ def _text_of(path: Path) -> str:
     try:
         with path.open("rb") as file:
             content = file.read(LARGEST + 1)
-        text = content.decode("utf-8-sig").replace("\r\n", "\n")
+        if len(content) > LARGEST:
+            limit = f"TOML text of at most {LARGEST / 1e6:.0f} MB"
+            raise InputError(f"{path}: got a file too large, expected a case file ({limit})")
+        return content.decode("utf-8-sig").replace("\r\n", "\n")
     except FileNotFoundError:
         raise InputError(
             f"{path}: there is no such file; write one with: bemwave new FOLDER"
@@ -63,10 +66,6 @@ def _text_of(path: Path) -> str:
         ) from None
     except OSError as error:
         raise InputError(f"{path}: cannot be read: {error.strerror}") from None
-    if len(content) > LARGEST:
-        limit = f"TOML text of at most {LARGEST / 1e6:.0f} MB"
-        raise InputError(f"{path}: got a file that is too large, expected a case file ({limit})")
-    return text
 
 
 def _parse(text: str, path: Path) -> dict[str, Any]:

@@ -12,20 +12,23 @@ from bemwave.case.values import (
     FileName,
     Flag,
     Focus,
+    NotNegative,
     Number,
     Point,
     Positive,
     Side,
     Table,
-    Whole,
     keys_for,
 )
 
 SpectrumName = Literal["jonswap", "pierson-moskowitz", "tma"]
-_above_0 = Field(strict=True, gt=0, allow_inf_nan=False)
+_from_0 = Field(strict=True, ge=0, allow_inf_nan=False)
 Band = Annotated[
-    tuple[Annotated[float, _above_0], Annotated[float, _above_0]],
-    expecting("two numbers above 0, [lowest, highest], in peak frequencies"),
+    tuple[Annotated[float, _from_0], Annotated[float, _from_0]],
+    expecting("two numbers of 0 or more, [lowest, highest], in peak frequencies"),
+]
+Seed = Annotated[
+    int, Field(strict=True, ge=0, lt=2**64), expecting("a whole number from 0 to 2^64 - 1")
 ]
 
 _drawn = ("spreading", "components", "seed", "random_amplitudes")
@@ -38,7 +41,7 @@ _keys = {
         "height", "period", "heading", "band", "peakedness", "spectrum", "focus",
         "spreading", "components", "seed",
     },
-    "table": {"file", "height", "heading", *_drawn},
+    "table": {"file", "height", "period", "heading", "band", *_drawn},
 }  # fmt: skip
 _needed = {"table": ("file",), "group": ("height", "period", "spectrum", "focus")}
 
@@ -48,7 +51,7 @@ class Wave(Table):
 
     `height` is crest to trough for a regular wave, significant for a spectrum, the crest's for
     a group; `period` is the peak's for a spectrum. Angles in degrees. Which keys go with which
-    `kind` is checked; `height` and `period` are None only for a table.
+    `kind` is checked; only a table may go without `height` and `period`.
     """
 
     kind: Literal["regular", "jonswap", "pierson-moskowitz", "tma", "group", "table"]
@@ -57,9 +60,9 @@ class Wave(Table):
     heading: Number = 0.0
     phase: Number = 0.0
     peakedness: Positive = 3.3
-    spreading: Positive | None = None
+    spreading: NotNegative | None = None
     components: Count = 1000
-    seed: Whole = 1
+    seed: Seed = 1
     band: Band | None = None
     random_amplitudes: Flag = False
     spectrum: SpectrumName | None = None

@@ -53,9 +53,6 @@ def _waves(case: Case) -> Iterator[Fault]:
         text = "incident waves cannot enter a basin with walls all round; open an edge, or make "
         yield Fault(("waves",), text + "the waves with a [[wavemaker]], and take [[waves]] out")
     for index, wave in enumerate(case.waves):
-        if wave.kind == "tma" and math.isinf(case.water.depth):
-            text = 'got "tma", which is for a finite depth, expected "jonswap" in deep water'
-            yield Fault(("waves", index, "kind"), text)
         if wave.height is None or wave.period is None:
             continue
         longest = case.water.gravity * wave.period**2 / (2 * math.pi)

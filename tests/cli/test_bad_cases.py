@@ -269,7 +269,7 @@ def test_a_bad_case_is_told_in_one_sentence_and_nothing_is_written(
 UNREADABLE = {
     "no such file": (None, "there is no such file; write one with: bemwave new FOLDER"),
     "not UTF-8": (b'title = "\xff"', "byte 9 is not UTF-8, expected a case file"),
-    "too large": (b"#" * 10_000_001, "got a file that is too large, expected a case file"),
+    "too large": (b"#" * 10_000_001, "got a file too large, expected a case file"),
     "a mesh": (b"solid hull\n", "line 1: not TOML: Expected '=' after a key"),
     "one line for many": (
         b'[[wavemaker]]\nside = "x_min" ; kind = "piston"\n',
