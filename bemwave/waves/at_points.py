@@ -122,10 +122,10 @@ class SeaAtPoints:
         rows = len(weights)
         out = np.empty((rows, flat.size, len(self._points)))
         step = _block(rows * self.sea.count)
-        for first in range(0, flat.size, step):
-            factors = self._time_factors(flat[first : first + step], weights)
-            for start, stop in self._blocks():
-                product = factors @ self._base(base, start, stop)
+        for start, stop in self._blocks():
+            matrix = self._base(base, start, stop)
+            for first in range(0, flat.size, step):
+                product = self._time_factors(flat[first : first + step], weights) @ matrix
                 out[:, first : first + step, start:stop] = product.reshape(rows, -1, stop - start)
         return out.reshape(rows, *times.shape, *self._shape)
 

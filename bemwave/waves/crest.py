@@ -36,8 +36,8 @@ def is_wet(z: ArrayLike, elevation: ArrayLike) -> NDArray[np.bool_]:
 def stretched_z(z: ArrayLike, elevation: ArrayLike, depth: float) -> Array:
     """Height (m) at which Wheeler's rule evaluates a point at z under the given elevation."""
     surface = np.asarray(elevation, dtype=float)
-    below: Array = np.asarray(z, dtype=float) - surface
-    return below if np.isinf(depth) else below / (1 + surface / depth)
+    stretched: Array = (np.asarray(z, dtype=float) - surface) / (1 + surface / depth)
+    return stretched
 
 
 def extrapolated(velocity: Array, slope: Array, z: ArrayLike) -> Array:

@@ -121,10 +121,12 @@ def tabled_headings(
     fine = np.concatenate([np.linspace(a, b, 32, endpoint=False) for a, b in pairwise(theta)])
     fine = np.append(fine, theta[-1])
     rows = np.array([np.interp(fine, theta, values) for values in grid])
+    # jitter may put a frequency just outside the energy of its stratum: it needs a heading too
+    rows += 1e-9 * rows.mean(axis=0)
 
     def headings(at: Array, fraction: Array) -> Array:
         low = np.clip(np.searchsorted(w, at) - 1, 0, len(w) - 2)
-        part = (at - w[low]) / (w[low + 1] - w[low])
+        part = np.clip((at - w[low]) / (w[low + 1] - w[low]), 0.0, 1.0)
         found = np.empty(len(at))
         for i, (j, p) in enumerate(zip(low, part, strict=True)):
             values = (1 - p) * rows[j] + p * rows[j + 1]
