@@ -244,4 +244,9 @@ def _sea_of_plane_waves(
     if band is None:
         return sea
     kept = sea.keep((w >= band[0] * peak) & (w <= band[1] * peak))
+    if not kept.amplitude.any():
+        raise InputError(
+            f"the band {band[0]:g} to {band[1]:g} peak frequencies holds no wave of the table "
+            f"{path}; expected one that does: widen `band`"
+        )
     return replace(kept, share=kept.moment(0) / sea.moment(0))

@@ -124,6 +124,8 @@ def test_table_of_plane_waves(tmp_path):
     kept = make_sea("table", file=path, band=(0.5, 1.2), **WATER)
     assert kept.count == 1
     assert kept.share == pytest.approx(1.5**2 / (1.5**2 + 0.5**2))
+    with pytest.raises(InputError, match=r"band 3 to 4 .* holds no wave of the table .*sea\.csv"):
+        make_sea("table", file=path, band=(3.0, 4.0), **WATER)
     twice = make_sea("table", file=path, height=2 * sea.significant_height, **WATER)
     assert twice.amplitude == pytest.approx([3.0, 1.0])
 
