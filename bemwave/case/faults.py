@@ -146,7 +146,7 @@ def _translate(entry: ErrorDetails, root: type[BaseModel]) -> list[Fault]:
 
 
 def _missing(path: Path, root: type[BaseModel]) -> str:
-    field = _model_at(root, path[:-1]).model_fields[str(path[-1])]
+    field = model_at(root, path[:-1]).model_fields[str(path[-1])]
     expected = _expected(field)
     if len(path) == 1 and expected == "a table":
         model = _model_of(field.annotation)
@@ -170,7 +170,7 @@ def _either(words: list[str]) -> str:
 
 
 def _unknown(path: Path, root: type[BaseModel]) -> str:
-    model = _model_at(root, path[:-1])
+    model = model_at(root, path[:-1])
     near = did_you_mean(path[-1], model.model_fields)
     if near is None:
         return f"unknown key; the keys here are {', '.join(model.model_fields)}"
@@ -203,7 +203,8 @@ def _no_table(path: Path, given: object) -> str:
     return f"got {shown(given)}, expected a table"
 
 
-def _model_at(root: type[BaseModel], path: Path) -> type[BaseModel]:
+def model_at(root: type[BaseModel], path: Path) -> type[BaseModel]:
+    """The model of the table at a path of keys and indices."""
     model = root
     for part in path:
         if isinstance(part, str):

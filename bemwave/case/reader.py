@@ -75,6 +75,8 @@ def _parse(text: str, path: Path) -> dict[str, Any]:
         what, _, place = str(error).rpartition(" (at ")
         where = place.rstrip(")").split(",")[0] if what else "its end"
         raise InputError(f"{path} {where}: not TOML: {what or error}") from None
+    except RecursionError:
+        raise InputError(f"{path}: lists or tables nested too deeply for a case file") from None
 
 
 def _with_lines(error: CaseFaults, text: str, tables: dict[str, Any], path: Path) -> str:

@@ -276,6 +276,7 @@ UNREADABLE = {
         "line 2: not TOML: Expected newline or end of document after a statement",
     ),
     "key twice": (b"[water]\ndepth = 1\ndepth = 2\n", "line 3: not TOML: Cannot overwrite a value"),
+    "nested": (b"title = " + b"[" * 9999 + b"]" * 9999, "nested too deeply for a case file"),
     "broken off": (b'[water]\ntitle = "', "end of document: not TOML: Unterminated string"),
 }
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import inspect
 import math
 from pathlib import Path
 from typing import Any
@@ -9,7 +10,9 @@ from typing import Any
 import pytest
 
 from bemwave.case import Case, read_case
+from bemwave.case.sea import Wave
 from bemwave.errors import InputError
+from bemwave.waves import make_sea
 
 
 def tables(**changes: Any) -> dict[str, Any]:
@@ -136,3 +139,7 @@ def test_a_case_that_was_read_knows_its_folder_and_text(tmp_path: Path) -> None:
 def test_a_body_may_not_be_called_as_the_water_and_its_walls(name: str) -> None:
     with pytest.raises(InputError, match="a name kept for the water"):
         Case(**tables(body=[{"name": name, "form": "sphere", "radius": 1.0}]))
+
+
+def test_the_keys_of_a_wave_are_those_a_sea_is_made_from() -> None:
+    assert set(Wave.model_fields) <= set(inspect.signature(make_sea).parameters)
