@@ -15,7 +15,7 @@ import numpy as np
 
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.surface_mesh import SurfaceMesh
-from bemwave.handoff.box import BOX_FACES, Array, Box, PointSet
+from bemwave.handoff.box import BOX_FACES, Array, Box, PointSet, turn
 from bemwave.handoff.fields import Flow, on_surface
 from bemwave.handoff.plan import Waterplane, water_quadrature, waterplane_quadrature
 from bemwave.handoff.sampler import Instant
@@ -88,7 +88,7 @@ class Closure:
         ----------
         instant, state : the sampled field and the solved state it came from.
         bodies : (waterplanes, 6), optional
-            Velocity of each waterplane's body along and about earth axes, m/s and rad/s, at its
+            Velocity of each waterplane's body along and about its own axes, m/s and rad/s, at the
             reference; None where all are at rest.
         """
         flux = self._flux(instant.first_order)
@@ -159,7 +159,7 @@ class _WaterplaneRate:
     def __init__(self, sea: Sea, box: Box, plane: Waterplane) -> None:
         points, self._weights = waterplane_quadrature(box, plane)
         self._sea = sea.at(on_surface(points))
-        arm = points - np.asarray(plane.reference)
+        arm = (points - plane.reference) @ turn(plane.heading)
         ones = np.ones(len(points))
         # vertical velocity = heave + roll y - pitch x
         self._moments = self._weights @ np.column_stack([ones, arm[:, 1], -arm[:, 0]])

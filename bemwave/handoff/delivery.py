@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -13,6 +13,8 @@ from numpy.typing import NDArray
 from bemwave.case import Case
 from bemwave.case.output import Handoff as Entry
 from bemwave.flow.state import SurfaceState
+from bemwave.geometry.hull import Hull
+from bemwave.geometry.inside import inside
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff.box import Array, Box, PointSet, box_points, box_volume
 from bemwave.handoff.closure import Closure
@@ -37,18 +39,23 @@ class Scene:
     sea : the incident waves, mirrored ones included.
     flow : samplers of the solved part; None where nothing is solved.
     water : the water's surface as it is solved.
-    waterplanes : one for each body that pierces the surface.
-    solid : tells which points (n, 3) lie inside hulls; None without bodies.
+    hulls : the bodies, at rest.
     shortest_period, peak_period : s, of what the field holds.
     """
 
     sea: Sea
     flow: Flow | None
     water: SurfaceMesh
-    waterplanes: Sequence[Waterplane] = ()
-    solid: Callable[[Array], NDArray[np.bool_]] | None = None
+    hulls: Sequence[Hull] = ()
     shortest_period: float = math.inf
     peak_period: float = math.inf
+
+    def solid(self, points: Array) -> NDArray[np.bool_]:
+        """Which points (n, 3) lie inside hulls, or straight over their waterplanes."""
+        within = np.zeros(len(points), dtype=bool)
+        for hull in self.hulls:
+            within |= inside(hull.mesh, points)
+        return within
 
 
 class Handoff:
@@ -99,8 +106,8 @@ class Handoff:
     def write(self, state: SurfaceState, bodies: Array | None = None) -> None:
         """Write the instant of a solved state.
 
-        `bodies` (waterplanes, 6): velocity of each waterplane's body along and about earth axes,
-        m/s and rad/s; None where all are at rest.
+        `bodies` (hulls, 6): velocity of each hull along and about its own axes, at its centre of
+        mass, m/s and rad/s; None where all are at rest.
         """
         if self.count == 0 and self._entry.volume_at_start and self._box is not None:
             self._write_volume(self._box, state)
@@ -124,13 +131,13 @@ class Handoff:
             self._entry.crest,
             self._entry.field,
             scene.solid,
-            scene.waterplanes,
         )
 
     def _balances(self, box: Box, points: PointSet) -> tuple[Closure, CellDivergence]:
         scene = self._scene
         flow = None if self._entry.field == "incident" else scene.flow
-        closure = Closure(box, points, scene.sea, flow, scene.water, scene.waterplanes)
+        waterplanes = [Waterplane.of(hull) for hull in scene.hulls]
+        closure = Closure(box, points, scene.sea, flow, scene.water, waterplanes)
         return closure, CellDivergence(box, scene.sea, flow, scene.solid)
 
     def _open(self, name: str, points: PointSet, keep: int | None, balanced: bool) -> HandoffFile:

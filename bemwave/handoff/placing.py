@@ -8,14 +8,8 @@ from typing import Literal
 
 import numpy as np
 
+from bemwave.geometry.pose import up_rotation
 from bemwave.handoff.box import Array, turn
-
-# rows: which of (x, y, z), z up, become the new axes; right-handed, the named axis up
-_UP = {
-    "z": np.eye(3),
-    "y": np.array([[1.0, 0, 0], [0, 0, 1], [0, -1, 0]]),
-    "x": np.array([[0.0, 0, 1], [1, 0, 0], [0, 1, 0]]),
-}
 
 
 @dataclass(frozen=True)
@@ -26,7 +20,7 @@ class Axes:
     ----------
     origin : m, on earth.
     heading : rad, of the first horizontal axis from earth's x.
-    up : the axis that points up; "y" turns (x, y, z) into (x, z, -y), "x" into (z, x, y).
+    up : the axis that points up; "y" turns (x, y, z) into (x, z, -y), "x" into (z, y, -x).
     time_zero : s of the run at which the file's clock starts.
     """
 
@@ -42,12 +36,12 @@ class Axes:
     def vectors(self, earth: Array) -> Array:
         """Components along these axes of vectors on earth, (..., 3)."""
         plan = earth[..., :2] @ turn(self.heading)
-        turned: Array = np.concatenate([plan, earth[..., 2:]], axis=-1) @ _UP[self.up].T
+        turned: Array = np.concatenate([plan, earth[..., 2:]], axis=-1) @ up_rotation(self.up)
         return turned
 
     def earth_points(self, points: Array) -> Array:
         """Coordinates on earth of points in these axes, (..., 3), m."""
-        level = points @ _UP[self.up]
+        level = points @ up_rotation(self.up).T
         plan = level[..., :2] @ turn(self.heading).T
         turned: Array = np.concatenate([plan, level[..., 2:]], axis=-1)
         turned += np.asarray(self.origin)

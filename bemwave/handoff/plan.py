@@ -6,33 +6,30 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
+from bemwave.geometry.hull import Hull
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff.box import Array, Box
 
 
 @dataclass(frozen=True)
 class Waterplane:
-    """The waterplane of a body.
+    """The waterplane of a body; none for one under water.
 
     loops : closed lines of points (n, 2) on earth, m, counter-clockwise; holes clockwise.
-    reference : (x, y) of the point the body's velocities are of, m.
+    reference : (x, y) on earth of the point the body moves about, m.
+    heading : rad, of the body's x axis.
     """
 
     loops: Sequence[Array]
     reference: tuple[float, float]
+    heading: float = 0.0
 
-
-def within(loops: Sequence[Array], plan: Array) -> NDArray[np.bool_]:
-    """Which points (n, 2) lie inside closed lines: those that the lines wind about."""
-    turns = np.zeros(len(plan))
-    for loop in loops:
-        for start, end in zip(loop, np.roll(loop, -1, axis=0), strict=True):
-            a, b = start - plan, end - plan
-            cross, dot = a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0], np.sum(a * b, axis=1)
-            turns += np.arctan2(cross, dot)
-    return np.abs(turns) > np.pi
+    @classmethod
+    def of(cls, hull: Hull) -> Waterplane:
+        """The waterplane of a hull, about its centre of mass."""
+        x, y = hull.place(hull.centre_of_mass)[:2]
+        return cls(hull.polygons(), (float(x), float(y)), hull.heading)
 
 
 def water_quadrature(box: Box, water: SurfaceMesh) -> tuple[Array, Array]:
@@ -50,7 +47,7 @@ def waterplane_quadrature(box: Box, waterplane: Waterplane) -> tuple[Array, Arra
     Triangles from the middle of each loop to its edges, with their signs, cover it whatever its
     shape; each is quartered twice for smooth integrands.
     """
-    fans = []
+    fans = [np.empty((0, 3, 2))]
     for loop in waterplane.loops:
         middle = np.broadcast_to(loop.mean(axis=0), loop.shape)
         fans.append(np.stack([middle, loop, np.roll(loop, -1, axis=0)], axis=1))

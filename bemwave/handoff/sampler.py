@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
 
@@ -11,8 +11,7 @@ from numpy.typing import NDArray
 
 from bemwave.flow.state import SurfaceState
 from bemwave.handoff.box import Array, PointSet
-from bemwave.handoff.fields import Flow, IncidentPart, Part, SolvedPart, levels_down_to
-from bemwave.handoff.plan import Waterplane, within
+from bemwave.handoff.fields import Flow, IncidentPart, Part, SolvedPart, levels_down_to, on_surface
 from bemwave.waves import Sea
 from bemwave.waves.crest import CrestRule, extrapolated, stretched_z
 
@@ -68,9 +67,8 @@ class HandoffSampler:
         column taken at h (z - elevation)/(h + elevation) (Wheeler 1970); as at z = 0.
     field : "total" | "incident" | "parts"
     solid : callable, optional
-        Tells which points (n, 3) lie inside hulls: never wet, never sampled.
-    waterplanes : sequence of Waterplane
-        Where there is no surface: elevation is NaN inside them, points above them are dry.
+        Tells which points (n, 3) lie inside hulls: never wet, never sampled. Where a column does
+        at z = 0 there is no surface and its elevation is NaN.
 
     Examples
     --------
@@ -87,17 +85,13 @@ class HandoffSampler:
         crest: CrestRule = "linear",
         field: FieldChoice = "total",
         solid: Callable[[Array], NDArray[np.bool_]] | None = None,
-        waterplanes: Sequence[Waterplane] = (),
     ) -> None:
         self._set, self._crest, self._depth = points, crest, sea.depth
         self._weight = sea.density * sea.gravity
         z = points.points[:, 2]
-        loops = [loop for plane in waterplanes for loop in plane.loops]
-        self._covered = within(loops, points.columns)
-        water = (z <= 0.0) | ~self._covered[points.column]
-        if solid is not None:
-            water &= ~solid(points.points)
-        self._water = water
+        inside = _nowhere if solid is None else solid
+        self._covered = inside(on_surface(points.columns))
+        self._water = water = ~inside(points.points)
         self._under = np.flatnonzero((z <= 0.0) & water)
         self._above = np.flatnonzero((z > 0.0) & water)
         tall, self._stand = np.unique(points.column[self._above], return_inverse=True)
@@ -169,6 +163,10 @@ class HandoffSampler:
         cell = height[height > 0.0].min() if np.any(height > 0.0) else 0.02 * np.ptp(z) + 0.01
         lowest = max(z.min() - max(z.max(), 1.0), -self._depth)
         return levels_down_to(float(lowest), float(cell))
+
+
+def _nowhere(points: Array) -> NDArray[np.bool_]:
+    return np.zeros(len(points), dtype=bool)
 
 
 def _total(parts: list[Part], quantity: str, state: SurfaceState) -> Array:

@@ -137,8 +137,8 @@ def test_a_turned_and_placed_box_speaks_in_its_own_axes(tmp_path):
     # by hand: y up means (x, y, z) -> (x, z, -y)
     a, b = np.radians(25.0), np.radians(40.0)
     level = np.column_stack([there[:, 0], -there[:, 2], there[:, 1]])
-    in_box = rotated(level, b) + [1.0, 2.0, -5.0]
-    earth = rotated(in_box, a) + [2.0, -1.0, 0.0]
+    in_box = rotated(level, b) + np.array([1.0, 2.0, -5.0])
+    earth = rotated(in_box, a) + np.array([2.0, -1.0, 0.0])
     np.testing.assert_allclose(earth[face == 4, 2], -5.0, atol=1e-12)
     assert heading == pytest.approx(65.0)
     np.testing.assert_allclose(rotated(level, a + b) + earth_origin, earth, atol=1e-12)

@@ -91,9 +91,14 @@ def test_a_heaving_body_displaces_what_its_waterplane_sweeps(state_at):
     points, still = box_points(box), Sea.still(10.0)
     closure = Closure(box, points, still, None, water_mesh(), [Waterplane([loop], (0.0, 3.0))])
     instant = HandoffSampler(points, still, None).at(state_at(0.0))
-    move = np.array([[0.0, 0.0, 0.3, 0.0, 0.1, 0.0]])  # pitch bow down lowers the water at x > 0
+    # pitch bow down lowers the water at x > 0, roll port up lifts that at y > 0
+    move = np.array([[0.0, 0.0, 0.3, 0.2, 0.1, 0.0]])
     got = closure.at(instant, state_at(0.0), move).volume_rate
     assert got == pytest.approx(area * (0.3 - 0.1 * 1.0), rel=1e-12)
+    turned = [Waterplane([loop], (0.0, 3.0), math.pi / 2)]  # her bow points to +y
+    closure = Closure(box, points, still, None, water_mesh(), turned)
+    got = closure.at(instant, state_at(0.0), move).volume_rate
+    assert got == pytest.approx(area * (0.3 - 0.2 * 1.0), rel=1e-12)
 
 
 def test_the_sea_is_left_out_of_a_fixed_body_s_waterplane(state_at):

@@ -3,7 +3,7 @@ import math
 import numpy as np
 import pytest
 
-from bemwave.handoff import Box, HandoffSampler, Waterplane, box_points, free_points
+from bemwave.handoff import Box, HandoffSampler, box_points, free_points
 from bemwave.handoff.fields import cubic_weights, levels_down_to
 from bemwave.waves import Sea, wavenumber
 
@@ -91,15 +91,11 @@ def test_dry_points_are_nan_and_cells_are_wet_by_their_share(state_at):
 
 
 def test_inside_a_hull_nothing_is_wet_and_there_is_no_surface(state_at):
-    loop = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1]], dtype=float)
-
     def solid(points):
         return np.all(np.abs(points[:, :2]) < 1, axis=1) & (points[:, 2] > -2)
 
     points = free_points([[0, 0, -1], [0, 0, -3], [0, 0, 1], [5, 0, -1]])
-    sampler = HandoffSampler(
-        points, CREST, None, "linear", "total", solid, [Waterplane([loop], (0, 0))]
-    )
+    sampler = HandoffSampler(points, CREST, None, solid=solid)
     instant = sampler.at(state_at(0.0))
     assert instant.wet.tolist() == [0, 1, 0, 1]
     assert np.isnan(instant.total.velocity[[0, 2]]).all()
