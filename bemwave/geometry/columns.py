@@ -8,8 +8,8 @@ from bemwave.errors import InputError
 from bemwave.geometry.hydrostatics import hydrostatics
 from bemwave.geometry.mesher import run_job
 from bemwave.geometry.patterns import polygon_radius
-from bemwave.geometry.surface_mesh import SurfaceMesh
-from bemwave.geometry.topology import boundary_loops
+from bemwave.geometry.surface_mesh import SurfaceMesh, joined
+from bemwave.geometry.topology import weld
 
 
 def columns(
@@ -53,17 +53,24 @@ def columns(
             f"draught = {draught} do not fit: columns must be clear of each other, pontoons "
             "narrower than a column's diameter and lower than the draught"
         )
-    mesh = _modelled(sizes, column_radius)
-    around = len(boundary_loops(mesh.triangles)[0])
-    return _modelled(sizes, polygon_radius(column_radius, around))
+    around = max(8, round(2.0 * np.pi * column_radius / panel_size))
+    job = {
+        **sizes,
+        "size": panel_size,
+        "around": around,
+        "column_radius": polygon_radius(column_radius, around),
+    }
+    return _modelled(job)
 
 
-def _modelled(sizes: dict[str, float], radius: float) -> SurfaceMesh:
-    job = {**sizes, "size": sizes["panel_size"], "column_radius": radius}
+def _modelled(job: dict[str, float]) -> SurfaceMesh:
     made = run_job("columns", job, "modelling the columns")
-    lids = np.all(np.abs(made["points"][made["triangles"], 2]) < 1e-9, axis=1)
-    mesh = SurfaceMesh.of_one_part(made["points"], made["triangles"], "hull").keep(~lids)
-    points = mesh.points.copy()
-    points[np.abs(points[:, 2]) < 1e-9, 2] = 0.0
-    mesh = mesh.with_points(points)
+    tolerance = 1e-9 * job["spacing"]
+    points = np.where(np.abs(made["points"]) < tolerance, 0.0, made["points"])
+    lids = np.any(np.all(points[made["triangles"]] == 0.0, axis=1), axis=1)
+    quarter = SurfaceMesh.of_one_part(points, made["triangles"], "hull").keep(~lids)
+    mirrored = quarter.with_points(quarter.points * [-1.0, 1.0, 1.0]).flipped()
+    half = joined([quarter, mirrored])
+    whole = joined([half, half.with_points(half.points * [1.0, -1.0, 1.0]).flipped()])
+    mesh, _, _ = weld(whole, tolerance)
     return mesh if hydrostatics(mesh).volume > 0.0 else mesh.flipped()

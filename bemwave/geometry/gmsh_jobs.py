@@ -77,28 +77,34 @@ def water(job: Mapping[str, Any]) -> dict[str, Any]:
 
 
 def columns(job: Mapping[str, Any]) -> dict[str, Any]:
-    """Mesh four upright columns joined by a ring of square pontoons, by solid modelling."""
+    """Mesh the quarter x > 0, y > 0 of four columns on pontoons, by solid modelling.
+
+    The flat cuts at x = 0, y = 0 and z = 0 are part of the result.
+    """
     import gmsh
     import pygmsh
 
     half, radius = 0.5 * float(job["spacing"]), float(job["column_radius"])
     pontoon, draught = float(job["pontoon"]), float(job["draught"])
+    low = half - 0.5 * pontoon
     with pygmsh.occ.Geometry() as geometry:
         _quiet(gmsh)
-        corners = [(half, half), (-half, half), (-half, -half), (half, -half)]
-        solids = [
-            geometry.add_cylinder([x, y, -draught], [0.0, 0.0, draught], radius) for x, y in corners
-        ]
-        for side in (-1.0, 1.0):
-            low = side * half - 0.5 * pontoon
-            along, across = [2.0 * half, pontoon, pontoon], [pontoon, 2.0 * half, pontoon]
-            solids.append(geometry.add_box([-half, low, -draught], along))
-            solids.append(geometry.add_box([low, -half, -draught], across))
-        geometry.boolean_union(solids)
+        column = geometry.add_cylinder([half, half, -draught], [0.0, 0.0, draught], radius)
+        along_x = geometry.add_box([0.0, low, -draught], [half, pontoon, pontoon])
+        along_y = geometry.add_box([low, 0.0, -draught], [pontoon, half, pontoon])
+        geometry.boolean_union([column, along_x, along_y])
         geometry.synchronize()
+        for _, curve in gmsh.model.getEntities(1):
+            if gmsh.model.getType(1, curve) == "Circle" and _is_at_waterline(gmsh, curve):
+                gmsh.model.mesh.setTransfiniteCurve(curve, int(job["around"]) + 1)
         _constant_size(gmsh, float(job["size"]))
         geometry.generate_mesh(dim=2, algorithm=FRONTAL)
         return _surfaces(gmsh)
+
+
+def _is_at_waterline(gmsh: Any, curve: int) -> bool:
+    _, _, low, _, _, high = gmsh.model.getBoundingBox(1, curve)
+    return bool(low > -1e-6 and high < 1e-6)
 
 
 def _quiet(gmsh: Any) -> None:

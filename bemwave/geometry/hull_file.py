@@ -15,8 +15,6 @@ from bemwave.geometry.pose import Pose, trim_and_heel, up_rotation
 from bemwave.geometry.surface_mesh import BoolArray, SurfaceMesh
 from bemwave.geometry.topology import extent, pieces, weld
 
-UNNAMED = "unnamed"  # the only part of a mesh whose file names none
-
 SNAP = 1e-5  # of the hull's extent: points nearer to the waterline are put on it
 WELD = 1e-6  # of the hull's extent: points nearer to each other are one
 
@@ -143,8 +141,8 @@ def wetted_part(hull: Floating, source: str, depth: float = math.inf) -> Wetted:
 
 
 def named_pieces(mesh: SurfaceMesh) -> SurfaceMesh:
-    """Name the connected pieces of a mesh without part names piece1, piece2 ... by size."""
-    if mesh.part_names != (UNNAMED,) or not len(mesh.triangles):
+    """Name the connected pieces of a mesh of one part piece1, piece2 ... by size."""
+    if len(mesh.part_names) > 1 or not len(mesh.triangles):
         return mesh
     piece = pieces(mesh)
     names = [f"piece{k + 1}" for k in range(int(piece.max()) + 1)]

@@ -59,7 +59,7 @@ def clearance(one: Hull, other: Hull) -> float:
     from scipy.spatial import cKDTree
 
     distance, _ = cKDTree(one.mesh.points).query(other.mesh.points)
-    return float(distance.min())
+    return float(np.min(distance))
 
 
 def signed_area(polygon: FloatArray) -> float:

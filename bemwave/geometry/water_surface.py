@@ -128,7 +128,7 @@ def fitted_water(mesh: SurfaceMesh, waterlines: Sequence[FloatArray], source: st
     rim = {tuple(edge) for edge in boundary_edges(triangles).tolist()}
     tree = cKDTree(points[:, :2])
     for polygon in waterlines:
-        distance, number = tree.query(polygon)
+        distance, number = (np.asarray(found) for found in tree.query(polygon))
         edges = zip(np.roll(number, -1).tolist(), number.tolist(), strict=True)
         if distance.max() > tolerance or not rim.issuperset(edges):
             x, y = polygon[np.argmax(distance)]
