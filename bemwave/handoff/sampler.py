@@ -91,7 +91,8 @@ class HandoffSampler:
         z = points.points[:, 2]
         inside = _nowhere if solid is None else solid
         self._covered = inside(on_surface(points.columns))
-        self._water = water = ~inside(points.points)
+        over = (z > 0.0) & self._covered[points.column]
+        self._water = water = ~inside(points.points) & ~over
         self._under = np.flatnonzero((z <= 0.0) & water)
         self._above = np.flatnonzero((z > 0.0) & water)
         tall, self._stand = np.unique(points.column[self._above], return_inverse=True)
@@ -105,19 +106,22 @@ class HandoffSampler:
 
     def at(self, state: SurfaceState) -> Instant:
         """Sample at the time of a solved state."""
-        elevation = self._sum("elevation", state)
-        wet = self._wet(elevation[self._set.column])
-        under = self._sum("velocity", state)
-        first_order = np.zeros_like(self._set.points)
-        first_order[self._under] = under
-        total = self._values(self._parts, state, elevation, wet)
+        # under a hull there is no surface: what is water there stays wet and is not stretched
+        elevation = np.where(self._covered, 0.0, _total(self._parts, "elevation", state))
+        surface = elevation[self._set.column]
+        wet = self._wet(surface)
+        first_order = self._first_order(self._parts, state)
+        total = self._values(self._parts, state, first_order, surface, wet)
         incident = None
         if self._show_incident:
-            incident = self._values([self._incident], state, elevation, wet)
+            part = [self._incident]
+            incident = self._values(part, state, self._first_order(part, state), surface, wet)
         return Instant(state.time, total, incident, wet, first_order)
 
-    def _sum(self, quantity: str, state: SurfaceState) -> Array:
-        return _total(self._parts, quantity, state)
+    def _first_order(self, parts: list[Part], state: SurfaceState) -> Array:
+        velocity = np.zeros_like(self._set.points)
+        velocity[self._under] = _total(parts, "velocity", state)
+        return velocity
 
     def _wet(self, elevation: Array) -> Array:
         """Fraction of each cell under the surface; a point by itself is in or out."""
@@ -125,20 +129,29 @@ class HandoffSampler:
         cell = np.where(height > 0.0, height, 1.0)
         share = np.clip((elevation - z) / cell + 0.5, 0.0, 1.0)
         point = (z <= elevation).astype(np.float64)
-        return np.where(height > 0.0, share, point) * self._water
+        wet = np.where(height > 0.0, share, point)
+        return np.where(self._covered[self._set.column], 1.0, wet) * self._water
 
-    def _values(self, parts: list[Part], state: SurfaceState, surface: Array, wet: Array) -> Values:
-        """Fields of the sum of `parts` under the surface that all parts make together."""
+    def _values(
+        self,
+        parts: list[Part],
+        state: SurfaceState,
+        first_order: Array,
+        surface: Array,
+        wet: Array,
+    ) -> Values:
+        """Fields of the sum of `parts` under the surface (n,) that all parts make together."""
         elevation = _total(parts, "elevation", state)
-        velocity = np.zeros_like(self._set.points)
-        pressure = np.zeros(len(velocity))
+        pressure = np.zeros(len(first_order))
         pressure[self._under] = _total(parts, "pressure", state)
         pressure[self._above] = self._weight * elevation[self._set.column[self._above]]
         if self._crest == "wheeler":
-            depth = self._stretched(surface[self._set.column])
-            velocity = sum((p.velocity_at_depth(state, depth) for p in parts), velocity)
+            level = self._stretched(surface)
+            velocity = sum(
+                (part.velocity_at_depth(state, level) for part in parts), np.zeros_like(first_order)
+            )
         else:
-            velocity[self._under] = _total(parts, "velocity", state)
+            velocity = first_order.copy()
             velocity[self._above] = self._above_still_water(parts, state)
         velocity[wet == 0.0] = np.nan
         pressure[wet == 0.0] = np.nan

@@ -90,12 +90,14 @@ def test_dry_points_are_nan_and_cells_are_wet_by_their_share(state_at):
     assert np.isfinite(trough.first_order).all()
 
 
-def test_inside_a_hull_nothing_is_wet_and_there_is_no_surface(state_at):
+@pytest.mark.parametrize("crest", ["linear", "wheeler"])
+def test_inside_a_hull_nothing_is_wet_and_there_is_no_surface(crest, state_at):
     def solid(points):
-        return np.all(np.abs(points[:, :2]) < 1, axis=1) & (points[:, 2] > -2)
+        return np.all(np.abs(points[:, :2]) < 1, axis=1) & (np.abs(points[:, 2]) < 2)
 
-    points = free_points([[0, 0, -1], [0, 0, -3], [0, 0, 1], [5, 0, -1]])
-    sampler = HandoffSampler(points, CREST, None, solid=solid)
+    # the last point in the hull's columns is over it, the one before it under it
+    points = free_points([[0, 0, -1], [0, 0, -3], [0, 0, 2.5], [5, 0, -1]])
+    sampler = HandoffSampler(points, CREST, None, crest, solid=solid)
     instant = sampler.at(state_at(0.0))
     assert instant.wet.tolist() == [0, 1, 0, 1]
     assert np.isnan(instant.total.velocity[[0, 2]]).all()
