@@ -61,12 +61,7 @@ class Elements:
     @cached_property
     def mass(self) -> sparse.csc_matrix:
         """(free, free) int over F of hat_i hat_j [m^2]."""
-        local = (np.ones((3, 3)) + np.eye(3)) / 12.0
-        rows = np.repeat(self.water, 3, axis=1).ravel()
-        cols = np.tile(self.water, (1, 3)).ravel()
-        values = (self.water_table[:, 28, None] * local.ravel()).ravel()
-        n = len(self.points)
-        return sparse.csc_matrix((values, (rows, cols)), shape=(n, n))[: self.free, : self.free]
+        return self.weighted_mass(np.ones(len(self.water)))
 
     def weighted_mass(self, weight: Array) -> sparse.csc_matrix:
         """(free, free) int over F of weight hat_i hat_j, weight (mF,) one a triangle."""

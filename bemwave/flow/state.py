@@ -18,6 +18,7 @@ class SurfaceState:
     ----------
     time : s.
     elevation, potential : (n,) at the water's nodes [m], [m^2/s].
+    potential_rate : (n,) time derivative of the potential at z = 0 [m^2/s^2].
     surface_flux, surface_flux_rate : (n,) vertical velocity of the water at its surface [m/s],
         and its time derivative [m/s^2].
     hull_potential, hull_potential_rate : (b,) at hull and wall nodes [m^2/s], [m^2/s^2].
@@ -28,6 +29,7 @@ class SurfaceState:
     time: float
     elevation: Array
     potential: Array
+    potential_rate: Array
     surface_flux: Array
     surface_flux_rate: Array
     hull_potential: Array
