@@ -6,8 +6,6 @@ import math
 from collections.abc import Callable
 from pathlib import Path
 
-import numpy as np
-
 from bemwave.case.body import Body
 from bemwave.errors import InputError
 from bemwave.geometry import forms
@@ -15,8 +13,7 @@ from bemwave.geometry.columns import columns
 from bemwave.geometry.files import read_mesh
 from bemwave.geometry.hull import Hull, place_hull, prepare_hull
 from bemwave.geometry.hydrostatics import Hydrostatics
-from bemwave.geometry.surface_mesh import SurfaceMesh, joined
-from bemwave.geometry.topology import boundary_edges, extent, weld
+from bemwave.geometry.surface_mesh import SurfaceMesh
 
 
 def hull_from(body: Body, *, spacing: float, depth: float, folder: Path) -> Hull:
@@ -39,7 +36,8 @@ def hull_from(body: Body, *, spacing: float, depth: float, folder: Path) -> Hull
     InputError, MissingLibraryError
     """
     position = (float(body.position[0]), float(body.position[1]))
-    heading, trim, heel = (math.radians(v) for v in (body.heading, body.trim, body.heel))
+    heading = math.radians(body.heading)
+    centre = body.centre_of_mass
     if body.mesh is not None:
         given = body.model_fields_set
         return prepare_hull(
@@ -49,40 +47,29 @@ def hull_from(body: Body, *, spacing: float, depth: float, folder: Path) -> Hull
             scale=body.scale if "scale" in given else None,
             up=body.up if "up" in given else None,
             draught=None if body.draught is None else float(body.draught),
-            trim=trim,
-            heel=heel,
+            trim=math.radians(body.trim),
+            heel=math.radians(body.heel),
             without=body.without,
             depth=depth,
             panel_size=body.panel_size or default_panel_size(spacing),
             position=position,
             heading=heading,
-            centre_of_mass=body.centre_of_mass,
+            centre_of_mass=centre,
         )
     wetted = form_mesh(body, spacing, depth)
-    on_bed = body.form == "cylinder" or wetted.points[:, 2].min() > -depth
-    if not trim and not heel and on_bed:
-        return place_hull(
+    if body.form != "cylinder" and wetted.points[:, 2].min() <= -depth:
+        return prepare_hull(
+            wetted.flipped(),
             body.name,
-            wetted,
+            scale=1.0,
+            up="z",
+            depth=depth,
+            panel_size=_form_panel_size(body, spacing),
             position=position,
             heading=heading,
-            centre_of_mass=body.centre_of_mass,
+            centre_of_mass=centre,
         )
-    tilt = abs(math.sin(trim)) + abs(math.sin(heel))
-    return prepare_hull(
-        with_topsides(wetted, tilt * extent(wetted.points)).flipped(),
-        body.name,
-        source=f"{body.name} (form = {body.form!r})",
-        scale=1.0,
-        up="z",
-        trim=trim,
-        heel=heel,
-        depth=depth,
-        panel_size=_form_panel_size(body, spacing),
-        position=position,
-        heading=heading,
-        centre_of_mass=body.centre_of_mass,
-    )
+    return place_hull(body.name, wetted, position=position, heading=heading, centre_of_mass=centre)
 
 
 def default_panel_size(spacing: float) -> Callable[[Hydrostatics], float]:
@@ -91,7 +78,7 @@ def default_panel_size(spacing: float) -> Callable[[Hydrostatics], float]:
 
 
 def form_mesh(body: Body, spacing: float, depth: float) -> SurfaceMesh:
-    """Wetted mesh of a body given by formula, in body axes, neither trimmed nor heeled.
+    """Wetted mesh of a body given by formula, in body axes.
 
     Raises
     ------
@@ -125,24 +112,6 @@ def form_mesh(body: Body, spacing: float, depth: float) -> SurfaceMesh:
         case _:
             make = forms.box
     return make(values["length"], values["beam"], float(body.draught or 0.0), size)
-
-
-def with_topsides(wetted: SurfaceMesh, height: float) -> SurfaceMesh:
-    """Carry a wetted hull (normals out of the water) straight up above still water.
-
-    A form ends at the waterline; trim and heel need hull above it to put under.
-    """
-    edges = boundary_edges(wetted.triangles)
-    edges = edges[np.all(wetted.points[edges, 2] == 0.0, axis=1)]
-    if not len(edges):
-        return wetted
-    start, end = wetted.points[edges[:, 0]], wetted.points[edges[:, 1]]
-    up = np.array([0.0, 0.0, height])
-    quads = np.stack([end, start, start + up, end + up], axis=1)
-    corners = np.arange(4 * len(edges)).reshape(-1, 4)
-    triangles = np.concatenate([corners[:, [0, 1, 2]], corners[:, [0, 2, 3]]])
-    sides = SurfaceMesh.of_one_part(quads, triangles, wetted.part_names[0])
-    return weld(joined([wetted, sides]), 1e-9 * extent(wetted.points))[0]
 
 
 def _form_panel_size(body: Body, spacing: float) -> float:

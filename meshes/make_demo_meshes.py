@@ -1,0 +1,56 @@
+"""Make the demonstration's ready meshes, so that running it needs no mesher.
+
+    python meshes/make_demo_meshes.py
+
+Writes tender-wetted.vtu and platform.vtu (hulls cut at still water and meshed to their panel size,
+in their own axes, normals out of the hull) and water.vtu (the sheet round both of them where the
+demonstration has them). Needs gmsh. Change the sizes here and in the case file together.
+"""
+
+import math
+from pathlib import Path
+
+from bemwave.geometry.columns import columns
+from bemwave.geometry.files import read_mesh, write_mesh
+from bemwave.geometry.hull import place_hull, prepare_hull
+from bemwave.geometry.outline import Rectangle
+from bemwave.geometry.water_surface import water_surface
+
+FOLDER = Path(__file__).parent
+
+SIZE = (80.0, 60.0)  # useful water, m, round the origin
+ABSORBER = 20.0  # width outside it, m
+SPACING, FINE_SPACING = 2.8, 1.4  # of the water, far away and at waterlines, m
+
+TENDER_DRAUGHT, TENDER_PANEL = 1.9, 1.2
+TENDER_POSITION, TENDER_HEADING = (-20.0, -4.0), 30.0  # m, degrees
+
+PLATFORM = {"spacing": 20.0, "column_radius": 2.0, "pontoon": 2.4, "draught": 8.0}
+PLATFORM_PANEL = 1.5
+PLATFORM_POSITION, PLATFORM_HEADING = (14.0, 0.0), 0.0
+
+
+def main():
+    """Make and write the three meshes."""
+    tender = prepare_hull(
+        read_mesh(FOLDER / "tender.stl"),
+        "tender",
+        draught=TENDER_DRAUGHT,
+        panel_size=TENDER_PANEL,
+    )
+    platform = place_hull("platform", columns(**PLATFORM, panel_size=PLATFORM_PANEL))
+    write_mesh(tender.mesh.flipped(), FOLDER / "tender-wetted.vtu")
+    write_mesh(platform.mesh.flipped(), FOLDER / "platform.vtu")
+    hulls = [
+        tender.moved(TENDER_POSITION, math.radians(TENDER_HEADING)),
+        platform.moved(PLATFORM_POSITION, math.radians(PLATFORM_HEADING)),
+    ]
+    x, y = (0.5 * side + ABSORBER for side in SIZE)
+    water = water_surface(Rectangle(-x, x, -y, y), SPACING, hulls, FINE_SPACING)
+    write_mesh(water, FOLDER / "water.vtu")
+    for name, mesh in (("tender", tender.mesh), ("platform", platform.mesh), ("water", water)):
+        print(f"{name}: {len(mesh.triangles)} triangles")
+
+
+if __name__ == "__main__":
+    main()
