@@ -20,12 +20,9 @@ def write_ply(
 
     A vector (n, 3) called NAME becomes the properties NAME_x, NAME_y, NAME_z.
     """
-    columns: dict[str, Array | Bools] = {
-        "x": mesh.points[:, 0],
-        "y": mesh.points[:, 1],
-        "z": mesh.points[:, 2],
-    }
-    columns |= {"nx": normals[:, 0], "ny": normals[:, 1], "nz": normals[:, 2]}
+    columns: dict[str, Array | Bools] = {}
+    columns |= {axis: mesh.points[:, k] for k, axis in enumerate("xyz")}
+    columns |= {f"n{axis}": normals[:, k] for k, axis in enumerate("xyz")}
     for name, values in data.items():
         if values.ndim == 2:
             columns |= {f"{name}_{axis}": values[:, k] for k, axis in enumerate("xyz")}
