@@ -85,8 +85,9 @@ def cylinder(
         If a dimension is not positive.
     """
     _positive(form="cylinder", radius=radius, draught=draught, panel_size=panel_size)
-    rings = max(2, round(radius / panel_size))
-    around, down = 6 * rings, max(1, round(draught / panel_size))
+    # 8 sectors: the number of sides is then a multiple of 4 and the body symmetric fore and aft
+    rings = max(1, round(2.0 * math.pi * radius / (8 * panel_size)))
+    around, down = 8 * rings, max(1, round(draught / panel_size))
     corner = polygon_radius(radius, around)
     depth = draught * (np.linspace(0.0, 1.0, down + 1) if stands_on_bed else graded(down))
     angle = 2.0 * np.pi * np.arange(around + 1) / around
@@ -96,10 +97,10 @@ def cylinder(
     ).flipped()
     if stands_on_bed:
         return _sewn([side])
-    ring, angle = disc_angles(rings, 6)
+    ring, angle = disc_angles(rings, 8)
     r = corner * graded(rings)[ring]
     points = np.stack([r * np.cos(angle), r * np.sin(angle), np.full_like(r, -draught)], axis=-1)
-    return _sewn([side, SurfaceMesh.of_one_part(points, disc_triangles(rings, 6), "hull")])
+    return _sewn([side, SurfaceMesh.of_one_part(points, disc_triangles(rings, 8), "hull")])
 
 
 def sphere(radius: float, centre_depth: float, panel_size: float) -> SurfaceMesh:

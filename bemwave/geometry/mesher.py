@@ -13,8 +13,8 @@ import numpy as np
 from bemwave.errors import InputError, MissingLibraryError
 
 INSTALL_LINE = (
-    "apt-get install -y libglu1-mesa libgl1 libxrender1 libxcursor1 libxfixes3 libxft2 "
-    "libxinerama1 fontconfig libgomp1"
+    "apt-get install -y --no-install-recommends libglu1-mesa libgl1 libxrender1 libxcursor1 "
+    "libxfixes3 libxft2 libxinerama1 fontconfig libgomp1"
 )
 _LIBRARY_MISSING = 41
 
