@@ -48,6 +48,23 @@ class Images:
         turn: Array = np.prod(self.signs, axis=1)[:, None] * self.signs
         return self.weights[:, None] * turn
 
+    def seen_from_surface(self, weights: Array, sources_too: bool) -> tuple[Array, Array, Array]:
+        """Signs, shifts and weights (k, c) of fewer images for targets on z = 0.
+
+        There a mirror in the bed and a shift by twice the depth look alike; and if the sources are
+        on z = 0 as well, so do images above and below.
+        """
+        height = -self.signs[:, 2] * self.shifts[:, 2]
+        if sources_too:
+            height = np.abs(height)
+        keys = np.column_stack([self.signs[:, :2], self.shifts[:, :2], height])
+        unique, back = np.unique(np.round(keys, 9), axis=0, return_inverse=True)
+        total = np.zeros((len(unique), weights.shape[1]))
+        np.add.at(total, back.ravel(), weights)
+        signs = np.column_stack([unique[:, :2], np.ones(len(unique))])
+        shifts = np.column_stack([unique[:, 2:4], -unique[:, 4]])
+        return signs, shifts, total
+
 
 def make_images(
     depth: float, half_space: bool, mirrors: tuple[Mirror, ...] = (), span: float = 0.0

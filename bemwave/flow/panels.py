@@ -116,15 +116,16 @@ def _cholesky(matrix: Array, where: str) -> Array:
 
 
 def _single_layers(
-    targets: Array, sources: Array, images: Images, weights: Array, same: bool
-) -> Array:
-    """One single layer per column of weights, columns that agree computed once: (k, n, m)."""
+    targets: Array, sources: Array, images: tuple[Array, Array, Array]
+) -> _Columns:
+    """One single layer per column of the images' weights, columns that agree computed once."""
+    signs, shifts, weights = images
     unique, back = np.unique(weights, axis=1, return_inverse=True)
     unique = np.ascontiguousarray(unique)
-    if same:
-        layers = kernel.single_layer_self(targets, images.signs, images.shifts, unique)
+    if targets is sources:
+        layers = kernel.single_layer_self(targets, signs, shifts, unique)
     else:
-        layers = kernel.single_layer(targets, sources, images.signs, images.shifts, unique)
+        layers = kernel.single_layer(targets, sources, signs, shifts, unique)
     return _Columns(layers, back.ravel())
 
 
@@ -146,18 +147,18 @@ def _forms(
     water, hull = e.water_table, e.hull_table
     curl_f, curl_b = e.curls(e.water, water), e.curls(e.hull, hull)
     weights = np.column_stack([images.curl_weights, images.weights])
-    flat = [0, 1, 3] if closed else [0, 1]  # curls on still water are horizontal
+    flat = weights[:, [0, 1, 3] if closed else [0, 1]]  # curls on still water are horizontal
 
-    layers = _single_layers(water, water, images, weights[:, flat], same=True)
+    layers = _single_layers(water, water, images.seen_from_surface(flat, True))
     energy = sum(_sandwich(curl_f[a], layers[a], curl_f[a]) for a in (0, 1))
     factor = _cholesky(layers[2], "water surface") if closed else None
     del layers
     progress(0.4)
-    layers = _single_layers(water, hull, images, weights[:, flat], same=False)
+    layers = _single_layers(water, hull, images.seen_from_surface(flat, False))
     mixed = sum(_sandwich(curl_f[a], layers[a], curl_b[a]) for a in (0, 1))
     energy += mixed + mixed.T
     across = layers[2] if closed else None
-    layers = _single_layers(hull, hull, images, weights[:, :3], same=True)
+    layers = _single_layers(hull, hull, (images.signs, images.shifts, weights[:, :3]))
     energy += sum(_sandwich(curl_b[a], layers[a], curl_b[a]) for a in (0, 1, 2))
     del layers
     progress(0.7)

@@ -1,0 +1,210 @@
+"""Steps of the free-surface conditions d(eta)/dt = w - nu eta, d(phi)/dt = -g (eta + head).
+
+Leapfrog on the exact map of a step: the unknown beside phi_n is the step's mean E of eta + head,
+
+    E(n+1/2) = E(n-1/2) + dt [A_dt (phi_n - (g dt^2/12) f_n) + f_n],   phi_n+1 = phi_n - g dt E(n+1/2)
+
+f_n being the surface flux of the given fluxes and the head's rate, smoothed over the step as
+Numerov does (f_n + (f_n+1 - 2 f_n + f_n-1)/12): free waves are exact, forced ones right to the
+fourth order. The absorber acts on E by half steps of Crank-Nicolson on either side, in the weak
+form int nu hat hat, so that it can only take energy. One dense product a step.
+
+Between and at steps the state is read off the polynomial through eight successive phi: that gives
+phi and, by its slope, eta = -d(phi)/dt / g - head; fluxes and hull potentials then follow from the
+flow map. The columns of phi are parts of the solved field kept apart (scattered, radiated).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+from scipy import sparse
+from scipy.sparse.linalg import splu
+
+from bemwave.flow.panels import PanelFlow
+from bemwave.flow.state import SurfaceState
+from bemwave.stepping.exact import exact_map
+from bemwave.stepping.forcing import GivenFlux, PressurePatch
+
+Array = npt.NDArray[np.float64]
+
+STENCIL = 8
+BLOCK = 32  # steps whose given fluxes are worked out together, as one matrix product
+
+
+class Stepper:
+    """Advances the solved field step by step.
+
+    Parameters
+    ----------
+    flow : the flow map.
+    gravity, step : m/s^2, s; `step` at most exact.LARGEST_TURN over the fastest frequency.
+    parts : the given flux of each part of the field.
+    patches : pressure patches; they belong to the first part.
+    damping : (free, free) sparse int nu hat hat [m^2/s], or None.
+    elevation : (free,) at t = 0, of the first part, at rest; None: still water.
+    """
+
+    def __init__(
+        self,
+        flow: PanelFlow,
+        gravity: float,
+        step: float,
+        parts: Sequence[GivenFlux],
+        *,
+        patches: Sequence[PressurePatch] = (),
+        damping: sparse.csc_matrix | None = None,
+        elevation: Array | None = None,
+    ) -> None:
+        self.flow, self.gravity, self.step, self.parts = flow, gravity, step, parts
+        self.patches, self.damping = patches, damping
+        free = flow.elements.free
+        self._xy = flow.elements.points[:free, :2]
+        self._map = exact_map(flow.surface_matrix, flow.solve_mass, gravity, step)
+        self._halve: Any = None
+        if damping is not None:
+            self._halve = splu(sparse.csc_matrix(flow.mass + 0.25 * step * damping)).solve
+        self.count = 0
+        self._potentials = [np.zeros((free, max(1, len(parts))))]
+        self._mean = self._first_mean(elevation)
+        self._forced: Array = np.empty((0, free, 0))
+        self._forced_from = -1
+
+    def _first_mean(self, elevation: Array | None) -> Array:
+        """E(-1/2) of the free motion from rest, which is even in time."""
+        mean = np.zeros_like(self._potentials[0])
+        start = self._head(0.0) if elevation is None else elevation + self._head(0.0)
+        if start.any():
+            # the mean of cos(w t) over a step is sin(x)/x, x = w dt, here in powers of Y
+            term = mean[:, 0] = start
+            for factor in _sinc_series(12):
+                term = self.gravity * self.step**2 * (self._map @ term)
+                mean[:, 0] += factor * term
+        return mean
+
+    @property
+    def time(self) -> float:
+        """Time of the latest potential [s]."""
+        return self.count * self.step
+
+    def advance(self) -> None:
+        """One step."""
+        potential, g, dt = self._potentials[-1], self.gravity, self.step
+        forced = self._forced_flux(self.count)
+        flux = self._map @ (potential - (g * dt**2 / 12.0) * forced) + forced
+        if self.count == 0:
+            flux *= 0.5  # what is given begins at t = 0: the first step sees half a stencil
+        self._mean = self._half_damped(self._half_damped(self._mean) + dt * flux)
+        self._potentials.append(potential - g * dt * self._mean)
+        del self._potentials[:-STENCIL]
+        self.count += 1
+
+    def _half_damped(self, mean: Array) -> Array:
+        if self._halve is None:
+            return mean
+        loss = self.damping @ mean
+        return np.asarray(mean - self._halve(0.5 * self.step * loss))
+
+    def _forced_flux(self, count: int) -> Array:
+        """(free, parts) surface flux of what is given at a step, smoothed over it."""
+        # blocks start at multiples of BLOCK, so that a resumed run has the very same ones
+        start = count - count % BLOCK
+        if self._forced_from != start:
+            self._forced, self._forced_from = self._forced_block(start), start
+        return np.asarray(self._forced[count - start])
+
+    def _forced_block(self, start: int) -> Array:
+        times = (start + np.arange(-1, BLOCK + 1)) * self.step
+        block = np.zeros((BLOCK, *self._potentials[0].shape))
+        for k, part in enumerate(self.parts):
+            flux = _smoothed(part.flux(times), start)
+            block[:, :, k] = self.flow.solve_mass(self.flow.hull_flux_matrix @ flux).T
+        if self.patches:
+            rates = np.column_stack([self._head_rate(time) for time in times])
+            block[:, :, 0] += _smoothed(rates, start).T
+        return block
+
+    def _head(self, time: float) -> Array:
+        return sum((p.value(self._xy, time) for p in self.patches), np.zeros(len(self._xy)))
+
+    def _head_rate(self, time: float) -> Array:
+        return sum((p.rate(self._xy, time) for p in self.patches), np.zeros(len(self._xy)))
+
+    def ready(self, time: float) -> bool:
+        """Whether enough steps were taken for `state(time)`; ask as soon as it is."""
+        after = STENCIL // 2 - 1
+        return self.count >= STENCIL - 1 and time <= (self.count - after + 1e-9) * self.step
+
+    def parts_at(self, time: float) -> tuple[Array, Array]:
+        """Potential and its rate (free, parts) at any time among the kept steps."""
+        first = self.count - len(self._potentials) + 1
+        value, slope = _lagrange(time / self.step - first, len(self._potentials))
+        potential = sum(w * p for w, p in zip(value, self._potentials, strict=True))
+        rate = sum(w * p for w, p in zip(slope, self._potentials, strict=True))
+        return np.asarray(potential), np.asarray(rate) / self.step
+
+    def hull_parts(self, time: float) -> Array:
+        """Potential rate at hull and wall nodes (below, parts): each part's, for its loads."""
+        rate = self.parts_at(time)[1]
+        given = np.column_stack([part.rate(np.array([time]))[:, 0] for part in self.parts])
+        return self.flow.hull_potential(rate, given)
+
+    def state(self, time: float) -> SurfaceState:
+        """The solved field, its parts added, at any time among the kept steps."""
+        potential, rate = (part.sum(axis=1) for part in self.parts_at(time))
+        flux, flux_rate = np.zeros(len(self.flow.elements.hull)), np.zeros(
+            len(self.flow.elements.hull)
+        )
+        for part in self.parts:
+            flux = flux + part.flux(np.array([time]))[:, 0]
+            flux_rate = flux_rate + part.rate(np.array([time]))[:, 0]
+        both, given = np.column_stack([potential, rate]), np.column_stack([flux, flux_rate])
+        surface, hull = self.flow.surface_flux(both, given), self.flow.hull_potential(both, given)
+        return SurfaceState(
+            time=time,
+            elevation=-rate / self.gravity - self._head(time),
+            potential=potential,
+            potential_rate=rate,
+            surface_flux=surface[:, 0],
+            surface_flux_rate=surface[:, 1],
+            hull_potential=hull[:, 0],
+            hull_potential_rate=hull[:, 1],
+            hull_flux=flux,
+            hull_flux_rate=flux_rate,
+        )
+
+
+def _smoothed(values: Array, start: int) -> Array:
+    """Numerov's mean over steps of columns -1 ... BLOCK; from t = 0 on alone at the very start."""
+    smooth = values[:, 1:-1] + np.diff(values, 2, axis=1) / 12.0
+    if start == 0:
+        smooth[:, 0] = values[:, 1] + (values[:, 2] - values[:, 1]) / 3.0
+    return np.asarray(smooth)
+
+
+def _sinc_series(terms: int) -> list[float]:
+    """Coefficients of sin(x)/x in powers 1, 2 ... of 4 sin^2(x/2).
+
+    The reciprocal of x/sin(x) = sum (k!)^2/(2k+1)! Y^k, from the series of arcsin(z)/sqrt(1-z^2).
+    """
+    inverse = [1.0]
+    for k in range(1, terms + 1):
+        inverse.append(inverse[-1] * k * k / (2.0 * k * (2.0 * k + 1.0)))
+    direct = [1.0]
+    for n in range(1, terms + 1):
+        direct.append(-sum(inverse[k] * direct[n - k] for k in range(1, n + 1)))
+    return direct[1:]
+
+
+def _lagrange(at: float, count: int) -> tuple[Array, Array]:
+    """Weights of the value and slope at `at` of the polynomial through 0, 1 ... count - 1."""
+    nodes = np.arange(count)
+    powers = np.vander(nodes - at, count, increasing=True).T
+    wanted = np.zeros((count, 2))
+    wanted[0, 0] = 1.0
+    wanted[1, 1] = 1.0
+    weights = np.linalg.solve(powers, wanted)
+    return weights[:, 0], weights[:, 1]
