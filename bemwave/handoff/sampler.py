@@ -118,6 +118,10 @@ class HandoffSampler:
             incident = self._values(part, state, self._first_order(part, state), surface, wet)
         return Instant(state.time, total, incident, wet, first_order)
 
+    def elevation(self, state: SurfaceState) -> Array:
+        """Elevation of the columns alone, (m,), m; NaN inside waterlines."""
+        return np.where(self._covered, np.nan, _total(self._parts, "elevation", state))
+
     def _first_order(self, parts: list[Part], state: SurfaceState) -> Array:
         velocity = np.zeros_like(self._set.points)
         velocity[self._under] = _total(parts, "velocity", state)

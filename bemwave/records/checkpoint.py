@@ -1,0 +1,96 @@
+"""checkpoint/: where a run can go on from. Two are kept; a damaged one is noticed.
+
+A checkpoint is one file: a line with the SHA-256 of the rest, then a NumPy archive.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import io
+import json
+import zipfile
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from bemwave.records.folder import write_whole
+
+KEPT = 2
+_MARK = b"bemwave checkpoint 1 sha256 "
+_FACTS = "facts"
+
+
+@dataclass(frozen=True)
+class Checkpoint:
+    """What a run needs to go on.
+
+    Attributes
+    ----------
+    arrays : by name; the integrator's state and history.
+    facts : anything JSON can hold: step, time, records and frames written so far, random state.
+    """
+
+    arrays: Mapping[str, NDArray[Any]]
+    facts: Mapping[str, Any]
+
+
+def write_checkpoint(checkpoint: Checkpoint, folder: Path, number: int) -> Path:
+    """Write a checkpoint and remove all but the two latest.
+
+    Parameters
+    ----------
+    checkpoint : Checkpoint
+        No array may be called "facts".
+    folder : Path
+    number : int
+        Grows from one checkpoint to the next: the step it was made after.
+    """
+    archive = io.BytesIO()
+    facts = np.frombuffer(json.dumps(checkpoint.facts).encode("utf-8"), dtype=np.uint8)
+    np.savez(archive, allow_pickle=False, **{_FACTS: facts, **checkpoint.arrays})
+    body = archive.getvalue()
+    folder.mkdir(parents=True, exist_ok=True)
+    path = folder / f"{number:012d}.ckpt"
+    write_whole(path, _MARK + hashlib.sha256(body).hexdigest().encode("ascii") + b"\n" + body)
+    for old in _newest_first(folder)[KEPT:]:
+        old.unlink()
+    return path
+
+
+def latest_checkpoint(folder: Path) -> tuple[Checkpoint | None, list[Path]]:
+    """Read the newest whole checkpoint.
+
+    Returns
+    -------
+    checkpoint : None where there is none to go on from.
+    damaged : the newer ones that had to be passed over.
+    """
+    damaged: list[Path] = []
+    for path in _newest_first(folder):
+        checkpoint = _read(path)
+        if checkpoint is not None:
+            return checkpoint, damaged
+        damaged.append(path)
+    return None, damaged
+
+
+def _newest_first(folder: Path) -> list[Path]:
+    return sorted(folder.glob("*.ckpt"), reverse=True)
+
+
+def _read(path: Path) -> Checkpoint | None:
+    """The checkpoint in a file, or None if the file is not what was written."""
+    head, _, body = path.read_bytes().partition(b"\n")
+    if head != _MARK + hashlib.sha256(body).hexdigest().encode("ascii"):
+        return None
+    try:
+        with np.load(io.BytesIO(body), allow_pickle=False) as archive:
+            arrays = {name: archive[name] for name in archive.files}
+    except (ValueError, zipfile.BadZipFile):
+        return None
+    facts = json.loads(arrays.pop(_FACTS).tobytes())
+    return Checkpoint(arrays, facts)

@@ -1,0 +1,101 @@
+"""manifest.json: what ran, with which versions, inputs and threads, on which route and why."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import platform
+from collections.abc import Iterable, Mapping
+from dataclasses import asdict, dataclass, field, replace
+from datetime import UTC, datetime
+from importlib.metadata import version
+from pathlib import Path
+from typing import Any, Literal
+
+from bemwave import __version__
+from bemwave.errors import InputError
+from bemwave.records.folder import write_whole
+
+Status = Literal["running", "finished", "interrupted", "failed"]
+_LIBRARIES = ("numpy", "scipy", "numba", "netCDF4", "pydantic")
+
+
+@dataclass(frozen=True)
+class Manifest:
+    """Content of manifest.json.
+
+    Attributes
+    ----------
+    versions : of bemwave, Python and the libraries the numbers depend on.
+    inputs : SHA-256 of each input file, by its name in the case.
+    threads : number of threads of the kernels.
+    route, reason : the route taken, and why.
+    closed : whether walls close the water.
+    mirrors : walls that are images, as (axis, position) pairs.
+    part_names : names of the parts of mesh.vtp, in order.
+    status : how far the run is.
+    started, ended : times of day, UTC.
+    notes : anything else worth keeping; values that JSON can hold.
+    """
+
+    inputs: Mapping[str, str]
+    threads: int
+    route: str
+    reason: str
+    closed: bool
+    mirrors: tuple[tuple[str, float], ...]
+    part_names: tuple[str, ...]
+    status: Status = "running"
+    versions: Mapping[str, str] = field(default_factory=lambda: versions_now())
+    started: str = field(default_factory=lambda: now())
+    ended: str | None = None
+    notes: Mapping[str, Any] = field(default_factory=dict)
+
+    def with_status(self, status: Status) -> Manifest:
+        """Return the manifest of the same run further on; all but "running" end it."""
+        return replace(self, status=status, ended=None if status == "running" else now())
+
+
+def write_manifest(manifest: Manifest, path: Path) -> None:
+    """Write manifest.json; at every moment the old or the new one is there, whole."""
+    write_whole(path, (json.dumps(asdict(manifest), indent=2) + "\n").encode("utf-8"))
+
+
+def read_manifest(path: Path) -> Manifest:
+    """Read manifest.json.
+
+    Raises
+    ------
+    InputError
+        If it is missing or damaged.
+    """
+    try:
+        content = json.loads(path.read_text(encoding="utf-8"))
+        content["mirrors"] = tuple((axis, float(place)) for axis, place in content["mirrors"])
+        content["part_names"] = tuple(content["part_names"])
+        return Manifest(**content)
+    except FileNotFoundError:
+        raise InputError(
+            f"{path.parent} holds no run ({path.name} is missing); expected a folder that "
+            "`bemwave run` made: check its name"
+        ) from None
+    except (ValueError, TypeError, KeyError) as error:
+        raise InputError(
+            f"{path} is damaged ({error}); expected what `bemwave run` wrote: run the case again"
+        ) from error
+
+
+def hashes_of(files: Iterable[str], folder: Path) -> dict[str, str]:
+    """SHA-256 of files, named as in the case, relative to its folder."""
+    return {name: hashlib.sha256((folder / name).read_bytes()).hexdigest() for name in files}
+
+
+def versions_now() -> dict[str, str]:
+    """Versions of what the numbers depend on."""
+    here = {"bemwave": __version__, "python": platform.python_version()}
+    return here | {name: version(name) for name in _LIBRARIES}
+
+
+def now() -> str:
+    """Time of day, UTC, to the second."""
+    return datetime.now(UTC).isoformat(timespec="seconds")

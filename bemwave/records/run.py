@@ -1,0 +1,225 @@
+"""A run folder, opened: its case, mesh, sea and solved field, sampled anywhere again."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from functools import cached_property
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from bemwave.case import Case, read_case
+from bemwave.errors import InputError
+from bemwave.flow.images import Mirror
+from bemwave.flow.samplers import PanelSamplers
+from bemwave.flow.state import ARRAYS, SurfaceState
+from bemwave.geometry.files import read_mesh
+from bemwave.geometry.inside import inside
+from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.handoff import Flow, HandoffSampler, free_points
+from bemwave.handoff.fields import on_surface
+from bemwave.records.folder import RunFolder
+from bemwave.records.history import History
+from bemwave.records.manifest import Manifest, read_manifest
+from bemwave.waves import Sea
+from bemwave.waves.sea_file import read_sea
+
+Array = NDArray[np.float64]
+
+
+class Run:
+    """A run that was made, or is being made.
+
+    Parameters
+    ----------
+    path : path of a run folder
+
+    Raises
+    ------
+    InputError
+        If it holds no run.
+
+    Examples
+    --------
+    >>> run = open_run("out")                         # doctest: +SKIP
+    >>> run.elevation(0.0, 0.0, run.times).max()      # doctest: +SKIP
+    1.83
+    """
+
+    def __init__(self, path: str | Path) -> None:
+        self.folder = RunFolder(Path(path))
+        self.manifest: Manifest = read_manifest(self.folder.manifest)
+        self._samplers: dict[bytes, HandoffSampler] = {}
+
+    @cached_property
+    def case(self) -> Case:
+        """The case as it was run."""
+        return read_case(self.folder.case)
+
+    @cached_property
+    def mesh(self) -> SurfaceMesh:
+        """The panels; the water's part is called "water", a hull's as its body."""
+        mesh = read_mesh(self.folder.mesh)
+        return SurfaceMesh(mesh.points, mesh.triangles, mesh.part, self.manifest.part_names)
+
+    @cached_property
+    def sea(self) -> Sea:
+        """The incident waves."""
+        return read_sea(self.folder.sea)
+
+    @cached_property
+    def history(self) -> History | None:
+        """The solved field; None where nothing had to be solved."""
+        return History(self.folder.history) if self.folder.history.exists() else None
+
+    @cached_property
+    def flow(self) -> Flow | None:
+        """Samplers of the solved field; None where nothing had to be solved."""
+        if self.history is None:
+            return None
+        return PanelSamplers(
+            self.mesh,
+            self.sea.depth,
+            closed=self.manifest.closed,
+            mirrors=tuple(Mirror(axis, position) for axis, position in self.manifest.mirrors),
+            density=self.sea.density,
+        )
+
+    @cached_property
+    def hulls(self) -> dict[str, SurfaceMesh]:
+        """The wetted hulls, by the names of their bodies."""
+        names = [body.name for body in self.case.body]
+        return {
+            name: self.mesh.keep(self.mesh.in_part(name))
+            for name in self.mesh.part_names
+            if name in names
+        }
+
+    @cached_property
+    def times(self) -> Array:
+        """Times of the records, s."""
+        if self.history is not None:
+            return self.history.times
+        run = self.case.run
+        return np.linspace(0.0, run.duration, round(run.duration / run.record_every) + 1)
+
+    def state(self, time: float) -> SurfaceState:
+        """The solved field at a time inside the record, s.
+
+        Raises
+        ------
+        InputError
+            If the time is outside the record.
+        """
+        if not self.times[0] <= time <= self.times[-1]:
+            raise InputError(
+                f"time {time:g} s was asked for; {self.folder.path} has records from "
+                f"{self.times[0]:g} to {self.times[-1]:g} s: ask for one between"
+            )
+        if self.history is None:
+            return SurfaceState(time, **{name: np.zeros(0) for name in ARRAYS})
+        return self.history.at(time)
+
+    def solid(self, points: Array) -> NDArray[np.bool_]:
+        """Which points (n, 3) lie inside hulls, or straight over their waterplanes."""
+        within = np.zeros(len(points), dtype=bool)
+        for hull in self.hulls.values():
+            within |= inside(hull, points)
+        return within
+
+    def elevation(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> Array:
+        """Elevation of the water, m; NaN inside waterlines.
+
+        Parameters
+        ----------
+        x, y : array_like
+            On earth, m; they broadcast.
+        t : float or (nt,) array_like
+            s.
+
+        Returns
+        -------
+        ndarray
+            The shape of `t`, then that of `x` and `y`.
+
+        Raises
+        ------
+        InputError
+            If a time is outside the record, or a place outside the useful water.
+        """
+        at_x, at_y = np.broadcast_arrays(
+            np.asarray(x, dtype=np.float64), np.asarray(y, dtype=np.float64)
+        )
+        plan = np.column_stack([at_x.ravel(), at_y.ravel()])
+        sampler, column = self._sampler(on_surface(plan))
+        times = np.asarray(t, dtype=np.float64)
+        rows = [sampler.elevation(self.state(float(time)))[column] for time in times.ravel()]
+        return np.reshape(rows, (*times.shape, *at_x.shape))
+
+    def velocity(self, points: ArrayLike, t: ArrayLike) -> Array:
+        """Velocity of the water on earth, m/s: NaN above the surface and inside hulls.
+
+        Between still water and a crest it is extrapolated, f(0) + z df/dz(0).
+
+        Parameters
+        ----------
+        points : (..., 3) array_like
+            On earth, m.
+        t : float or (nt,) array_like
+            s.
+
+        Returns
+        -------
+        ndarray
+            The shape of `t`, then that of `points`.
+
+        Raises
+        ------
+        InputError
+            If a time is outside the record, or a place outside the useful water.
+        """
+        places = np.asarray(points, dtype=np.float64)
+        sampler, _ = self._sampler(places.reshape(-1, 3))
+        times = np.asarray(t, dtype=np.float64)
+        rows = [sampler.at(self.state(float(time))).total.velocity for time in times.ravel()]
+        return np.reshape(rows, (*times.shape, *places.shape))
+
+    def _sampler(self, points: Array) -> tuple[HandoffSampler, NDArray[np.int64]]:
+        """A sampler at points and each point's column; the latest is kept for the next call."""
+        self._refuse_outside(points)
+        places = free_points(points)
+        key = points.tobytes()
+        if key not in self._samplers:
+            sampler = HandoffSampler(places, self.sea, self.flow, solid=self.solid)
+            self._samplers = {key: sampler}
+        return self._samplers[key], places.column
+
+    def _refuse_outside(self, points: Iterable[Array]) -> None:
+        for x, y, _ in points:
+            if not self.case.surface.contains(float(x), float(y)):
+                raise InputError(
+                    f"the field was asked for at ({x:g}, {y:g}), outside the useful water of "
+                    f"{self.folder.path}; expected a place inside [surface] size"
+                )
+
+
+def open_run(path: str | Path) -> Run:
+    """Open a run folder.
+
+    Parameters
+    ----------
+    path : path
+
+    Raises
+    ------
+    InputError
+        If it holds no run.
+
+    Examples
+    --------
+    >>> run = bemwave.open_run("out")                       # doctest: +SKIP
+    >>> run.velocity([[0.0, 0.0, -1.0]], t=20.0)            # doctest: +SKIP
+    array([[0.412, 0.003, 0.121]])
+    """
+    return Run(path)
