@@ -13,6 +13,8 @@ from bemwave.geometry.inside import inside
 from bemwave.geometry.outline import Outline
 from bemwave.geometry.surface_mesh import BoolArray, FloatArray
 
+TOUCHING = 1e-3  # of the shorter hull's length: nearer hulls count as touching
+
 
 def check_layout(hulls: Sequence[Hull], outline: Outline) -> None:
     """Refuse bodies that leave the surface, overlap, or touch.
@@ -36,9 +38,11 @@ def check_layout(hulls: Sequence[Hull], outline: Outline) -> None:
 
 def _check_pair(one: Hull, other: Hull) -> None:
     a, b = one.mesh, other.mesh
-    if np.any(a.points.max(axis=0) < b.points.min(axis=0)) or np.any(
-        b.points.max(axis=0) < a.points.min(axis=0)
-    ):
+    least = TOUCHING * min(one.hydrostatics.length, other.hydrostatics.length)
+    apart = np.maximum(
+        a.points.min(axis=0) - b.points.max(axis=0), b.points.min(axis=0) - a.points.max(axis=0)
+    )
+    if apart.max() > least:
         return
     crossing = any(cross(p, q) for p in one.polygons() for q in other.polygons())
     if crossing or inside(a, b.points).any() or inside(b, a.points).any():
@@ -48,7 +52,7 @@ def _check_pair(one: Hull, other: Hull) -> None:
             "change the position of one of them"
         )
     near = clearance(one, other)
-    if near < 1e-3 * min(one.hydrostatics.length, other.hydrostatics.length):
+    if near < least:
         raise InputError(
             f"{one.name} and {other.name} touch ({near:.2g} m apart): leave a gap between them"
         )

@@ -69,9 +69,7 @@ def test_weld_sews_a_jittered_soup_back_together(seed, jitter, size):
 
 def test_weld_counts_what_collapses():
     points = [[0, 0, 0], [1, 0, 0], [0, 1, 0], [1, 1e-9, 0]]
-    mesh, merged, dropped = weld(
-        SurfaceMesh.of_one_part(points, [[0, 1, 2], [0, 3, 1]], "a"), 1e-6
-    )
+    mesh, merged, dropped = weld(SurfaceMesh.of_one_part(points, [[0, 1, 2], [0, 3, 1]], "a"), 1e-6)
     assert (len(mesh.triangles), merged, dropped) == (1, 1, 1)
 
 
@@ -112,6 +110,6 @@ def test_attaching_keeps_the_first_mesh_and_counts_missing_points():
     assert len(both.points) == 2 * len(first.points) - np.count_nonzero(first.points[:, 2] == 0)
     assert boundary_loops(both.triangles) == []
     np.testing.assert_array_equal(both.points[: len(first.points)], first.points)
-    away = second.with_points(second.points + [0.1, 0, 0])
+    away = second.with_points(second.points + np.array([0.1, 0, 0]))
     assert attached(first, away, away.points[:, 2] == 0.0)[1] == 8
     assert extent(first.points) == 3.0
