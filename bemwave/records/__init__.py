@@ -4,7 +4,7 @@ from bemwave.records.checkpoint import Checkpoint, latest_checkpoint, write_chec
 from bemwave.records.checks_file import Verdict, read_checks, write_checks
 from bemwave.records.folder import RunFolder, create_folder, default_folder, refuse_used_folder
 from bemwave.records.history import History, HistoryFile
-from bemwave.records.manifest import Manifest, hashes_of, read_manifest, write_manifest
+from bemwave.records.manifest import Manifest, Rest, hashes_of, read_manifest, write_manifest
 from bemwave.records.run import Run, open_run
 from bemwave.records.series import BodiesFile, GaugesFile
 
@@ -15,6 +15,7 @@ __all__ = [
     "History",
     "HistoryFile",
     "Manifest",
+    "Rest",
     "Run",
     "RunFolder",
     "Verdict",

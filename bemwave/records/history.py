@@ -130,11 +130,9 @@ class History:
         if len(exact):
             return self.record(int(exact[0]))
         left = int(np.searchsorted(self.times, time)) - 1
-        first = min(max(left - 1, 0), max(len(self.times) - 4, 0))
-        near = np.arange(first, min(first + 4, len(self.times)))
-        through = blend(
-            [self.record(int(k)) for k in near], _lagrange(self.times[near], time), time
-        )
+        first, weights = cubic_in_time(self.times, time)
+        near = [self.record(first + k) for k in range(len(weights))]
+        through = blend(near, weights, time)
         return _with_slopes(through, self.record(left), self.record(left + 1))
 
 
@@ -155,10 +153,19 @@ def _with_slopes(state: SurfaceState, left: SurfaceState, right: SurfaceState) -
     return SurfaceState(time=state.time, **fields)
 
 
-def _lagrange(times: Array, time: float) -> Array:
-    """Weights of the polynomial through values at `times`, (n,)."""
-    weights = np.ones(len(times))
-    for i, at in enumerate(times):
-        others = np.delete(times, i)
+def cubic_in_time(times: Array, time: float) -> tuple[int, Array]:
+    """The polynomial through the four records about a time, or through all if there are fewer.
+
+    Returns
+    -------
+    first : index of the first of them.
+    weights : (4,) or fewer
+    """
+    left = int(np.searchsorted(times, time)) - 1
+    first = min(max(left - 1, 0), max(len(times) - 4, 0))
+    near = times[first : first + 4]
+    weights = np.ones(len(near))
+    for i, at in enumerate(near):
+        others = np.delete(near, i)
         weights[i] = np.prod((time - others) / (at - others))
-    return weights
+    return first, weights

@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 import platform
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, dataclass, field, replace
 from datetime import UTC, datetime
 from importlib.metadata import version
@@ -14,10 +14,40 @@ from typing import Any, Literal
 
 from bemwave import __version__
 from bemwave.errors import InputError
+from bemwave.geometry.hull import Hull, place_hull
+from bemwave.geometry.pose import on_earth
+from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.records.folder import write_whole
 
 Status = Literal["running", "finished", "interrupted", "failed"]
 _LIBRARIES = ("numpy", "scipy", "numba", "netCDF4", "pydantic")
+
+
+@dataclass(frozen=True)
+class Rest:
+    """Where a body rests: its origin on earth, m, its heading, rad, its centre of mass in it, m."""
+
+    position: Sequence[float]
+    heading: float
+    centre_of_mass: Sequence[float]
+
+    @classmethod
+    def of(cls, hull: Hull) -> Rest:
+        """Where a hull rests."""
+        x, y = hull.place.shift[:2].tolist()
+        return cls([x, y], hull.heading, hull.centre_of_mass.tolist())
+
+    def hull(self, name: str, wetted: SurfaceMesh) -> Hull:
+        """The hull of a wetted mesh on earth that rests here."""
+        x, y = self.position
+        level = wetted.with_points(on_earth((x, y), self.heading).back(wetted.points))
+        return place_hull(
+            name,
+            level,
+            position=(x, y),
+            heading=self.heading,
+            centre_of_mass=self.centre_of_mass,
+        )
 
 
 @dataclass(frozen=True)
@@ -33,6 +63,8 @@ class Manifest:
     closed : whether walls close the water.
     mirrors : walls that are images, as (axis, position) pairs.
     part_names : names of the parts of mesh.vtp, in order.
+    bodies : where each body rests, by name; see `Rest`.
+    shortest_period, peak_period : s, of what the field holds.
     status : how far the run is.
     started, ended : times of day, UTC.
     notes : anything else worth keeping; values that JSON can hold.
@@ -45,6 +77,9 @@ class Manifest:
     closed: bool
     mirrors: tuple[tuple[str, float], ...]
     part_names: tuple[str, ...]
+    shortest_period: float
+    peak_period: float
+    bodies: Mapping[str, Rest] = field(default_factory=dict)
     status: Status = "running"
     versions: Mapping[str, str] = field(default_factory=lambda: versions_now())
     started: str = field(default_factory=lambda: now())
@@ -73,6 +108,7 @@ def read_manifest(path: Path) -> Manifest:
         content = json.loads(path.read_text(encoding="utf-8"))
         content["mirrors"] = tuple((axis, float(place)) for axis, place in content["mirrors"])
         content["part_names"] = tuple(content["part_names"])
+        content["bodies"] = {name: Rest(**rest) for name, rest in content["bodies"].items()}
         return Manifest(**content)
     except FileNotFoundError:
         raise InputError(

@@ -15,13 +15,15 @@ from bemwave.flow.images import Mirror
 from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import ARRAYS, SurfaceState
 from bemwave.geometry.files import read_mesh
-from bemwave.geometry.inside import inside
+from bemwave.geometry.hull import Hull
 from bemwave.geometry.surface_mesh import SurfaceMesh
-from bemwave.handoff import Flow, HandoffSampler, free_points
+from bemwave.handoff import Flow, HandoffSampler, Scene, free_points
 from bemwave.handoff.fields import on_surface
+from bemwave.handoff.netcdf import open_patiently, read_times
 from bemwave.records.folder import RunFolder
-from bemwave.records.history import History
+from bemwave.records.history import History, cubic_in_time
 from bemwave.records.manifest import Manifest, read_manifest
+from bemwave.records.series import in_radians
 from bemwave.waves import Sea
 from bemwave.waves.sea_file import read_sea
 
@@ -87,14 +89,24 @@ class Run:
         )
 
     @cached_property
-    def hulls(self) -> dict[str, SurfaceMesh]:
-        """The wetted hulls, by the names of their bodies."""
-        names = [body.name for body in self.case.body]
-        return {
-            name: self.mesh.keep(self.mesh.in_part(name))
-            for name in self.mesh.part_names
-            if name in names
-        }
+    def hulls(self) -> tuple[Hull, ...]:
+        """The bodies at rest, in the order of the case."""
+        return tuple(
+            rest.hull(name, self.mesh.keep(self.mesh.in_part(name)))
+            for name, rest in self.manifest.bodies.items()
+        )
+
+    @cached_property
+    def scene(self) -> Scene:
+        """What a new hand-off is taken from."""
+        return Scene(
+            sea=self.sea,
+            flow=self.flow,
+            water=self.mesh.keep(self.mesh.in_part("water")),
+            hulls=self.hulls,
+            shortest_period=self.manifest.shortest_period,
+            peak_period=self.manifest.peak_period,
+        )
 
     @cached_property
     def times(self) -> Array:
@@ -121,12 +133,18 @@ class Run:
             return SurfaceState(time, **{name: np.zeros(0) for name in ARRAYS})
         return self.history.at(time)
 
-    def solid(self, points: Array) -> NDArray[np.bool_]:
-        """Which points (n, 3) lie inside hulls, or straight over their waterplanes."""
-        within = np.zeros(len(points), dtype=bool)
-        for hull in self.hulls.values():
-            within |= inside(hull, points)
-        return within
+    def body_velocities(self, time: float) -> Array:
+        """Velocity of each body along and about its own axes, (hulls, 6), m/s and rad/s.
+
+        Between records it is the cubic through four of them.
+        """
+        if not self.hulls:
+            return np.zeros((0, 6))
+        with open_patiently(self.folder.bodies, "r") as file:
+            times = read_times(file)
+            first, weights = cubic_in_time(times, time)
+            near = np.asarray(file["velocity"][first : first + len(weights)], dtype=np.float64)
+        return in_radians(np.tensordot(weights, near, axes=1))
 
     def elevation(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> Array:
         """Elevation of the water, m; NaN inside waterlines.
@@ -191,7 +209,7 @@ class Run:
         places = free_points(points)
         key = points.tobytes()
         if key not in self._samplers:
-            sampler = HandoffSampler(places, self.sea, self.flow, solid=self.solid)
+            sampler = HandoffSampler(places, self.sea, self.flow, solid=self.scene.solid)
             self._samplers = {key: sampler}
         return self._samplers[key], places.column
 

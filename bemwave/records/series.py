@@ -185,6 +185,11 @@ def in_degrees(modes: ArrayLike) -> NDArray[np.float64]:
     return turned
 
 
+def in_radians(modes: ArrayLike) -> NDArray[np.float64]:
+    """Turn the angles of (..., 6) from degrees to radians."""
+    return np.asarray(modes, dtype=np.float64) / in_degrees(np.ones(len(MODES)))
+
+
 def names_of(names: Sequence[str]) -> NDArray[np.object_]:
     """Names as netCDF takes them."""
     return np.array(list(names), dtype=object)

@@ -7,6 +7,7 @@ from bemwave.errors import InputError
 from bemwave.records import (
     Checkpoint,
     Manifest,
+    Rest,
     RunFolder,
     Verdict,
     create_folder,
@@ -32,6 +33,9 @@ def manifest(**more):
         closed=True,
         mirrors=(("x", -3.5),),
         part_names=("water", "tender"),
+        shortest_period=1.5,
+        peak_period=6.0,
+        bodies={"tender": Rest([1.0, 2.0], 0.5, [0.0, 0.0, 0.25])},
         **more,
     )
 

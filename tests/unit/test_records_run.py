@@ -1,11 +1,14 @@
 import math
 
+import netCDF4
 import numpy as np
 import pytest
 from scipy.integrate import quad
 from scipy.sparse.linalg import spsolve
+from scipy.special import j0
 
 import bemwave
+from bemwave.case.output import Handoff as Entry
 from bemwave.errors import InputError
 from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import SurfaceState
@@ -16,8 +19,9 @@ from bemwave.geometry.hull import place_hull
 from bemwave.geometry.outline import Rectangle
 from bemwave.geometry.surface_mesh import joined
 from bemwave.geometry.water_surface import water_surface
+from bemwave.handoff import Handoff, closure_figure, divergence_figure
 from bemwave.kernels.panels import SEVEN
-from bemwave.records import HistoryFile, Manifest, create_folder, write_manifest
+from bemwave.records import BodiesFile, HistoryFile, Manifest, Rest, create_folder, write_manifest
 from bemwave.waves import Sea
 from bemwave.waves.sea_file import write_sea
 
@@ -26,7 +30,7 @@ CASE = """
 depth = "deep"
 [surface]
 size = [16.0, 16.0]
-spacing = 1.0
+spacing = 0.75
 [run]
 duration = 2.0
 record_every = 0.25
@@ -38,61 +42,92 @@ centre_depth = 3.0
 position = [4.0, 0.0]
 """
 SEA = Sea.of([1.2], [0.5], [0.1], [0.3], depth=math.inf)
-WIDTH, W = 2.0, 1.1  # a swelling and sinking bell of water: not a wave, but its field is known
+# Water driven by a bell of potential on z = 0 that comes and goes: no free wave, but its field is
+# known, phi = int k s^2 exp(-k^2 s^2/2) J0(kr) exp(kz) dk (the bell's Hankel transform).
+WIDTH, W = 2.5, 1.1
 
 
 def bell(points):
     return np.exp(-np.sum(points[..., :2] ** 2, axis=-1) / (2 * WIDTH**2))
 
 
-def projected_bell(elements):
-    """Nodal values of the linear function nearest to the bell, as a Galerkin solution has them."""
+def rise(points):
+    """Vertical velocity at z = 0 under a bell of height 1."""
+    k, weight = np.polynomial.legendre.leggauss(60)
+    k, weight = 2.5 * (k + 1), 2.5 * weight
+    radius = np.linalg.norm(points[..., :2], axis=-1)
+    return j0(radius[..., None] * k) @ (weight * k**2 * WIDTH**2 * np.exp(-((k * WIDTH) ** 2) / 2))
+
+
+def projected(function, elements):
+    """Nodal values of the nearest piecewise linear function, as a Galerkin solution has them."""
     load = np.zeros(len(elements.points))
     corners = elements.points[elements.water]
     areas = 0.5 * np.linalg.norm(
         np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]), axis=1
     )
     for *shares, weight in SEVEN:
-        value = bell(np.einsum("j,mjc->mc", shares, corners))
+        value = function(np.einsum("j,mjc->mc", shares, corners))
         for j in range(3):
             np.add.at(load, elements.water[:, j], areas * weight * shares[j] * value)
     return spsolve(elements.mass.tocsc(), load[: elements.free])
 
 
 def write_run(path):
-    """A run folder whose solved field is the bell, the submerged buoy left out of the flow."""
+    """A run folder whose solved field is the bell's, the submerged buoy left out of the flow."""
     folder = create_folder(path, CASE)
-    water = water_surface(Rectangle(-12, 12, -12, 12), 1.0)
+    water = water_surface(Rectangle(-12, 12, -12, 12), 0.75)
     mesh = boundary_mesh(water, [], depth=math.inf)
-    buoy = place_hull("buoy", forms.sphere(0.5, 3.0, 0.25), position=(4.0, 0.0)).mesh
-    both = joined([mesh, buoy])
+    buoy = place_hull("buoy", forms.sphere(0.5, 3.0, 0.25), position=(4.0, 0.0), heading=0.5)
+    both = joined([mesh, buoy.mesh])
     write_mesh(both, folder.mesh)
     write_sea(SEA, folder.sea)
     write_manifest(
-        Manifest({}, 1, "panels", "a test", False, (), both.part_names, "finished"),
+        Manifest(
+            inputs={},
+            threads=1,
+            route="panels",
+            reason="a test",
+            closed=False,
+            mirrors=(),
+            part_names=both.part_names,
+            shortest_period=2.0,
+            peak_period=4.0,
+            bodies={"buoy": Rest.of(buoy)},
+            status="finished",
+        ),
         folder.manifest,
     )
+    bodies = BodiesFile(folder.bodies, ["buoy"])
     elements = PanelSamplers(both, math.inf, closed=False).elements
     hull_nodes = elements.points[elements.free : elements.nodes]
     panels = elements.points[elements.hull].mean(axis=1)
-    nodes, shape = elements.points[: elements.free], projected_bell(elements)
+    nodes = elements.points[: elements.free]
+    shapes = projected(bell, elements), projected(rise, elements)
     out = HistoryFile(folder.history, nodes, hull_nodes, panels)
     for time in np.arange(9) * 0.25:
-        out.append(state_at(time, shape, len(hull_nodes), len(panels)))
+        out.append(state_at(time, shapes, len(hull_nodes), len(panels)))
+        bodies.append(time, np.zeros((1, 6)), velocity_at(time), {})
     out.flush()
+    bodies.flush()
     return folder
 
 
-def state_at(time, shape, hull_nodes, panels):
+def velocity_at(time):
+    return np.arange(6).reshape(1, 6) * math.sin(W * time)
+
+
+def state_at(time, shapes, hull_nodes, panels):
+    pushed, risen = shapes
     cos, sin = math.cos(W * time), math.sin(W * time)
     # the hull's part is zero: potential and flux there are those of a body that is not there
     return SurfaceState(
         time=time,
-        elevation=shape * sin / W,
-        potential=shape * cos,
-        potential_rate=-W * shape * sin,
-        surface_flux=shape * cos,
-        surface_flux_rate=-W * shape * sin,
+        elevation=risen * sin / W,
+        potential=pushed * cos,
+        potential_rate=-W * pushed * sin,
+        surface_flux=risen * cos,
+        surface_flux_rate=-W * risen * sin,
         hull_potential=np.zeros(hull_nodes),
         hull_potential_rate=np.zeros(hull_nodes),
         hull_flux=np.zeros(panels),
@@ -120,14 +155,13 @@ def test_elevation_is_the_sum_of_both_parts_at_any_place_and_time(run):
     assert got.shape == (2, 3, 2)
     plan = np.column_stack([x.ravel(), y.ravel()])
     for k, time in enumerate(times):
-        want = SEA.elevation(x, y, time) + bell(plan).reshape(3, 2) * math.sin(W * time) / W
-        # the recovery's own error at four panels a width: half a per cent of the bell's height
-        np.testing.assert_allclose(got[k], want, atol=0.01 * math.sin(W * time) / W)
+        want = SEA.elevation(x, y, time) + rise(plan).reshape(3, 2) * math.sin(W * time) / W
+        # the recovery's own error at four panels a width
+        np.testing.assert_allclose(got[k], want, atol=0.01 * rise(np.zeros(2)) / W)
     assert run.elevation(0.0, 0.0, 0.5).shape == ()
 
 
 def test_velocity_under_the_bell_is_that_of_its_harmonic_continuation(run):
-    # potential int k s^2 exp(-k^2 s^2/2) exp(kz) dk on the axis (Hankel transform of the bell)
     for depth in (2.0, 4.0):
         vertical, _ = quad(
             lambda k, z: k**2 * WIDTH**2 * math.exp(-((k * WIDTH) ** 2) / 2 - k * z),
@@ -145,6 +179,42 @@ def test_there_is_no_velocity_in_air_nor_in_a_hull(run):
     assert got.shape == (2, 3, 3)
     assert np.isnan(got[:, :2]).all()
     assert np.isfinite(got[:, 2]).all()
+
+
+def test_a_hull_stands_where_it_rested(run):
+    (buoy,) = run.hulls
+    assert (buoy.name, buoy.heading) == ("buoy", pytest.approx(0.5))
+    np.testing.assert_allclose(buoy.place.shift, [4.0, 0.0, 0.0])
+    np.testing.assert_allclose(buoy.mesh.points.mean(axis=0), [4.0, 0.0, -3.0], atol=1e-9)
+    for time in (0.5, 0.6):
+        # the cubic through four records: 3/128 (w dt)^4 at most
+        got = run.body_velocities(time)
+        np.testing.assert_allclose(got, velocity_at(time), atol=5 * 3 / 128 * (W * 0.25) ** 4)
+    np.testing.assert_allclose(run.body_velocities(0.5), velocity_at(0.5), rtol=1e-14)
+
+
+def test_a_new_handoff_can_be_taken_from_it(run, tmp_path):
+    box = {"centre": [4.0, 0.0], "size": [4.0, 4.0], "bottom": -5.0, "top": 1.0}
+    entry = Entry(
+        name="again", box=box, spacing=(0.25, 0.25), every=0.4, end=2.0, volume_at_start=True
+    )
+    handoff = Handoff(entry, run.case, run.scene, tmp_path)
+    for time in handoff.times:
+        handoff.write(run.state(time), run.body_velocities(time))
+    handoff.flush()
+    with netCDF4.Dataset(tmp_path / "again.nc") as file:
+        assert len(file["time"][:]) == 6
+        # the contract's limit, 1 % of the largest face flux, on the real samplers
+        balance = [file[n][:].data for n in ("net_flux", "volume_rate", "largest_face_flux")]
+        assert closure_figure(*balance) < 0.01
+        cells = [file[n][:].data for n in ("cell_net_flux", "cell_face_flux")]
+        assert divergence_figure(*cells) < 0.01
+    with netCDF4.Dataset(tmp_path / "again-start.nc") as file:
+        points = np.column_stack([file[n][:] for n in "xyz"])
+        inside = np.linalg.norm(points - [4.0, 0.0, -3.0], axis=1) < 0.5
+        under = points[:, 2] < -1
+        assert inside.any()
+        np.testing.assert_array_equal(file["wet"][0][under] == 0, inside[under])
 
 
 def test_places_and_times_outside_are_refused(run):
