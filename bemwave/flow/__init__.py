@@ -1,0 +1,1 @@
+"""The boundary-value problem of the water: flow maps, and samplers of what they solve."""

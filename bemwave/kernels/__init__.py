@@ -1,0 +1,1 @@
+"""Compiled loops: panel integrals. Arrays in, arrays out; imports nothing of bemwave."""
