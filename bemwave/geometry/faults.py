@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from bemwave.geometry.intersections import piercing_edges
 from bemwave.geometry.surface_mesh import BoolArray, FloatArray, SurfaceMesh
 from bemwave.geometry.topology import directed_edges, edge_uses, extent, pieces
 
@@ -39,8 +40,9 @@ def find_faults(mesh: SurfaceMesh, open_at: Sequence[float] = ()) -> list[Fault]
     list of Fault
         Kinds: "hole" (an edge used once elsewhere than at `open_at`), "flipped" (neighbours that
         run their common edge the same way), "non-manifold" (an edge of three or more triangles),
-        "duplicate" (the same three corners twice), "degenerate" (no area), "inside out"
-        (a piece enclosing a negative volume). Self-intersection is not looked for.
+        "duplicate" (the same three corners twice), "degenerate" (no area),
+        "self-intersection" (edges through other triangles), "inside out" (a piece enclosing a
+        negative volume).
     """
     edges, count, which = edge_uses(mesh.triangles)
     middles = mesh.points[edges].mean(axis=1)
@@ -49,6 +51,7 @@ def find_faults(mesh: SurfaceMesh, open_at: Sequence[float] = ()) -> list[Fault]
         lying |= np.all(np.abs(mesh.points[edges, 2] - level) < 1e-6 * extent(mesh.points), axis=1)
     directed = directed_edges(mesh.triangles)
     forward = np.bincount(which, weights=directed[:, 0] < directed[:, 1], minlength=len(edges))
+    piercing = piercing_edges(mesh)
     found = [
         _fault(
             "hole", "edges belong to one triangle only (a hole)", middles, (count == 1) & ~lying,
@@ -70,7 +73,12 @@ def find_faults(mesh: SurfaceMesh, open_at: Sequence[float] = ()) -> list[Fault]
         _fault(
             "degenerate", "triangles have no area", mesh.centroids,
             mesh.areas < 1e-12 * extent(mesh.points) ** 2,
-            "remove them in a mesh program, or let the hull be remeshed (panel_size)",
+            "remove them in a mesh program, or set a larger weld tolerance",
+        ),
+        _fault(
+            "self-intersection", "edges pass through other triangles (self-intersection)", piercing,
+            np.ones(len(piercing), dtype=bool),
+            "unite the solids in a mesh program, or leave the inner one out (without)",
         ),
     ]  # fmt: skip
     found = [fault for fault in found if fault.count]

@@ -225,10 +225,11 @@ def _meshed(
         return wetted.mesh, ["cut, not remeshed"] if wetted.cut else []
     if not wetted.cut and is_even(wetted.mesh, panel_size):
         return wetted.mesh, ["taken as it is: already meshed at the panel size"]
-    mesh = remesh(wetted.mesh, panel_size, source)
+    mesh, angle = remesh(wetted.mesh, panel_size, source)
     after = hydrostatics(mesh)
     note = (
-        f"remeshed at {panel_size:g} m: volume {before.volume:.6g} -> {after.volume:.6g} m3, "
+        f"remeshed at {panel_size:g} m, edges over {angle:g} degrees kept: "
+        f"volume {before.volume:.6g} -> {after.volume:.6g} m3, "
         f"waterplane {before.waterplane_area:.6g} -> {after.waterplane_area:.6g} m2, "
         f"centre of buoyancy {_triple(before)} -> {_triple(after)} m"
     )

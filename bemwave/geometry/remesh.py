@@ -6,14 +6,19 @@ from typing import Any
 
 import numpy as np
 
+from bemwave.errors import InputError
+from bemwave.geometry.faults import find_faults
 from bemwave.geometry.mesher import run_job
 from bemwave.geometry.surface_mesh import FloatArray, IntArray, SurfaceMesh
 from bemwave.geometry.topology import boundary_edges, directed_edges, extent
 
-SHARP = 40.0  # degrees between neighbours from which an edge is kept as an edge
+# degrees between neighbours from which an edge is kept as an edge. An edge that fades out within a
+# face (a stem running into a flat bottom) can leave the mesher with an open curve: then others
+# are tried; at 180 only the rim is kept
+SHARP = (40.0, 30.0, 60.0, 80.0, 180.0)
 
 
-def remesh(mesh: SurfaceMesh, panel_size: float, what: str) -> SurfaceMesh:
+def remesh(mesh: SurfaceMesh, panel_size: float, what: str) -> tuple[SurfaceMesh, float]:
     """Mesh a surface anew with edges of `panel_size`, keeping sharp edges and open rims.
 
     New points lie on the old triangles and new rim points on the old rim, so a waterline stays at
@@ -22,29 +27,56 @@ def remesh(mesh: SurfaceMesh, panel_size: float, what: str) -> SurfaceMesh:
     Parameters
     ----------
     mesh : SurfaceMesh
+        Wetted hull, normals out of the water.
     panel_size : float
         Metres.
     what : str
         Name of the hull, for messages.
+
+    Returns
+    -------
+    mesh : SurfaceMesh
+    angle : float
+        Edges sharper than this many degrees were kept; 40 unless that could not be meshed.
 
     Raises
     ------
     MissingLibraryError
         If gmsh cannot be loaded.
     InputError
-        If gmsh fails, or the rim does not come back where it was.
+        If gmsh makes no sound mesh of it.
     """
-    job = {
-        "points": mesh.points,
-        "triangles": mesh.triangles,
-        "size": panel_size,
-        "angle": SHARP,
-    }
-    result = run_job("remesh", job, f"remeshing {what} at {panel_size:g} m")
+    task = f"remeshing {what} at {panel_size:g} m"
+    reason = ""
+    for angle in SHARP:
+        job = {
+            "points": mesh.points,
+            "triangles": mesh.triangles,
+            "size": panel_size,
+            "angle": angle,
+        }
+        try:
+            new = _remeshed(mesh, run_job("remesh", job, task))
+        except InputError as error:
+            reason = str(error)
+            continue
+        faults = find_faults(new.flipped(), open_at=np.unique(_rim(mesh)).tolist())
+        if not faults:
+            return new, angle
+        reason = f"{task} gave a mesh in which {faults[0]}"
+    raise InputError(reason)
+
+
+def _remeshed(old: SurfaceMesh, result: dict[str, Any]) -> SurfaceMesh:
     new = SurfaceMesh.of_one_part(
-        _rim_levels_restored(result, mesh), result["triangles"], mesh.part_names[0]
+        _rim_levels_restored(result, old), result["triangles"], old.part_names[0]
     ).keep(np.ones(len(result["triangles"]), dtype=bool))
-    return _faced_like(mesh, new, result["surface"])
+    return _faced_like(old, new, result["surface"])
+
+
+def _rim(mesh: SurfaceMesh) -> FloatArray:
+    """Heights of the open edges' points."""
+    return np.asarray(mesh.points[np.unique(boundary_edges(mesh.triangles)), 2])
 
 
 def is_even(mesh: SurfaceMesh, panel_size: float) -> bool:
@@ -73,7 +105,7 @@ def _rim_levels_restored(result: dict[str, Any], old: SurfaceMesh) -> FloatArray
     points = np.array(result["points"], dtype=np.float64)
     rim = np.unique(boundary_edges(result["triangles"]))
     tolerance = 1e-9 * extent(old.points)
-    for level in np.unique(old.points[np.unique(boundary_edges(old.triangles)), 2]):
+    for level in np.unique(_rim(old)):
         near = rim[np.abs(points[rim, 2] - level) < tolerance]
         points[near, 2] = level
     return points

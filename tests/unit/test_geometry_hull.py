@@ -1,6 +1,7 @@
 """From a hull file to a placed, wetted hull: cutting, faults, attitude, remeshing."""
 
 import math
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -10,10 +11,12 @@ from hypothesis import strategies as st
 from bemwave.errors import InputError
 from bemwave.geometry.cut import above, below
 from bemwave.geometry.faults import find_faults
+from bemwave.geometry.files import read_mesh
 from bemwave.geometry.forms import box, cylinder, sphere
 from bemwave.geometry.hull import prepare_hull
 from bemwave.geometry.hull_file import put_in_water
 from bemwave.geometry.hydrostatics import hydrostatics
+from bemwave.geometry.intersections import piercing_edges
 from bemwave.geometry.remesh import quality
 from bemwave.geometry.surface_mesh import SurfaceMesh, joined
 from bemwave.geometry.topology import boundary_loops, weld
@@ -253,6 +256,43 @@ def test_a_sound_mesh_has_no_faults():
     assert find_faults(ball()) == []
 
 
+def test_a_skeg_sunk_into_the_hull_is_found():
+    # two sound closed solids that overlap: nothing but the crossing tells
+    skeg = moved(closed_box(2.0, 0.2, 1.0, 0.2), [-2.03, 0.04, -1.47])
+    mesh = joined([closed_box(), skeg])
+    assert [fault.kind for fault in find_faults(mesh)] == ["self-intersection"]
+    with pytest.raises(InputError, match=r"self-intersection.*unite the solids"):
+        prepare_hull(mesh, "b")
+    clear = joined([closed_box(), moved(skeg, [0.0, 0.0, -0.6])])
+    assert find_faults(clear) == []
+
+
+def test_a_folded_skin_is_found():
+    mesh = ball(size=0.3)
+    lowest = np.argmin(mesh.points[:, 2])
+    points = mesh.points.copy()
+    points[lowest] = [0.11, 0.23, 1.5]  # the bottom pulled out through the top
+    assert "self-intersection" in {fault.kind for fault in find_faults(mesh.with_points(points))}
+
+
+@settings(deadline=None, max_examples=40)
+@given(seed=st.integers(0, 2**32 - 1), tilt=st.floats(0.05, 1.4))
+def test_piercing_is_told_apart_from_missing(seed, tilt):
+    # a triangle and a separate one whose one edge runs through it, or past it, by construction
+    rng = np.random.default_rng(seed)
+    base = np.array([[0, 0, 0], [4, 0, 0], [0, 4, 0.0]])
+    weights = rng.dirichlet([2, 2, 2])
+    through = weights @ base
+    direction = np.array([math.cos(tilt) * rng.choice([-1, 1]), 0.3, math.sin(tilt)])
+    past = np.array([5.0, 5.0, 0.0])
+    for target, count in ((through, 1), (past, 0)):
+        p, q = target - direction, target + direction
+        far = target + direction + np.array([20.0, 20.0, 7.0])
+        mesh = SurfaceMesh.of_one_part(np.stack([*base, p, q, far]), [[0, 1, 2], [3, 4, 5]], "a")
+        pierced = piercing_edges(mesh)
+        assert any(np.allclose(middle, target) for middle in pierced) == bool(count)
+
+
 def test_faults_above_water_do_not_matter():
     mesh = ball(size=0.3)
     highest = np.argmax(mesh.centroids[:, 2])
@@ -326,7 +366,7 @@ def test_remeshing_keeps_edges_levels_and_volume(needs_gmsh, trim):
     assert after.volume == pytest.approx(before.volume, rel=1e-6)
     assert after.waterplane_area == pytest.approx(before.waterplane_area, rel=1e-6)
     assert quality(mesh).min() > 0.3
-    assert "remeshed at 0.4 m: volume" in hull.notes[-1]
+    assert "remeshed at 0.4 m, edges over 40 degrees kept: volume" in hull.notes[-1]
 
 
 def test_remeshing_a_ball_loses_the_chord_volume_and_says_so(needs_gmsh):
@@ -338,6 +378,19 @@ def test_remeshing_a_ball_loses_the_chord_volume_and_says_so(needs_gmsh):
         assert hull.hydrostatics_before.volume > hull.hydrostatics.volume
     assert error[1] < 0.004
     assert np.log2(error[0] / error[1]) == pytest.approx(2.0, abs=0.4)
+
+
+@pytest.mark.parametrize(
+    ("draught", "trim", "heel"), [(1.39, 5, -15), (1.84, 4, -10), (1.54, 6, 15)]
+)
+def test_a_hull_whose_sharp_edges_fade_out_is_remeshed(needs_gmsh, draught, trim, heel):
+    # bow down: the tender's stem runs out into her bottom and leaves no closed faces
+    tender = read_mesh(Path(__file__).parents[2] / "meshes" / "tender.stl")
+    angles = {"trim": math.radians(trim), "heel": math.radians(heel)}
+    hull = prepare_hull(tender, "t", draught=draught, panel_size=0.6, **angles)
+    assert hull.hydrostatics.volume == pytest.approx(hull.hydrostatics_before.volume, rel=0.015)
+    assert find_faults(hull.mesh.flipped(), open_at=[0.0]) == []
+    assert quality(hull.mesh).min() > 0.2
 
 
 def test_a_mesh_that_needs_nothing_is_taken_as_it_is_without_the_mesher(monkeypatch):
