@@ -135,8 +135,10 @@ class Handoff:
 
     def _balances(self, box: Box, points: PointSet) -> tuple[Closure, CellDivergence]:
         scene = self._scene
-        flow = None if self._entry.field == "incident" else scene.flow
-        waterplanes = [Waterplane.of(hull) for hull in scene.hulls]
+        # the incident waves alone know of no bodies and close over their waterplanes too
+        alone = self._entry.field == "incident"
+        flow = None if alone else scene.flow
+        waterplanes = [] if alone else [Waterplane.of(hull) for hull in scene.hulls]
         closure = Closure(box, points, scene.sea, flow, scene.water, waterplanes)
         return closure, CellDivergence(box, scene.sea, flow, scene.solid)
 

@@ -57,7 +57,7 @@ class CellDivergence:
 
     def at(self, state: SurfaceState) -> DivergenceInstant:
         """Fluxes of the cells at the time of a solved state."""
-        velocity = self._sampler.at(state).first_order.reshape(self._outward.shape)
+        velocity = self._sampler.first_order(state).reshape(self._outward.shape)
         by_face = np.sum(velocity * self._outward, axis=(2, 3))
         net = np.abs(by_face.sum(axis=1))
         return DivergenceInstant(

@@ -110,7 +110,7 @@ class HandoffSampler:
         elevation = np.where(self._covered, 0.0, _total(self._parts, "elevation", state))
         surface = elevation[self._set.column]
         wet = self._wet(surface)
-        first_order = self._first_order(self._parts, state)
+        first_order = self.first_order(state)
         total = self._values(self._parts, state, first_order, surface, wet)
         incident = None
         if self._show_incident:
@@ -121,6 +121,10 @@ class HandoffSampler:
     def elevation(self, state: SurfaceState) -> Array:
         """Elevation of the columns alone, (m,), m; NaN inside waterlines."""
         return np.where(self._covered, np.nan, _total(self._parts, "elevation", state))
+
+    def first_order(self, state: SurfaceState) -> Array:
+        """Velocity up to z = 0 alone, (n, 3), m/s; zero above and inside hulls."""
+        return self._first_order(self._parts, state)
 
     def _first_order(self, parts: list[Part], state: SurfaceState) -> Array:
         velocity = np.zeros_like(self._set.points)

@@ -82,6 +82,20 @@ def test_the_excess_above_still_water_is_second_order(state_at):
     assert np.abs(excess[0]).max() / np.abs(excess[1]).max() == pytest.approx(4.0, rel=0.1)
 
 
+def test_closure_is_the_same_whatever_the_crest_rule(state_at):
+    # design.md section 5: on unstretched velocities
+    sea, box = some_sea(15.0), Box((0.0, 0.0), (12.0, 8.0), 0.0, -6.0, 2.0, (1.0, 0.25))
+    points = box_points(box)
+    closure = Closure(box, points, sea, None, water_mesh())
+    found = {
+        crest: closure.at(HandoffSampler(points, sea, None, crest).at(state_at(2.0)), state_at(2.0))
+        for crest in ("linear", "wheeler", "cut")
+    }
+    assert len({c.net_flux for c in found.values()}) == 1
+    assert len({c.volume_rate for c in found.values()}) == 1
+    assert len({c.wet_excess for c in found.values()}) == 3
+
+
 def test_a_heaving_body_displaces_what_its_waterplane_sweeps(state_at):
     # still water but for a body that rises: the surface over its waterplane is its own
     angle = np.linspace(0, 2 * math.pi, 60, endpoint=False)
