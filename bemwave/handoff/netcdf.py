@@ -151,11 +151,6 @@ def open_patiently(path: Path, mode: Literal["r", "a"]) -> Any:
             clock.sleep(0.05)
 
 
-def write_file(path: Path, layout: Layout) -> None:
-    """Write a file without records: the fixed variables of `layout` alone."""
-    _create(path, layout)
-
-
 def complete_records(file: Any) -> int:
     """How many records of an open file are complete: those up to the first missing time."""
     missing = np.ma.getmaskarray(file["time"][:])

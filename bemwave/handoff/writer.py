@@ -191,7 +191,9 @@ def _series(axes: Axes, ending: str = "") -> list[Variable]:
         made.append(_field(name + ending, "m s-1", f"velocity {part} along {axis}", standard))
     made.append(_field("p" + ending, "Pa", f"dynamic pressure {part}", {"comment": PRESSURE_NOTE}))
     elevation = f"elevation {part} above still water"
-    made.append(Variable("elevation" + ending, ("time", "column"), "m", elevation, fill=True))
+    foot = {"coordinates": "column_x column_y" + ("" if axes.up == "z" else " column_z")}
+    place = ("time", "column")
+    made.append(Variable("elevation" + ending, place, "m", elevation, fill=True, attributes=foot))
     return made
 
 
