@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
 
 from bemwave.case.body import Body
@@ -12,7 +12,7 @@ from bemwave.geometry import forms
 from bemwave.geometry.columns import columns
 from bemwave.geometry.files import read_mesh
 from bemwave.geometry.hull import Hull, place_hull, prepare_hull
-from bemwave.geometry.hydrostatics import Hydrostatics
+from bemwave.geometry.hydrostatics import least_width
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 
@@ -72,9 +72,19 @@ def hull_from(body: Body, *, spacing: float, depth: float, folder: Path) -> Hull
     return place_hull(body.name, wetted, position=position, heading=heading, centre_of_mass=centre)
 
 
-def default_panel_size(spacing: float) -> Callable[[Hydrostatics], float]:
+def default_panel_size(spacing: float) -> Callable[[SurfaceMesh], float]:
     """Half the surface's spacing or a sixth of the hull's least width, whichever is smaller."""
-    return lambda hull: min(0.5 * spacing, min(hull.length, hull.beam) / 6.0)
+    return lambda wetted: min(0.5 * spacing, least_width(wetted) / 6.0)
+
+
+def default_fine_spacing(spacing: float, hulls: Sequence[Hull]) -> float:
+    """Water spacing at waterlines where the case gives none, m: by the same rule for all hulls."""
+    widths = [
+        least_width(hull.mesh.with_points(hull.place.back(hull.mesh.points)))
+        for hull in hulls
+        if hull.waterlines
+    ]
+    return min([0.5 * spacing, *(width / 6.0 for width in widths)]) if widths else spacing
 
 
 def form_mesh(body: Body, spacing: float, depth: float) -> SurfaceMesh:

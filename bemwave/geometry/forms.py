@@ -11,6 +11,7 @@ import math
 import numpy as np
 
 from bemwave.errors import InputError
+from bemwave.geometry.mesher import check_count
 from bemwave.geometry.patterns import (
     disc_angles,
     disc_triangles,
@@ -208,3 +209,4 @@ def _positive(*, form: str, **values: float) -> None:
     for key, value in values.items():
         if not (value > 0.0 and math.isfinite(value)):
             raise InputError(f"{form}: {key} = {value} given, a length above zero in metres wanted")
+    check_count(max(values.values()) ** 2, values["panel_size"], f"{form}: panel_size")

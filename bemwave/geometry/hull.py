@@ -146,7 +146,7 @@ def prepare_hull(
     without: Sequence[str] = (),
     weld_tolerance: float | None = None,
     depth: float = math.inf,
-    panel_size: float | Callable[[Hydrostatics], float] | None = None,
+    panel_size: float | Callable[[SurfaceMesh], float] | None = None,
     position: tuple[float, float] = (0.0, 0.0),
     heading: float = 0.0,
     centre_of_mass: Sequence[float] | None = None,
@@ -166,7 +166,7 @@ def prepare_hull(
     depth : float
         Water depth, m: a hull that reaches the bed is cut there too and left open.
     panel_size : float or function, optional
-        Edge length of the panels, m, or a function that tells it from the cut hull's hydrostatics.
+        Edge length of the panels, m, or a function that tells it from the cut hull.
         None: the hull is only cut. A file that needs no cut and is already evenly meshed at
         about this size is kept as it is, and no mesher is needed.
     position, heading
@@ -202,7 +202,7 @@ def prepare_hull(
             f"{source}: with draught = {draught:g} the whole hull is under water (its top at z = "
             f"{top:.4g} m); give a smaller draught, or leave it out and place the hull in the file"
         )
-    size = panel_size(before) if callable(panel_size) else panel_size
+    size = panel_size(wetted.mesh) if callable(panel_size) else panel_size
     mesh, notes = _meshed(wetted, before, size, source)
     if centre_of_mass is not None:
         centre_of_mass = floating.pose(np.array(centre_of_mass, dtype=np.float64)).tolist()

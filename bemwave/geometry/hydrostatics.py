@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bemwave.geometry.surface_mesh import FloatArray, SurfaceMesh
-from bemwave.geometry.topology import boundary_edges
+from bemwave.geometry.topology import boundary_edges, boundary_loops
 
 
 @dataclass(frozen=True)
@@ -78,6 +78,18 @@ def hydrostatics(mesh: SurfaceMesh) -> Hydrostatics:
         draught=float(-low[2]),
         wetted_area=float(mesh.areas.sum()),
     )
+
+
+def least_width(mesh: SurfaceMesh) -> float:
+    """Smallest extent of any waterline of a wetted hull along its x or y axis, m.
+
+    Of a body wholly under water: its smallest extent along any axis.
+    """
+    loops = [mesh.points[loop] for loop in boundary_loops(mesh.triangles)]
+    waterlines = [loop for loop in loops if np.all(loop[:, 2] == 0.0)]
+    if not waterlines:
+        return float(np.ptp(mesh.points, axis=0).min())
+    return min(float(np.ptp(loop[:, :2], axis=0).min()) for loop in waterlines)
 
 
 def _volume_and_centre(mesh: SurfaceMesh, origin: FloatArray) -> tuple[float, FloatArray]:

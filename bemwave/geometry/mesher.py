@@ -19,6 +19,25 @@ INSTALL_LINE = (
 _LIBRARY_MISSING = 41
 
 
+MOST_TRIANGLES = 2_000_000  # far beyond what can be solved; more is a slip of the pen
+
+
+def check_count(area: float, size: float, what: str) -> None:
+    """Refuse a mesh that would have absurdly many triangles, before it fills the memory.
+
+    Raises
+    ------
+    InputError
+        If triangles of edge `size`, m, would cover `area`, m2, more than MOST_TRIANGLES times.
+    """
+    count = area / (0.433 * size**2)  # equilateral
+    if count > MOST_TRIANGLES:
+        raise InputError(
+            f"{what} = {size:g} m makes about {count:.1g} triangles, and {MOST_TRIANGLES:g} are "
+            "the most that are meshed: give a larger one"
+        )
+
+
 def run_job(
     name: str, values: dict[str, Any], what: str, seconds: float = 120.0
 ) -> dict[str, np.ndarray[Any, Any]]:

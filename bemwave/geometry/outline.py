@@ -22,6 +22,11 @@ class Rectangle:
     y_min: float
     y_max: float
 
+    @property
+    def area(self) -> float:
+        """Area, m2."""
+        return (self.x_max - self.x_min) * (self.y_max - self.y_min)
+
     def counts(self, spacing: float) -> tuple[int, int]:
         """Edges along x and along y nearest to the spacing."""
         return (
@@ -60,6 +65,11 @@ class Circle:
     x: float
     y: float
     radius: float
+
+    @property
+    def area(self) -> float:
+        """Area, m2."""
+        return math.pi * self.radius**2
 
     def rings(self, spacing: float) -> int:
         """Rings of the structured mesh of this spacing."""

@@ -3,18 +3,17 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 
-from bemwave.errors import MissingLibraryError
 from bemwave.geometry.meshio_files import UNNAMED, named
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 
 def read_vtp(path: Path) -> SurfaceMesh:
     """VTP; parts from the integer cell array "part" and the field "part_names"."""
-    pv = _pyvista()
+    import pyvista as pv
+
     with pv.vtk_verbosity("off"):  # it prints past Python
         data = pv.read(path)
     if not data.n_faces_strict and not data.n_strips:
@@ -35,20 +34,10 @@ def read_vtp(path: Path) -> SurfaceMesh:
 
 def write_vtp(mesh: SurfaceMesh, path: Path) -> None:
     """VTP, float64, with the integer cell array "part" and the field "part_names"."""
-    pv = _pyvista()
+    import pyvista as pv
+
     data = pv.PolyData.from_regular_faces(mesh.points.copy(), mesh.triangles)
     data.cell_data["part"] = mesh.part.astype(np.int32)
     data.field_data["part_names"] = list(mesh.part_names)
     with pv.vtk_verbosity("off"):
         data.save(path)
-
-
-def _pyvista() -> Any:
-    try:
-        import pyvista
-    except ImportError as error:
-        raise MissingLibraryError(
-            f".vtp files need pyvista, which cannot be loaded ({error}): run\n"
-            "  apt-get install -y libgl1 libxrender1\nor use another mesh format"
-        ) from None
-    return pyvista

@@ -8,7 +8,7 @@ import numpy as np
 
 from bemwave.errors import InputError
 from bemwave.geometry.faults import find_faults
-from bemwave.geometry.mesher import run_job
+from bemwave.geometry.mesher import check_count, run_job
 from bemwave.geometry.surface_mesh import FloatArray, IntArray, SurfaceMesh
 from bemwave.geometry.topology import boundary_edges, directed_edges, extent
 
@@ -46,6 +46,7 @@ def remesh(mesh: SurfaceMesh, panel_size: float, what: str) -> tuple[SurfaceMesh
     InputError
         If gmsh makes no sound mesh of it.
     """
+    check_count(float(mesh.areas.sum()), panel_size, f"{what}: panel_size")
     task = f"remeshing {what} at {panel_size:g} m"
     reason = ""
     for angle in SHARP:

@@ -9,7 +9,7 @@ import numpy as np
 from bemwave.errors import InputError
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.layout import check_layout, signed_area
-from bemwave.geometry.mesher import run_job
+from bemwave.geometry.mesher import check_count, run_job
 from bemwave.geometry.outline import Circle, Outline
 from bemwave.geometry.patterns import disc_angles, disc_triangles, grid_triangles, polygon_radius
 from bemwave.geometry.surface_mesh import FloatArray, SurfaceMesh
@@ -67,6 +67,7 @@ def water_surface(
     for key, value in (("spacing", spacing), ("fine_spacing", fine)):
         if not 0.0 < value < np.inf:
             raise InputError(f"{key} = {value} given, a length above zero in metres wanted")
+    check_count(outline.area, spacing, "spacing")
     check_layout(hulls, outline)
     waterlines = [polygon for hull in hulls for polygon in hull.polygons()]
     if structured and not waterlines:

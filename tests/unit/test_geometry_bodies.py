@@ -9,7 +9,7 @@ import pytest
 
 from bemwave.case.body import Body
 from bemwave.errors import InputError
-from bemwave.geometry.bodies import hull_from
+from bemwave.geometry.bodies import default_fine_spacing, hull_from
 from bemwave.geometry.boundary import boundary_mesh
 from bemwave.geometry.faults import find_faults
 from bemwave.geometry.files import read_mesh, write_mesh
@@ -68,6 +68,16 @@ def test_default_panel_size(spacing, size):
     made = hull(spacing, form="box", length=8.0, beam=2.0, draught=1.0)
     sides = edge_lengths(made.mesh)
     assert np.median(np.sort(sides, axis=1)[:, :2]) == pytest.approx(size, rel=0.1)
+
+
+def test_default_fine_spacing_goes_by_the_thinnest_waterline():
+    ship = hull(form="wigley", length=12.0, beam=3.0, draught=1.0, heading=30.0)
+    pile = hull(form="cylinder", radius=1.0, draught="bed")
+    ball = hull(form="sphere", radius=0.1, centre_depth=3.0)
+    assert default_fine_spacing(4.0, [ship]) == pytest.approx(0.5, rel=1e-6)
+    assert default_fine_spacing(4.0, [ship, pile]) == pytest.approx(1 / 3, rel=0.03)
+    assert default_fine_spacing(0.5, [ship, pile, ball]) == 0.25
+    assert default_fine_spacing(4.0, [ball]) == 4.0
 
 
 def test_bed_in_deep_water_is_refused():

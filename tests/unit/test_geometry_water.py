@@ -11,7 +11,7 @@ import pytest
 from bemwave.errors import InputError, MissingLibraryError
 from bemwave.geometry.boundary import boundary_mesh, wall_layers
 from bemwave.geometry.forms import box, cylinder, sphere, wigley
-from bemwave.geometry.hull import place_hull
+from bemwave.geometry.hull import place_hull, prepare_hull
 from bemwave.geometry.inside import inside
 from bemwave.geometry.layout import check_layout, clearance, signed_area
 from bemwave.geometry.mesher import INSTALL_LINE, run_job
@@ -69,6 +69,16 @@ def test_circle_has_the_circle_s_area_to_rounding():
 def test_spacings_must_be_lengths(sizes):
     with pytest.raises(InputError, match=r"spacing = .* above zero"):
         water_surface(BASIN, sizes[0], fine_spacing=sizes[1])
+
+
+def test_absurdly_small_sizes_are_refused_before_they_fill_the_memory():
+    with pytest.raises(InputError, match=r"spacing = 0\.001 m makes about 2e\+09 triangles"):
+        water_surface(BASIN, 0.001)
+    with pytest.raises(InputError, match=r"box: panel_size = 1e-06 m makes about"):
+        box(2.0, 1.0, 1.0, 1e-6)
+    tank = box(2.0, 1.0, 1.0, 0.5).flipped()
+    with pytest.raises(InputError, match=r"tank: panel_size = 1e-05 m makes about"):
+        prepare_hull(tank, "tank", panel_size=1e-5)
 
 
 def test_a_body_wholly_under_water_leaves_the_surface_structured():
