@@ -7,6 +7,7 @@ import numpy.typing as npt
 
 from bemwave.flow.elements import Elements
 from bemwave.geometry.hull import Hull
+from bemwave.geometry.pose import Pose, on_earth, trim_and_heel
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
@@ -66,3 +67,11 @@ def stiffness(hull: Hull, density: float, gravity: float) -> Array:
 def centre_on_earth(hull: Hull) -> Array:
     """(3,) the centre of mass in its mean place [m]."""
     return np.asarray(hull.place(hull.centre_of_mass[None, :]))[0]
+
+
+def displacement(hull: Hull, motion: Array) -> Pose:
+    """From the hull's place at rest to where six motions about its centre of mass take it."""
+    axes, centre = hull.place.rotation, centre_on_earth(hull)
+    turn = on_earth((0.0, 0.0), float(motion[5])).rotation
+    turn = axes @ turn @ trim_and_heel(float(motion[4]), float(motion[3])) @ axes.T
+    return Pose(turn, centre - turn @ centre + axes @ motion[:3])

@@ -187,6 +187,12 @@ class Case(Table):
         """Where relative file names of the case start from."""
         return self._folder
 
+    def placed(self, folder: Path) -> Self:
+        """The same case, its relative file names starting from another folder."""
+        case = self.model_copy()
+        case._folder, case._text = folder, self._text
+        return case
+
     @property
     def text(self) -> str:
         """The case as TOML: as it was read, or written from the values if made in Python."""

@@ -138,6 +138,15 @@ class Stepper:
         after = STENCIL // 2 - 1
         return self.count >= STENCIL - 1 and time <= (self.count - after + 1e-9) * self.step
 
+    def history(self) -> dict[str, Array]:
+        """What `restore` needs to go on bit for bit, beside the count of steps."""
+        return {"potentials": np.array(self._potentials), "mean": self._mean}
+
+    def restore(self, history: dict[str, Array], count: int) -> None:
+        """Go back to where `history()` was taken, after `count` steps."""
+        self._potentials = list(history["potentials"])
+        self._mean, self.count = history["mean"], count
+
     def parts_at(self, time: float) -> tuple[Array, Array]:
         """Potential and its rate (free, parts) at any time among the kept steps."""
         first = self.count - len(self._potentials) + 1

@@ -1,0 +1,114 @@
+"""Memory and time that a case will take, forecast before anything large is made."""
+
+from __future__ import annotations
+
+import os
+import time as clock
+from dataclasses import dataclass
+
+import numpy as np
+
+from bemwave.errors import InputError
+from bemwave.flow.elements import split
+from bemwave.flow.images import make_images
+from bemwave.running.survey import Survey
+
+MOST_TRIANGLES = 20_000  # dense matrices of more do not fit 24 GB
+GIGABYTE = 1e9
+
+
+@dataclass(frozen=True)
+class Budget:
+    """Forecast of a run.
+
+    triangles, nodes : of the boundary mesh; unknowns of the surface.
+    memory : largest at any time [bytes].
+    assembly, stepping : wall seconds.
+    """
+
+    triangles: int
+    nodes: int
+    memory: float
+    assembly: float
+    stepping: float
+
+
+def memory_of(survey: Survey) -> tuple[int, int, float]:
+    """Triangles, surface unknowns and peak memory [bytes] of a surveyed case.
+
+    Counted in dense matrices of float64: single layers while the energy form is assembled, then
+    the flow map, its step and their temporaries.
+    """
+    if survey.mesh is None:
+        return 0, 0, 0.2 * GIGABYTE
+    e = split(survey.mesh, survey.closed, survey.mirrors, survey.case.water.depth)
+    water, hull, free, nodes = len(e.water), len(e.hull), e.free, e.nodes
+    layers = 2 if survey.closed else 1
+    assembling = layers * water**2 + water * nodes + nodes**2 + water * hull * layers
+    assembling += 2 * hull**2 + (3 * water * nodes if survey.closed else 0)
+    stepping = 5 * free**2 + 3 * free * hull + 2 * e.below * free
+    return len(survey.mesh.triangles), free, 8.0 * max(assembling, stepping) + 0.3 * GIGABYTE
+
+
+def memory_allowed(survey: Survey) -> float:
+    """What the case or the machine allows [bytes]."""
+    asked = survey.case.run.memory_limit
+    if asked != "auto":
+        return float(asked) * GIGABYTE
+    return 0.9 * float(os.sysconf("SC_PAGE_SIZE") * os.sysconf("SC_PHYS_PAGES"))
+
+
+def refuse_too_large(survey: Survey) -> None:
+    """Raise InputError if the case does not fit, saying what would."""
+    triangles, _, memory = memory_of(survey)
+    allowed = memory_allowed(survey)
+    if triangles <= MOST_TRIANGLES and memory <= allowed:
+        return
+    ratio = max(triangles / MOST_TRIANGLES, (memory / allowed) ** 0.5)
+    fits = survey.case.surface.spacing * ratio**0.5
+    raise InputError(
+        f"[surface] spacing = {survey.case.surface.spacing:g} m makes {triangles} triangles, which "
+        f"need {memory / GIGABYTE:.1f} GB; expected at most {MOST_TRIANGLES} triangles and "
+        f"{allowed / GIGABYTE:.1f} GB: about spacing = {fits:.2g} m would fit, or less water"
+    )
+
+
+def budget(survey: Survey) -> Budget:
+    """Forecast memory, and time by a short calibration on this machine and mesh."""
+    triangles, nodes, memory = memory_of(survey)
+    if survey.mesh is None:
+        return Budget(0, 0, memory, 0.0, 0.0)
+    product = _seconds_per_flop()
+    assembly = _assembly_seconds(survey) + product * (2 * nodes**3 * 9 + triangles**3 / 3)
+    step = max(survey.periods.shortest / 40, 1e-3)
+    steps = survey.case.run.duration / step
+    # a step and a state read off are about four products bound by memory, 8 bytes an entry
+    stepping = steps * 4 * nodes**2 * 8 / 1.5e10
+    return Budget(triangles, nodes, memory, assembly, stepping)
+
+
+def _seconds_per_flop() -> float:
+    matrix = np.ones((600, 600))
+    matrix @ matrix
+    start = clock.perf_counter()
+    for _ in range(3):
+        matrix @ matrix
+    return (clock.perf_counter() - start) / (3 * 2 * 600**3)
+
+
+def _assembly_seconds(survey: Survey) -> float:
+    """Time of the panel integrals, from a few rows of them."""
+    from bemwave.kernels.panels import pack, single_layer
+
+    assert survey.mesh is not None
+    table = pack(survey.mesh.vertices)
+    span = float(np.ptp(survey.mesh.points[:, :2], axis=0).max())
+    images = make_images(survey.case.water.depth, not survey.closed, survey.mirrors, span)
+    count = max(1, len(images.weights) // (2 if survey.closed else 4))
+    rows = table[:: max(1, len(table) // 48)]
+    one = (images.signs[:1], images.shifts[:1], images.weights[:1, None])
+    single_layer(rows[:2], table[:2], *one)
+    start = clock.perf_counter()
+    single_layer(rows, table, *one)
+    per_row = (clock.perf_counter() - start) / len(rows)
+    return 1.5 * per_row * len(table) * count

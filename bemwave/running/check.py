@@ -1,0 +1,74 @@
+"""`bemwave check`: the verdicts again, and on request the run against one of coarser panels."""
+
+from __future__ import annotations
+
+import os
+import tempfile
+from pathlib import Path
+
+import numpy as np
+
+from bemwave.case import Case
+from bemwave.checks import judge
+from bemwave.checks.verdicts import PRACTICE, judged
+from bemwave.records import Run, Verdict, open_run, write_checks
+from bemwave.running.loop import run as solve
+
+COARSER = 1.5
+LIMIT = 0.10
+
+
+def check(path: str | os.PathLike[str], *, convergence: bool = False) -> list[Verdict]:
+    """Judge a finished run and write its checks.json again.
+
+    Parameters
+    ----------
+    path : the run folder.
+    convergence : solve the case again at 1.5 x spacing and compare.
+
+    Raises
+    ------
+    InputError
+        If there is no run, or it cannot be solved again.
+    """
+    run = open_run(Path(path))
+    verdicts = judge(run)
+    if convergence:
+        verdicts.append(_convergence(run))
+    write_checks(verdicts, run.folder.checks)
+    return verdicts
+
+
+def _convergence(run: Run) -> Verdict:
+    """Root mean square difference of the total elevation between the two, over the finer's."""
+    with tempfile.TemporaryDirectory(prefix="bemwave-") as folder:
+        home = Path(run.manifest.notes["case_folder"])
+        coarse = solve(coarser(run.case.placed(home)), Path(folder) / "run")
+        surface = run.case.surface
+        side = np.linspace(-0.45, 0.45, 15)
+        x, y = np.meshgrid(
+            surface.centre[0] + side * surface.extent[0],
+            surface.centre[1] + side * surface.extent[1],
+        )
+        inside = np.vectorize(surface.contains)(x, y)
+        times = run.times[len(run.times) // 2 :]
+        fine = run.elevation(x[inside], y[inside], times)
+        difference = coarse.elevation(x[inside], y[inside], times) - fine
+    figure = float(np.sqrt(np.nanmean(difference**2) / np.nanmean(fine**2)))
+    return judged("convergence", figure, LIMIT, f"against {COARSER} x spacing; limit {PRACTICE}")
+
+
+def coarser(case: Case) -> Case:
+    """The same case on panels 1.5 times as large, without hand-offs and frames."""
+    tables = case.model_dump(exclude_unset=True, exclude_none=True)
+    for key in ("handoff", "frames", "gauge"):
+        tables.pop(key, None)
+    surface = tables["surface"]
+    surface.pop("mesh", None)
+    for key in ("spacing", "fine_spacing"):
+        if key in surface:
+            surface[key] *= COARSER
+    for body in tables.get("body", ()):
+        if "panel_size" in body:
+            body["panel_size"] *= COARSER
+    return Case(**tables).placed(case.folder)

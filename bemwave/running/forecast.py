@@ -1,0 +1,40 @@
+"""Figures about a run known before it is solved: reflection, phase error, time to trust."""
+
+from __future__ import annotations
+
+import math
+
+from bemwave.flow.dispersion import frequency_error, phase_error
+from bemwave.running.driving import start_up
+from bemwave.running.sea import length_of_period
+from bemwave.running.survey import Survey
+from bemwave.waves import group_speed
+
+
+def forecasts(survey: Survey) -> dict[str, float]:
+    """Forecast figures by name; they go into the manifest too."""
+    figures = {"unscattered_share": survey.unscattered_share}
+    water, surface = survey.case.water, survey.case.surface
+    if survey.layer is not None:
+        figures["reflection"] = survey.layer.reflection
+    if survey.mesh is not None and math.isfinite(survey.periods.peak):
+        wavelength = length_of_period(survey.periods.peak, water.depth, water.gravity)
+        structured = not survey.hulls
+        how = {"depth": water.depth, "closed": survey.closed, "structured": structured}
+        figures["dispersion_forecast"] = abs(
+            frequency_error(wavelength, surface.spacing, **how)
+        )
+        distance = math.hypot(*surface.extent)
+        figures["phase_error_degrees"] = math.degrees(
+            abs(phase_error(wavelength, surface.spacing, distance, **how))
+        )
+    return figures
+
+
+def trustworthy_from(survey: Survey) -> float:
+    """When scattered waves of the peak have crossed the useful water after the start-up [s]."""
+    water, surface = survey.case.water, survey.case.surface
+    if survey.mesh is None or math.isinf(survey.periods.peak):
+        return 0.0
+    speed = float(group_speed(survey.periods.peak, water.depth, water.gravity))
+    return start_up(survey).length + math.hypot(*surface.extent) / speed

@@ -1,0 +1,94 @@
+"""A case solved step by step with nothing written: for coupling live to another solver."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+import numpy.typing as npt
+
+from bemwave.case import Case
+from bemwave.flow.state import SurfaceState
+from bemwave.handoff import HandoffSampler, free_points
+from bemwave.running.budget import refuse_too_large
+from bemwave.running.outputs import dry_places
+from bemwave.running.solution import STEPS_PER_PERIOD, Solution, nothing_solved
+from bemwave.running.survey import Survey, survey
+
+Array = npt.NDArray[np.float64]
+
+
+class LiveState:
+    """The total field at one step, for coupling live.
+
+    Attributes
+    ----------
+    time : s.
+    solved : the solved part.
+    """
+
+    def __init__(self, field: LiveField, solved: SurfaceState) -> None:
+        self.time, self.solved, self._field = solved.time, solved, field
+
+    def velocity(self, points: npt.ArrayLike) -> Array:
+        """Total velocity (n, 3) at points (n, 3) [m/s]; NaN above the water and in hulls."""
+        sampler = self._field.sampler(np.asarray(points, dtype=np.float64).reshape(-1, 3))
+        return sampler.at(self.solved).total.velocity
+
+    def elevation(self, x: npt.ArrayLike, y: npt.ArrayLike) -> Array:
+        """Total elevation at places that broadcast [m]; NaN inside waterlines."""
+        at_x, at_y = np.broadcast_arrays(np.asarray(x, float), np.asarray(y, float))
+        plan = np.column_stack([at_x.ravel(), at_y.ravel(), np.zeros(at_x.size)])
+        sampler = self._field.sampler(plan)
+        column = free_points(plan).column
+        return sampler.at(self.solved).total.elevation[column].reshape(at_x.shape)
+
+
+class LiveField:
+    """Keeps the samplers of places asked for again and again."""
+
+    def __init__(self, surveyed: Survey, solution: Solution | None) -> None:
+        self._surveyed = surveyed
+        self._flow = None if solution is None else solution.samplers()
+        self._samplers: dict[bytes, HandoffSampler] = {}
+
+    def sampler(self, points: Array) -> HandoffSampler:
+        """The sampler at points (n, 3), the last few kept."""
+        key = points.tobytes()
+        if key not in self._samplers:
+            if len(self._samplers) == 4:
+                self._samplers.pop(next(iter(self._samplers)))
+            self._samplers[key] = HandoffSampler(
+                free_points(points),
+                self._surveyed.sea,
+                self._flow,
+                solid=lambda at: dry_places(self._surveyed, at),
+            )
+        return self._samplers[key]
+
+
+def steps(case: Case) -> Iterator[LiveState]:
+    """Solve a case step by step, writing nothing: for coupling live.
+
+    Yields
+    ------
+    LiveState
+        At every step, from t = 0 to the case's duration.
+
+    Examples
+    --------
+    >>> for state in bemwave.steps(case):                        # doctest: +SKIP
+    ...     u = state.velocity([[0.0, 0.0, -1.0]])
+    """
+    surveyed = survey(case)
+    refuse_too_large(surveyed)
+    solution = None if surveyed.mesh is None else Solution(surveyed)
+    field = LiveField(surveyed, solution)
+    step = surveyed.periods.kept / STEPS_PER_PERIOD if solution is None else solution.step
+    count = int(np.floor(case.run.duration / step + 1e-9))
+    for time in step * np.arange(count + 1):
+        if solution is None:
+            yield LiveState(field, nothing_solved(float(time)))
+        else:
+            solution.advance_to(float(time))
+            yield LiveState(field, solution.state(float(time)))

@@ -1,0 +1,234 @@
+"""What a run writes while it goes: each output has its own times and takes states at them."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from typing import Protocol
+
+import numpy as np
+import numpy.typing as npt
+
+from bemwave.bodies.modes import displacement
+from bemwave.flow.samplers import PanelSamplers
+from bemwave.flow.state import SurfaceState
+from bemwave.frames import FrameWriter
+from bemwave.frames.writer import DrawnBody, sheet_of
+from bemwave.geometry.inside import inside
+from bemwave.geometry.pose import Pose
+from bemwave.handoff import Handoff, Scene
+from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
+from bemwave.records.energy import EnergyFile
+from bemwave.running.solution import Solution
+from bemwave.running.survey import Survey
+
+Array = npt.NDArray[np.float64]
+
+INSTANTS_PER_PERIOD = 20  # at gauges, and for loads and energy, in the shortest period of all
+
+
+class Output(Protocol):
+    """One output of a run."""
+
+    times: Array
+
+    @property
+    def count(self) -> int:
+        """Number of instants written so far."""
+
+    def write(self, state: SurfaceState) -> None:
+        """Write the instant `times[count]`."""
+
+    def flush(self) -> None:
+        """Put every instant written so far on the disk."""
+
+
+class HistoryOutput:
+    """history.nc, at every record."""
+
+    def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
+        run = solution.survey.case.run
+        self.times = np.linspace(0.0, run.duration, round(run.duration / run.record_every) + 1)
+        e = solution.flow.elements
+        below = e.points[e.free : e.nodes]
+        panels = e.hull_table[:, 24:27]
+        self._file = HistoryFile(folder.history, e.points[: e.free], below, panels, keep)
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._file.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        self._file.append(state)
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._file.flush()
+
+
+class LedgerOutput:
+    """bodies.nc and energy.nc."""
+
+    def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
+        self.times = fine_times(solution.survey)
+        self._solution = solution
+        self._energy = EnergyFile(folder.path / "energy.nc", keep)
+        names = [hull.name for hull in solution.survey.hulls]
+        self._bodies = BodiesFile(folder.bodies, names, keep) if names else None
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._energy.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        self._energy.append(state.time, *self._solution.energy(state))
+        if self._bodies is not None:
+            motion, velocity = self._solution.motions(state.time)
+            self._bodies.append(state.time, motion, velocity, self._solution.loads(state.time))
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._energy.flush()
+        if self._bodies is not None:
+            self._bodies.flush()
+
+
+class GaugesOutput:
+    """gauges.nc."""
+
+    def __init__(
+        self, survey: Survey, flow: PanelSamplers | None, folder: RunFolder, keep: int | None
+    ) -> None:
+        gauges = survey.case.gauge
+        self.times = fine_times(survey)
+        xy = np.array([gauge.position for gauge in gauges], dtype=np.float64)
+        self._dry = dry_places(survey, xy)
+        self._incident = survey.sea.at(np.column_stack([xy, np.zeros(len(xy))]))
+        self._solved = None if flow is None else flow.surface_sampler(xy)
+        decks = [math.nan if gauge.deck is None else gauge.deck for gauge in gauges]
+        names = [gauge.name for gauge in gauges]
+        self._file = GaugesFile(folder.gauges, names, xy, decks, keep)
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._file.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        incident = np.where(self._dry, np.nan, self._incident.elevation(state.time))
+        solved = 0.0 if self._solved is None else self._solved.elevation(state)
+        self._file.append(state.time, incident + solved, incident)
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._file.flush()
+
+
+class HandoffOutput:
+    """One hand-off, told how the bodies move."""
+
+    def __init__(self, handoff: Handoff, solution: Solution | None) -> None:
+        self._handoff, self._solution = handoff, solution
+        self.times = handoff.times
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._handoff.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        bodies = None if self._solution is None else self._solution.motions(state.time)[1]
+        self._handoff.write(state, bodies)
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._handoff.flush()
+
+
+class FramesOutput:
+    """The frames, told where the bodies have gone."""
+
+    def __init__(self, writer: FrameWriter, survey: Survey, solution: Solution | None) -> None:
+        self._writer, self._survey, self._solution = writer, survey, solution
+        self.times = writer.times
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._writer.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        places: dict[str, Pose] = {}
+        if self._solution is not None:
+            motion = self._solution.motions(state.time)[0]
+            hulls = self._survey.hulls
+            places = {h.name: displacement(h, row) for h, row in zip(hulls, motion, strict=True)}
+        self._writer.write(state, places)
+
+    def flush(self) -> None:
+        """Frames are whole files already."""
+
+
+def outputs_of(
+    survey: Survey, solution: Solution | None, folder: RunFolder, kept: Mapping[str, int] | None
+) -> dict[str, Output]:
+    """All outputs of a case by name; `kept`: how many instants each has from before."""
+    case = survey.case
+    flow = None if solution is None else solution.samplers()
+    outputs: dict[str, Output] = {}
+
+    def keep(name: str) -> int | None:
+        return None if kept is None else kept[name]
+
+    if solution is not None:
+        outputs["history"] = HistoryOutput(solution, folder, keep("history"))
+        outputs["ledger"] = LedgerOutput(solution, folder, keep("ledger"))
+    if case.gauge:
+        outputs["gauges"] = GaugesOutput(survey, flow, folder, keep("gauges"))
+    scene = Scene(
+        survey.sea, flow, survey.water, survey.hulls, survey.periods.kept, survey.periods.peak
+    )
+    for entry in case.handoff:
+        name = f"handoff/{entry.name}"
+        handoff = Handoff(entry, case, scene, folder.handoff, keep(name))
+        outputs[name] = HandoffOutput(handoff, solution)
+    if case.frames is not None:
+        sheet = sheet_of(
+            case.frames, survey.water, survey.hulls, lambda xy: survey.outside(xy) == 0.0
+        )
+        moving = {hull.name: _moves(survey, k) for k, hull in enumerate(survey.hulls)}
+        drawn = [DrawnBody(h.name, h.mesh.flipped(), moving[h.name]) for h in survey.hulls]
+        writer = FrameWriter(
+            case.frames, sheet, survey.sea, flow, drawn, folder.frames, keep("frames") or 0
+        )
+        outputs["frames"] = FramesOutput(writer, survey, solution)
+    return outputs
+
+
+def _moves(survey: Survey, number: int) -> bool:
+    return survey.case.body[number].forced is not None
+
+
+def fine_times(survey: Survey) -> Array:
+    """Instants of gauges, loads and energy: every record, and enough between to draw waves."""
+    run = survey.case.run
+    records = round(run.duration / run.record_every)
+    wanted = survey.periods.kept / INSTANTS_PER_PERIOD
+    between = max(1, math.ceil(run.record_every / wanted - 1e-9))
+    return np.linspace(0.0, run.duration, records * between + 1)
+
+
+def dry_places(survey: Survey, xy: Array) -> npt.NDArray[np.bool_]:
+    """Which places (n, 2) lie on or inside a waterline."""
+    points = np.column_stack([xy, np.zeros(len(xy))])
+    dry = np.zeros(len(xy), dtype=bool)
+    for hull in survey.hulls:
+        dry |= inside(hull.mesh, points)
+    return dry

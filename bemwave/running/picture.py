@@ -1,0 +1,55 @@
+"""A picture of a case's layout, to scale: water, absorber, bodies, gauges, boxes."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from bemwave.geometry.outline import Circle
+from bemwave.handoff import box_of
+from bemwave.running.survey import Survey, useful_water
+
+
+def draw(survey: Survey, path: Path) -> None:
+    """Draw the plan of a surveyed case into a PNG."""
+    from matplotlib.backends.backend_agg import FigureCanvasAgg
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(9.0, 7.0), layout="constrained")
+    FigureCanvasAgg(figure)
+    axes = figure.add_subplot()
+    axes.set_aspect("equal")
+    _outline(axes, survey.outline, "absorber", facecolor="0.88", edgecolor="0.6")
+    _outline(axes, useful_water(survey.case), "useful water", facecolor="white", edgecolor="0.3")
+    if survey.mesh is not None:
+        x, y = survey.water.points[:, 0], survey.water.points[:, 1]
+        axes.triplot(x, y, survey.water.triangles, color="#88aacc", linewidth=0.3)
+    for number, hull in enumerate(survey.hulls):
+        plan = hull.polygons() or [hull.mesh.points[:, :2]]
+        for k, loop in enumerate(plan):
+            label = hull.name if k == 0 else None
+            axes.fill(*loop.T, label=label, color=f"C{number}", zorder=3)
+    for gauge in survey.case.gauge:
+        axes.plot(*gauge.position, "k+", zorder=4)
+        axes.annotate(gauge.name, gauge.position, (4, 4), textcoords="offset points", fontsize=8)
+    for entry in survey.case.handoff:
+        box = box_of(entry)
+        if box is not None:
+            half = 0.5 * np.asarray(box.size)
+            corners = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [-1, -1]]) * half
+            axes.plot(*box.to_earth(corners).T, "--", color="k", label=f"box {entry.name}")
+    axes.set(xlabel="x, m", ylabel="y, m", title=survey.case.title)
+    axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False)
+    figure.savefig(path, dpi=120, format="png")
+
+
+def _outline(axes: Any, outline: Any, label: str, **style: Any) -> None:
+    if isinstance(outline, Circle):
+        angle = np.linspace(0.0, 2.0 * np.pi, 181)
+        x, y = outline.x + outline.radius * np.cos(angle), outline.y + outline.radius * np.sin(angle)
+    else:
+        x = np.array([outline.x_min, outline.x_max, outline.x_max, outline.x_min])
+        y = np.array([outline.y_min, outline.y_min, outline.y_max, outline.y_max])
+    axes.fill(x, y, label=label, linewidth=1.0, **style)

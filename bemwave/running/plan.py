@@ -1,0 +1,156 @@
+"""`bemwave plan`: what a case will take and how good it will be, before anything is solved."""
+
+from __future__ import annotations
+
+import math
+import os
+from collections.abc import Iterator
+from pathlib import Path
+
+import numpy as np
+
+from bemwave.case import Case
+from bemwave.running.budget import GIGABYTE, budget, memory_allowed, refuse_too_large
+from bemwave.running.driving import start_up
+from bemwave.running.forecast import forecasts, trustworthy_from
+from bemwave.running.outputs import dry_places
+from bemwave.running.sea import PANELS_PER_WAVELENGTH, length_of_period
+from bemwave.running.survey import Survey, survey
+
+
+def plan(case: Case, *, picture: str | os.PathLike[str] | None = None) -> str:
+    """Survey a case and say in text what to expect of a run.
+
+    Parameters
+    ----------
+    case : Case
+    picture : path, optional
+        A PNG of the layout, to scale.
+
+    Raises
+    ------
+    InputError, NotYetError, MissingLibraryError
+        As `run` would, for what can be told before solving.
+    """
+    surveyed = survey(case)
+    refuse_too_large(surveyed)
+    lines = [
+        (label, text)
+        for section in (_route, _water, _sea, _bodies, _panels, _times, _places, _cost)
+        for label, text in section(surveyed)
+    ]
+    if picture is not None:
+        from bemwave.running.picture import draw
+
+        draw(surveyed, Path(picture))
+        lines.append(("picture", str(picture)))
+    width = max(len(label) for label, _ in lines)
+    return "\n".join(f"{label:<{width}}  {text}" for label, text in lines)
+
+
+_Lines = Iterator[tuple[str, str]]
+
+
+def _route(s: Survey) -> _Lines:
+    route, reason = s.route
+    yield "route", f"{route} ({reason})"
+
+
+def _water(s: Survey) -> _Lines:
+    surface = s.case.surface
+    depth = s.case.water.depth
+    deep = "deep" if math.isinf(depth) else f"{depth:g} m deep"
+    extent = " x ".join(f"{side:g}" for side in surface.extent)
+    shape = f"circle of {surface.extent[0]:g} m" if surface.outline == "circle" else f"{extent} m"
+    yield "useful water", f"{shape}, {deep}"
+    if s.closed:
+        yield "edges", "walls all round, meshed"
+    elif s.mirrors:
+        walls = ", ".join(f"{m.axis} = {m.position:g}" for m in s.mirrors)
+        yield "edges", f"straight walls at {walls}, by images; open elsewhere"
+    else:
+        yield "edges", "open"
+    if s.layer is not None:
+        length = length_of_period(s.periods.longest, depth, s.case.water.gravity)
+        yield (
+            "absorber",
+            f"{s.layer.width:.3g} m wide, for waves up to {length:.3g} m ({s.periods.longest:.3g} s)"
+            f"; reflects {100 * forecasts(s)['reflection']:.2g} % of them",
+        )
+
+
+def _sea(s: Survey) -> _Lines:
+    sea = s.sea
+    if not sea.count:
+        yield "incident sea", "none"
+        return
+    yield "incident sea", (
+        f"{sea.count} components, periods {2 * math.pi / sea.frequency.max():.3g} to "
+        f"{2 * math.pi / sea.frequency.min():.3g} s, significant height "
+        f"{sea.significant_height:.3g} m"
+    )
+    if sea.count > 1:
+        yield "repeats after", f"{sea.repeat_time:.3g} s (2 pi over the least frequency spacing)"
+    if s.case.body:
+        yield "not scattered", (
+            f"{100 * s.unscattered_share:.2g} % of the sea's energy: waves of fewer than "
+            f"{PANELS_PER_WAVELENGTH:g} panels stay incident only"
+        )
+
+
+def _bodies(s: Survey) -> _Lines:
+    for hull in s.hulls:
+        h = hull.hydrostatics
+        yield f"body {hull.name}", (
+            f"{len(hull.mesh.triangles)} panels, {h.length:.4g} x {h.beam:.4g} x {h.draught:.4g} m, "
+            f"{h.volume:.4g} m3, waterplane {h.waterplane_area:.4g} m2"
+        )
+        for note in hull.notes:
+            yield "", note
+
+
+def _panels(s: Survey) -> _Lines:
+    if s.mesh is None:
+        yield "panels", "none: the sea is all there is"
+        return
+    found = forecasts(s)
+    depth, gravity = s.case.water.depth, s.case.water.gravity
+    shortest = length_of_period(s.periods.shortest, depth, gravity)
+    yield "resolution", (
+        f"{shortest / s.case.surface.spacing:.3g} panels in the shortest solved wave "
+        f"({shortest:.3g} m, {s.periods.shortest:.3g} s)"
+    )
+    yield "phase error", (
+        f"{found['phase_error_degrees']:.2g} degrees over the useful water, for waves of the peak "
+        f"({100 * found['dispersion_forecast']:.2g} % in frequency)"
+    )
+
+
+def _times(s: Survey) -> _Lines:
+    yield "start-up", f"{start_up(s).length:.3g} s"
+    first, duration = trustworthy_from(s), s.case.run.duration
+    late = "" if first < duration else f": later than the run's end, {duration:g} s"
+    yield "trust from", f"t = {first:.3g} s, when scattered waves have crossed the useful water{late}"
+
+
+def _places(s: Survey) -> _Lines:
+    gauges = s.case.gauge
+    if not gauges:
+        return
+    dry = dry_places(s, np.array([gauge.position for gauge in gauges]))
+    for gauge, inside in zip(gauges, dry, strict=True):
+        if inside:
+            yield f"gauge {gauge.name}", "lies on or inside a waterline: it will read NaN"
+
+
+def _cost(s: Survey) -> _Lines:
+    cost = budget(s)
+    yield "triangles", f"{cost.triangles} ({cost.nodes} unknowns on the surface)"
+    yield "memory", (
+        f"{cost.memory / GIGABYTE:.2g} GB of {memory_allowed(s) / GIGABYTE:.3g} GB allowed"
+    )
+    yield "time", f"about {_span(cost.assembly)} to assemble, {_span(cost.stepping)} to solve"
+
+
+def _span(seconds: float) -> str:
+    return f"{seconds:.2g} s" if seconds < 100 else f"{seconds / 60:.2g} min"

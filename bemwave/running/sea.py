@@ -1,0 +1,75 @@
+"""The incident sea of a case: its wave entries added up, mirrored where walls are straight."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from bemwave.case import Case
+from bemwave.errors import InputError
+from bemwave.flow.images import Mirror
+from bemwave.waves import Sea, make_sea, wavenumber_of_frequency
+
+# Fewer panels than this in its length, and a wave is not scattered but only incident.
+PANELS_PER_WAVELENGTH = 6.0
+
+
+def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
+    """The sum of the case's waves and, in front of walls, of their reflections.
+
+    Raises
+    ------
+    InputError : if a table cannot be read, or waves cross a channel between two walls.
+    """
+    water = case.water
+    sea = Sea.still(water.depth, water.density, water.gravity)
+    for number, wave in enumerate(case.waves):
+        values = wave.model_dump(exclude_unset=True)
+        if wave.file is not None:
+            values["file"] = case.folder / wave.file
+        sea = sea + make_sea(
+            **values,
+            depth=water.depth,
+            density=water.density,
+            gravity=water.gravity,
+            stream=number,
+        )
+    for axis in ("x", "y"):
+        walls = [m.position for m in mirrors if m.axis == axis]
+        if len(walls) == 1:
+            sea = sea + sea.mirrored(axis, walls[0])
+        elif len(walls) == 2 and sea.count:
+            _refuse_crossing(sea, axis)
+    return sea
+
+
+def _refuse_crossing(sea: Sea, axis: str) -> None:
+    across = np.cos(sea.heading) if axis == "x" else np.sin(sea.heading)
+    if np.abs(across).max() > 1e-9:
+        raise InputError(
+            f"[[waves]] travel between walls at {axis}_min and {axis}_max with headings that are "
+            "not along them; expected long-crested waves along the channel: change heading, take "
+            "out spreading, or open a wall"
+        )
+
+
+def scattered_sea(sea: Sea, spacing: float) -> tuple[Sea, float]:
+    """The components long enough for panels of a spacing [m], and the energy share of the rest."""
+    if not sea.count:
+        return sea, 0.0
+    shortest = PANELS_PER_WAVELENGTH * spacing
+    long_enough = 2.0 * math.pi / sea.wavenumber >= shortest
+    energy = sea.amplitude**2
+    return sea.keep(long_enough), float(energy[~long_enough].sum() / energy.sum())
+
+
+def period_of_length(length: float, depth: float, gravity: float) -> float:
+    """Period of a wave of a length [s]; linear dispersion."""
+    k = 2.0 * math.pi / length
+    return 2.0 * math.pi / math.sqrt(gravity * k * math.tanh(min(k * depth, 50.0)))
+
+
+def length_of_period(period: float, depth: float, gravity: float) -> float:
+    """Length of a wave of a period [m]."""
+    return 2.0 * math.pi / float(wavenumber_of_frequency(2.0 * math.pi / period, depth, gravity))

@@ -1,0 +1,169 @@
+"""The solved field of a surveyed case: assembled once, then advanced and read off at times."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+import numpy.typing as npt
+
+from bemwave.bodies.loads import BodyLoads
+from bemwave.bodies.modes import panels_of, stiffness
+from bemwave.errors import InputError
+from bemwave.flow.panels import PanelFlow
+from bemwave.flow.samplers import PanelSamplers
+from bemwave.flow.state import ARRAYS, SurfaceState
+from bemwave.running.driving import Driving, driving, released_elevation
+from bemwave.running.survey import Survey
+from bemwave.stepping.exact import LARGEST_TURN, fastest_frequency
+from bemwave.stepping.stepper import Stepper
+
+Array = npt.NDArray[np.float64]
+
+STEPS_PER_PERIOD = 40  # of the shortest waves solved, common practice, no source
+
+
+class Solution:
+    """Advances the solved field of a case and tells its state, loads and energy.
+
+    Parameters
+    ----------
+    survey : with something to solve.
+    progress : called with the share of the assembly done.
+    """
+
+    def __init__(
+        self, survey: Survey, progress: Callable[[float], None] = lambda share: None
+    ) -> None:
+        assert survey.mesh is not None
+        self.survey = survey
+        water = survey.case.water
+        self.flow = PanelFlow(
+            survey.mesh,
+            water.depth,
+            closed=survey.closed,
+            mirrors=survey.mirrors,
+            progress=lambda share: progress(0.8 * share),
+        )
+        elements = self.flow.elements
+        self.driving: Driving = driving(survey, elements)
+        self.step = self._choose_step()
+        self.damping = None
+        if survey.layer is not None:
+            centroids = elements.water_table[:, 24:26]
+            rate = survey.layer.rate(survey.outside(centroids))
+            self.damping = elements.weighted_mass(rate)
+        hump = released_elevation(survey, elements) if survey.case.hump else None
+        self.stepper = Stepper(
+            self.flow,
+            water.gravity,
+            self.step,
+            list(self.driving.parts.values()),
+            patches=self.driving.patches,
+            damping=self.damping,
+            elevation=None if hump is None else self.flow.solve_mass(hump),
+        )
+        self._loads = [self._loads_on(number) for number in range(len(survey.hulls))]
+        progress(1.0)
+
+    def _choose_step(self) -> float:
+        """A fortieth of the shortest period solved, within what the mesh's own waves allow."""
+        gravity, asked = self.survey.case.water.gravity, self.survey.case.run.step
+        fastest = fastest_frequency(self.flow.surface_matrix, self.flow.solve_mass, gravity)
+        longest = LARGEST_TURN / fastest
+        if asked != "auto":
+            if float(asked) > longest:
+                raise InputError(
+                    f"[run] step = {asked:g} s is longer than this mesh allows; expected at most "
+                    f'{longest:.4g} s: write that, or step = "auto"'
+                )
+            return float(asked)
+        step = min(longest, self.survey.periods.shortest / STEPS_PER_PERIOD)
+        duration = self.survey.case.run.duration
+        return duration / math.ceil(duration / step)
+
+    def _loads_on(self, number: int) -> BodyLoads:
+        mesh, hull = self.survey.mesh, self.survey.hulls[number]
+        assert mesh is not None
+        panels = panels_of(self.flow.elements, mesh.part, mesh.part_names.index(hull.name))
+        return BodyLoads(self.flow.elements, panels, hull, self.survey.sea)
+
+    def samplers(self) -> PanelSamplers:
+        """Samplers of the field at places."""
+        assert self.survey.mesh is not None
+        water = self.survey.case.water
+        return PanelSamplers(
+            self.survey.mesh,
+            water.depth,
+            closed=self.survey.closed,
+            mirrors=self.survey.mirrors,
+            density=water.density,
+        )
+
+    def advance_to(self, time: float) -> None:
+        """Take the steps after which the field at a time [s] is known."""
+        while not self.stepper.ready(time):
+            self.stepper.advance()
+
+    def state(self, time: float) -> SurfaceState:
+        """The solved field at a time just reached by `advance_to`."""
+        return self.stepper.state(time)
+
+    def motions(self, time: float) -> tuple[Array, Array]:
+        """Displacements and velocities of the bodies at their centres of mass, (bodies, 6)."""
+        at = np.array([time])
+        place, speed = np.zeros((2, len(self.survey.hulls), 6))
+        for body, row in enumerate(self.driving.motions):
+            for mode, motion in enumerate(row):
+                if motion is not None:
+                    place[body, mode] = motion.displacement(at)[0]
+                    speed[body, mode] = motion.velocity(at)[0]
+        return place, speed
+
+    def loads(self, time: float) -> dict[str, Array]:
+        """Loads on the bodies (bodies, 6), named as in bodies.nc [N, N m]."""
+        shape = (len(self.survey.hulls), 6)
+        loads = {f"force_{part}": np.zeros(shape) for part in ("scattered", "radiated")}
+        if self.driving.parts:
+            rate, hull_rate = self.stepper.parts_at(time)[1], self.stepper.hull_parts(time)
+            for k, part in enumerate(self.driving.parts):
+                loads[f"force_{part}"] = np.array(
+                    [load.solved(rate[:, k], hull_rate[:, k]) for load in self._loads]
+                )
+        at = np.array([time])
+        loads["force_incident"] = np.array([load.incident(at)[0] for load in self._loads])
+        water, motion = self.survey.case.water, self.motions(time)[0]
+        loads["force_restoring"] = -np.array(
+            [
+                stiffness(hull, water.density, water.gravity) @ displaced
+                for hull, displaced in zip(self.survey.hulls, motion, strict=True)
+            ]
+        )
+        loads["force"] = sum(loads.values(), np.zeros(shape))
+        return loads
+
+    def energy(self, state: SurfaceState) -> tuple[float, float, float]:
+        """Energy of the solved field [J], power put into it, and power the absorber takes [W].
+
+        Energy 1/2 rho int (g eta^2 over the surface + phi d(phi)/dn over all boundaries); power
+        rho int d(phi)/dt d(phi)/dn over hulls and walls, less that of pressure patches.
+        """
+        water, elements, mass = self.survey.case.water, self.flow.elements, self.flow.mass
+        density, gravity = water.density, water.gravity
+        eta, potential = state.elevation, state.potential
+        energy = gravity * eta @ (mass @ eta) + potential @ (mass @ state.surface_flux)
+        head = -state.potential_rate / gravity - eta
+        power = -gravity * head @ (mass @ state.surface_flux)
+        if len(elements.hull):
+            shares = elements.shares(elements.hull, elements.hull_table)
+            through = shares.T @ state.hull_flux
+            energy += through @ np.concatenate([potential, state.hull_potential])
+            power += through @ np.concatenate([state.potential_rate, state.hull_potential_rate])
+        taken = 0.0 if self.damping is None else gravity * eta @ (self.damping @ eta)
+        return 0.5 * density * float(energy), density * float(power), density * float(taken)
+
+
+def nothing_solved(time: float) -> SurfaceState:
+    """The state of a case in which the sea is all there is."""
+    return SurfaceState(time, **{name: np.zeros(0) for name in ARRAYS})

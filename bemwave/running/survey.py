@@ -1,0 +1,228 @@
+"""What a case amounts to before anything is solved: sea, hulls, meshes, edges, periods."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from bemwave.case import Case, refuse_not_yet
+from bemwave.errors import InputError
+from bemwave.flow.images import Mirror
+from bemwave.geometry.bodies import default_fine_spacing, hull_from
+from bemwave.geometry.boundary import RIM, boundary_mesh
+from bemwave.geometry.files import read_mesh
+from bemwave.geometry.hull import Hull
+from bemwave.geometry.layout import check_layout
+from bemwave.geometry.outline import SIDES, Circle, Outline, Rectangle
+from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.water_surface import fitted_water, water_surface
+from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
+from bemwave.stepping.absorber import Layer, layer_for
+from bemwave.waves import Sea
+
+
+@dataclass(frozen=True)
+class Periods:
+    """Wave periods of a case [s]; infinite where there are no waves.
+
+    longest, shortest : of the waves that are solved (scattered, radiated, let go).
+    peak : of the most energetic of all.
+    kept : shortest of all, incident waves too.
+    """
+
+    longest: float
+    shortest: float
+    peak: float
+    kept: float
+
+
+@dataclass(frozen=True)
+class Survey:
+    """A case read, meshed and measured.
+
+    Attributes
+    ----------
+    case : the case.
+    sea, scattered, unscattered_share : the incident sea, its components that hulls scatter, and
+        the energy share of the others.
+    hulls : the bodies at rest.
+    outline : the water with its absorber.
+    layer : the absorber, or None where no edge absorbs.
+    closed, mirrors : whether meshed walls close the water, and walls that are images.
+    water : the sheet.
+    mesh : the whole boundary; None where there is nothing to solve.
+    periods : of its waves.
+    """
+
+    case: Case
+    sea: Sea
+    scattered: Sea
+    unscattered_share: float
+    hulls: tuple[Hull, ...]
+    outline: Outline
+    layer: Layer | None
+    closed: bool
+    mirrors: tuple[Mirror, ...]
+    water: SurfaceMesh
+    mesh: SurfaceMesh | None
+    periods: Periods
+
+    @property
+    def route(self) -> tuple[str, str]:
+        """The route taken, and why."""
+        why = "named in the case" if self.case.surface.route == "panels" else "the only one yet"
+        return "panels", why
+
+    def outside(self, xy: np.ndarray) -> np.ndarray:
+        """Distance (n,) of places (n, 2) outside the useful water [m]; zero inside."""
+        surface = self.case.surface
+        offset = np.asarray(xy)[:, :2] - surface.centre
+        if surface.outline == "circle":
+            return np.maximum(np.hypot(*offset.T) - surface.extent[0] / 2, 0.0)
+        beyond = np.maximum(np.abs(offset) - np.array(surface.extent) / 2, 0.0)
+        return np.asarray(beyond.max(axis=1))
+
+
+def survey(case: Case) -> Survey:
+    """Read, mesh and measure a case; solves nothing.
+
+    Raises
+    ------
+    InputError, NotYetError, MissingLibraryError
+    """
+    refuse_not_yet(case)
+    surface, water = case.surface, case.water
+    closed, mirrors = _edges(case)
+    sea = incident_sea(case, mirrors)
+    scattered, unscattered = scattered_sea(sea, surface.spacing)
+    hulls = tuple(
+        hull_from(body, spacing=surface.spacing, depth=water.depth, folder=case.folder)
+        for body in case.body
+    )
+    periods = _periods(case, sea, scattered)
+    layer = _layer(case, periods, closed)
+    outline = _outline(case, layer)
+    check_layout(hulls, useful_water(case))
+    sheet = _sheet(case, outline, hulls)
+    solved = bool(hulls or case.hump or case.pressure or case.wavemaker)
+    walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
+    mesh = boundary_mesh(sheet, hulls, walls, water.depth) if solved else None
+    return Survey(
+        case, sea, scattered, unscattered, hulls, outline, layer, closed, mirrors, sheet, mesh,
+        periods,
+    )  # fmt: skip
+
+
+def _edges(case: Case) -> tuple[bool, tuple[Mirror, ...]]:
+    """Whether walls close the water, and else the walls that are images.
+
+    One wall, two that meet or two that face each other are images, with open water beyond the
+    other edges. Walls on three sides and more, round water and wavemakers need meshed walls all
+    round, with the absorber in front of the edges that absorb.
+    """
+    surface = case.surface
+    walls = surface.walls
+    if surface.outline == "circle":
+        closed = bool(walls)
+    else:
+        closed = len(walls) > 2 or bool(case.wavemaker)
+    if closed and case.waves:
+        raise InputError(
+            "[[waves]] are given in water that walls close; incident waves need an open edge to "
+            'come from: write "absorb" for two sides or more, or make waves with a [[wavemaker]]'
+        )
+    if closed and math.isinf(case.water.depth):
+        raise InputError(
+            '[water] depth = "deep" with walls all round; expected a depth in metres: walls need '
+            "a bed to stand on"
+        )
+    if closed:
+        return True, ()
+    half = [extent / 2 for extent in surface.extent]
+    at = {
+        f"{axis}_{end}": surface.centre[k] + sign * half[k]
+        for k, axis in enumerate("xy")
+        for end, sign in (("min", -1), ("max", 1))
+    }
+    return False, tuple(Mirror(side[0], at[side]) for side in walls)
+
+
+def _periods(case: Case, sea: Sea, scattered: Sea) -> Periods:
+    made = list(_periods_made(case))
+    longest, shortest = list(made), list(made)
+    if case.body and scattered.count:
+        order = np.argsort(scattered.frequency)
+        share = np.cumsum(scattered.amplitude[order] ** 2)
+        low = scattered.frequency[order][np.searchsorted(share, 0.05 * share[-1])]
+        longest.append(2 * math.pi / float(low))
+        shortest.append(2 * math.pi / float(scattered.frequency.max()))
+    peak = list(made)
+    if sea.count:
+        peak += [wave.period for wave in case.waves if wave.period is not None] or [
+            2 * math.pi / float(sea.frequency[np.argmax(sea.amplitude)])
+        ]
+    kept = [2 * math.pi / float(sea.frequency.max())] if sea.count else []
+    none = [math.inf]
+    return Periods(
+        max(longest or none), min(shortest or none), max(peak or none), min(kept + made or none)
+    )
+
+
+def _periods_made(case: Case) -> Iterator[float]:
+    """Periods of the waves that bodies, wavemakers, humps and patches make themselves."""
+    depth, gravity = case.water.depth, case.water.gravity
+    for body in case.body:
+        if body.forced is not None:
+            yield body.forced.period
+    for maker in case.wavemaker:
+        yield maker.period
+    for mound in (*case.hump, *case.pressure):
+        # from the waves of six widths, those of most energy, to what panels can still carry
+        yield period_of_length(6.0 * mound.width, depth, gravity)
+        yield period_of_length(2.0 * mound.width, depth, gravity)
+
+
+def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
+    surface = case.surface
+    absorbing = 1 if surface.outline == "circle" else 4
+    if len(surface.walls) == absorbing or math.isinf(periods.longest):
+        return None
+    depth, gravity = case.water.depth, case.water.gravity
+    width = None if surface.absorber == "auto" else float(surface.absorber)
+    wavelength = length_of_period(periods.longest, depth, gravity)
+    return layer_for(wavelength, depth, gravity, surface.spacing, width=width, closed=closed)
+
+
+def useful_water(case: Case) -> Outline:
+    """The outline of the useful water."""
+    (x, y), (lx, ly) = case.surface.centre, case.surface.extent
+    if case.surface.outline == "circle":
+        return Circle(x, y, lx / 2)
+    return Rectangle(x - lx / 2, x + lx / 2, y - ly / 2, y + ly / 2)
+
+
+def _outline(case: Case, layer: Layer | None) -> Outline:
+    """The useful water with the absorber outside the edges that absorb."""
+    useful, width = useful_water(case), 0.0 if layer is None else layer.width
+    if isinstance(useful, Circle):
+        return Circle(useful.x, useful.y, useful.radius + width)
+    margin = {side: 0.0 if case.surface.edge(side) == "wall" else width for side in SIDES}
+    return Rectangle(
+        useful.x_min - margin["x_min"],
+        useful.x_max + margin["x_max"],
+        useful.y_min - margin["y_min"],
+        useful.y_max + margin["y_max"],
+    )
+
+
+def _sheet(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> SurfaceMesh:
+    surface = case.surface
+    if surface.mesh is not None:
+        ready = read_mesh(case.folder / surface.mesh)
+        polygons = [polygon for hull in hulls for polygon in hull.polygons()]
+        return fitted_water(ready, polygons, surface.mesh)
+    fine = surface.fine_spacing or default_fine_spacing(surface.spacing, hulls)
+    return water_surface(outline, surface.spacing, hulls, fine)
