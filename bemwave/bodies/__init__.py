@@ -1,0 +1,1 @@
+"""Bodies: their motions as fluxes, their stiffness, the loads on them."""

@@ -56,4 +56,6 @@ class BodyLoads:
 
     def solved(self, surface_rate: Array, hull_rate: Array) -> Array:
         """(6, ...) load of a solved potential's rate at surface and hull nodes [N, N m]."""
-        return np.asarray(-self._density * (self._nodal @ np.concatenate([surface_rate, hull_rate])))
+        return np.asarray(
+            -self._density * (self._nodal @ np.concatenate([surface_rate, hull_rate]))
+        )

@@ -61,7 +61,7 @@ def stiffness(hull: Hull, density: float, gravity: float) -> Array:
     result[4, 4] += water.volume * lever[2]
     result[3, 5] = -water.volume * lever[0]
     result[4, 5] = -water.volume * lever[1]
-    return weight * result
+    return np.asarray(weight * result)
 
 
 def centre_on_earth(hull: Hull) -> Array:

@@ -91,11 +91,15 @@ def _clear_places(run: Run, clearance: float) -> Array:
     return plan[clear & ~run.scene.solid(np.column_stack([plan, np.zeros(len(plan))]))]
 
 
-def _amplitude(run: Run, window: npt.NDArray[np.int64], frequency: float) -> npt.NDArray[np.complex128]:
+def _amplitude(
+    run: Run, window: npt.NDArray[np.int64], frequency: float
+) -> npt.NDArray[np.complex128]:
     """Complex amplitude (nodes,) of the solved elevation at a frequency, by least squares."""
     assert run.history is not None
     times = run.history.times[window]
     record = np.array([run.history.record(int(i)).elevation for i in window])
-    basis = np.column_stack([np.cos(frequency * times), np.sin(frequency * times), np.ones(len(times))])
+    basis = np.column_stack(
+        [np.cos(frequency * times), np.sin(frequency * times), np.ones(len(times))]
+    )
     parts, *_ = np.linalg.lstsq(basis, record, rcond=None)
     return np.asarray(parts[0] + 1j * parts[1])

@@ -21,7 +21,9 @@ def judge(run: Run) -> list[Verdict]:
     """All verdicts that a run's folder allows."""
     return [
         *_energy(run),
-        *_balance(run, "volume_flux", ("net_flux", "volume_rate", "largest_face_flux"), closure_figure),
+        *_balance(
+            run, "volume_flux", ("net_flux", "volume_rate", "largest_face_flux"), closure_figure
+        ),
         *_balance(run, "divergence", ("cell_net_flux", "cell_face_flux"), divergence_figure),
         *_from_manifest(run),
         *dispersion_verdict(run),

@@ -1,1 +1,1 @@
-"""The boundary-value problem of the water: flow maps, and samplers of what they solve."""
+"""Flow: the boundary-value problem under the surface, one file a route."""

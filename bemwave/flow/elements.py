@@ -127,9 +127,7 @@ def split(mesh: SurfaceMesh, closed: bool, mirrors: tuple[Mirror, ...], depth: f
     )
 
 
-def _open_rim(
-    mesh: SurfaceMesh, on_water: Ints, mirrors: tuple[Mirror, ...], depth: float
-) -> Ints:
+def _open_rim(mesh: SurfaceMesh, on_water: Ints, mirrors: tuple[Mirror, ...], depth: float) -> Ints:
     """Nodes of F on edges that only one triangle has, off the mirrors."""
     edges = np.sort(np.vstack([mesh.triangles[:, [i, (i + 1) % 3]] for i in range(3)]), axis=1)
     unique, count = np.unique(edges, axis=0, return_counts=True)

@@ -115,9 +115,7 @@ def _cholesky(matrix: Array, where: str) -> Array:
     return factor
 
 
-def _single_layers(
-    targets: Array, sources: Array, images: tuple[Array, Array, Array]
-) -> _Columns:
+def _single_layers(targets: Array, sources: Array, images: tuple[Array, Array, Array]) -> _Columns:
     """One single layer per column of the images' weights, columns that agree computed once."""
     signs, shifts, weights = images
     unique, back = np.unique(weights, axis=1, return_inverse=True)
@@ -150,16 +148,19 @@ def _forms(
     flat = weights[:, [0, 1, 3] if closed else [0, 1]]  # curls on still water are horizontal
 
     layers = _single_layers(water, water, images.seen_from_surface(flat, True))
-    energy = sum(_sandwich(curl_f[a], layers[a], curl_f[a]) for a in (0, 1))
+    energy = _sandwich(curl_f[0], layers[0], curl_f[0])
+    energy += _sandwich(curl_f[1], layers[1], curl_f[1])
     factor = _cholesky(layers[2], "water surface") if closed else None
     del layers
     progress(0.4)
     layers = _single_layers(water, hull, images.seen_from_surface(flat, False))
-    mixed = sum(_sandwich(curl_f[a], layers[a], curl_b[a]) for a in (0, 1))
+    mixed = _sandwich(curl_f[0], layers[0], curl_b[0])
+    mixed += _sandwich(curl_f[1], layers[1], curl_b[1])
     energy += mixed + mixed.T
     across = layers[2] if closed else None
     layers = _single_layers(hull, hull, (images.signs, images.shifts, weights[:, :3]))
-    energy += sum(_sandwich(curl_b[a], layers[a], curl_b[a]) for a in (0, 1, 2))
+    for axis in (0, 1, 2):
+        energy += _sandwich(curl_b[axis], layers[axis], curl_b[axis])
     del layers
     progress(0.7)
     given = (_double_layer(e, hull, images, closed) - 0.5 * e.shares(e.hull, hull)).T

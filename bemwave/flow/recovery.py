@@ -50,8 +50,8 @@ def recover(e: Elements, xy: Array, images: Images) -> Recovery:
     cloud = nodes[owner] * sign + shift
     count = min(NEIGHBOURS, len(cloud))
     degree = max(d for d in range(5) if 1.5 * (d + 1) * (d + 2) / 2 <= count)
-    distance, near = KDTree(cloud).query(xy, k=count)
-    distance, near = distance.reshape(-1, count), near.reshape(-1, count)
+    found = KDTree(cloud).query(xy, k=count)
+    distance, near = (np.asarray(part).reshape(-1, count) for part in found)
     reach = distance[:, -1]
     terms = [p for p in POWERS if sum(p) <= degree]
     basis = _hat_means(cloud, owner, sign, moments, near, xy, reach, terms)
@@ -86,7 +86,8 @@ def _hat_moments(e: Elements) -> tuple[Array, Array]:
             share = e.water_table[:, 28] * rule[3] * rule[j]
             offset = at - corners[:, j]
             for k, (p, q) in enumerate(POWERS):
-                np.add.at(moments[:, k], e.water[:, j], share * offset[:, 0] ** p * offset[:, 1] ** q)
+                power = offset[:, 0] ** p * offset[:, 1] ** q
+                np.add.at(moments[:, k], e.water[:, j], share * power)
     area = moments[: e.free, 0].copy()
     return area, moments[: e.free] / area[:, None]
 
@@ -106,10 +107,7 @@ def _hat_means(
     dx = (cloud[near, 0] - xy[:, None, 0]) * scale
     dy = (cloud[near, 1] - xy[:, None, 1]) * scale
     local = {
-        (p, q): moments[owner[near], k]
-        * sign[near, 0] ** p
-        * sign[near, 1] ** q
-        * scale ** (p + q)
+        (p, q): moments[owner[near], k] * sign[near, 0] ** p * sign[near, 1] ** q * scale ** (p + q)
         for k, (p, q) in enumerate(POWERS)
     }
     columns = []

@@ -15,7 +15,7 @@ from scipy import sparse
 
 from bemwave.errors import InputError
 from bemwave.flow.elements import Elements, hat_curls, split
-from bemwave.flow.images import Images, Mirror, make_images
+from bemwave.flow.images import Mirror, left_out, make_images
 from bemwave.flow.recovery import Recovery, recover
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.surface_mesh import SurfaceMesh
@@ -126,9 +126,7 @@ class PointSampler:
         row[~shallow] = np.arange((~shallow).sum())
         row[shallow] = (~shallow).sum() + np.searchsorted(used, column[shallow])
         index = np.arange(len(points))
-        self._mix = sparse.csr_matrix(
-            (share, (index, row)), shape=(len(points), len(self._places))
-        )
+        self._mix = sparse.csr_matrix((share, (index, row)), shape=(len(points), len(self._places)))
         pick = sparse.csr_matrix(
             (np.ones(len(points)), (index, column)), shape=(len(points), len(columns))
         )
@@ -154,7 +152,7 @@ class PointSampler:
         ).reshape(-1, 3)
         result: Array = self._mix @ inner
         value, dx, dy = self._by_value
-        slope, slope_dx, slope_dy, slope_dz = self._by_slope
+        _, slope_dx, slope_dy, slope_dz = self._by_slope
         result[:, 0] += dx @ state.potential + slope_dx @ state.surface_flux
         result[:, 1] += dy @ state.potential + slope_dy @ state.surface_flux
         result[:, 2] += value @ state.surface_flux + slope_dz @ state.potential
@@ -206,14 +204,17 @@ def _maps(samplers: PanelSamplers, points: Array, components: int) -> tuple[Arra
     water = np.empty((rows, e.free if samplers.closed else 0))
     hull = np.empty((rows, len(e.hull)))
     around = (images.signs, images.shifts, images.weights)
+    of_flux, of_dipoles = left_out(images, e.points[corners].reshape(-1, 3, 3), table[:, 9:12])
+    of_potential = np.zeros(len(e.points))
+    np.add.at(of_potential, corners, of_dipoles)
     for start in range(0, len(points), BLOCK):
         part = np.ascontiguousarray(points[start : start + BLOCK])
         if components == 3:
-            single, double = kernel.velocity_at(
-                part, table, corners, curls, len(e.points), *around
-            )
+            single, double = kernel.velocity_at(part, table, corners, curls, len(e.points), *around)
         else:
             single, double = kernel.potential_at(part, table, corners, len(e.points), *around)
+            single += of_flux
+            double += of_potential
         size = components * len(part)
         at = slice(components * start, components * start + size)
         single, double = single.reshape(size, -1), double.reshape(size, -1)

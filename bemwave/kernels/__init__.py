@@ -1,1 +1,1 @@
-"""Compiled loops: panel integrals. Arrays in, arrays out; imports nothing of bemwave."""
+"""Panel integrals: numba alone, arrays in, arrays out; imports nothing of bemwave."""

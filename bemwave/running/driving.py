@@ -62,9 +62,7 @@ def driving(survey: Survey, elements: Elements) -> Driving:
     moving = _moving(survey, elements, ramp)
     if moving.motions:
         parts["radiated"] = moving
-    patches = [
-        PressurePatch(p.head, p.width, p.centre, p.velocity) for p in survey.case.pressure
-    ]
+    patches = [PressurePatch(p.head, p.width, p.centre, p.velocity) for p in survey.case.pressure]
     return Driving(parts, tuple(_motions(survey, ramp)), patches, ramp)
 
 
@@ -129,8 +127,7 @@ def released_elevation(survey: Survey, elements: Elements) -> Array:
     for rule in SEVEN:
         at = np.einsum("j,mjc->mc", rule[:3], corners)
         height = sum(
-            hump.height
-            * np.exp(-0.5 * ((at - hump.centre) ** 2).sum(axis=1) / hump.width**2)
+            hump.height * np.exp(-0.5 * ((at - hump.centre) ** 2).sum(axis=1) / hump.width**2)
             for hump in survey.case.hump
         )
         for j in range(3):

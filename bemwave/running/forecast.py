@@ -19,15 +19,14 @@ def forecasts(survey: Survey) -> dict[str, float]:
         figures["reflection"] = survey.layer.reflection
     if survey.mesh is not None and math.isfinite(survey.periods.peak):
         wavelength = length_of_period(survey.periods.peak, water.depth, water.gravity)
-        structured = not survey.hulls
-        how = {"depth": water.depth, "closed": survey.closed, "structured": structured}
-        figures["dispersion_forecast"] = abs(
-            frequency_error(wavelength, surface.spacing, **how)
+        even, distance = not survey.hulls, math.hypot(*surface.extent)
+        size, depth = surface.spacing, water.depth
+        error = frequency_error(wavelength, size, depth, closed=survey.closed, structured=even)
+        phase = phase_error(
+            wavelength, size, distance, depth, closed=survey.closed, structured=even
         )
-        distance = math.hypot(*surface.extent)
-        figures["phase_error_degrees"] = math.degrees(
-            abs(phase_error(wavelength, surface.spacing, distance, **how))
-        )
+        figures["dispersion_forecast"] = abs(error)
+        figures["phase_error_degrees"] = math.degrees(abs(phase))
     return figures
 
 

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
 
 from bemwave.case import Case, refuse_not_yet
 from bemwave.errors import InputError
@@ -22,6 +23,8 @@ from bemwave.geometry.water_surface import fitted_water, water_surface
 from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
 from bemwave.stepping.absorber import Layer, layer_for
 from bemwave.waves import Sea
+
+Array = npt.NDArray[np.float64]
 
 
 @dataclass(frozen=True)
@@ -76,12 +79,12 @@ class Survey:
         why = "named in the case" if self.case.surface.route == "panels" else "the only one yet"
         return "panels", why
 
-    def outside(self, xy: np.ndarray) -> np.ndarray:
+    def outside(self, xy: Array) -> Array:
         """Distance (n,) of places (n, 2) outside the useful water [m]; zero inside."""
         surface = self.case.surface
         offset = np.asarray(xy)[:, :2] - surface.centre
         if surface.outline == "circle":
-            return np.maximum(np.hypot(*offset.T) - surface.extent[0] / 2, 0.0)
+            return np.asarray(np.maximum(np.hypot(*offset.T) - surface.extent[0] / 2, 0.0))
         beyond = np.maximum(np.abs(offset) - np.array(surface.extent) / 2, 0.0)
         return np.asarray(beyond.max(axis=1))
 
@@ -125,10 +128,8 @@ def _edges(case: Case) -> tuple[bool, tuple[Mirror, ...]]:
     """
     surface = case.surface
     walls = surface.walls
-    if surface.outline == "circle":
-        closed = bool(walls)
-    else:
-        closed = len(walls) > 2 or bool(case.wavemaker)
+    few = 0 if surface.outline == "circle" else 2
+    closed = len(walls) > few or bool(case.wavemaker)
     if closed and case.waves:
         raise InputError(
             "[[waves]] are given in water that walls close; incident waves need an open edge to "
@@ -179,10 +180,11 @@ def _periods_made(case: Case) -> Iterator[float]:
             yield body.forced.period
     for maker in case.wavemaker:
         yield maker.period
-    for mound in (*case.hump, *case.pressure):
-        # from the waves of six widths, those of most energy, to what panels can still carry
-        yield period_of_length(6.0 * mound.width, depth, gravity)
-        yield period_of_length(2.0 * mound.width, depth, gravity)
+    widths = [hump.width for hump in case.hump] + [patch.width for patch in case.pressure]
+    for width in widths:
+        # from the waves of six widths, those of most energy, to the shortest that matter
+        yield period_of_length(6.0 * width, depth, gravity)
+        yield period_of_length(2.0 * width, depth, gravity)
 
 
 def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
@@ -209,7 +211,7 @@ def _outline(case: Case, layer: Layer | None) -> Outline:
     useful, width = useful_water(case), 0.0 if layer is None else layer.width
     if isinstance(useful, Circle):
         return Circle(useful.x, useful.y, useful.radius + width)
-    margin = {side: 0.0 if case.surface.edge(side) == "wall" else width for side in SIDES}
+    margin = {side: 0.0 if side in case.surface.walls else width for side in SIDES}
     return Rectangle(
         useful.x_min - margin["x_min"],
         useful.x_max + margin["x_max"],

@@ -1,0 +1,1 @@
+"""The free-surface conditions in time: steps, absorber, what drives them."""
