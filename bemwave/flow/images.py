@@ -85,18 +85,15 @@ def make_images(
     """
     groups = [_axis_group("x", mirrors, span), _axis_group("y", mirrors, span)]
     groups.append(_vertical_group(depth, half_space))
-    signs, shifts, weights = [], [], []
-    for sx, bx, wx in groups[0]:
-        for sy, by, wy in groups[1]:
-            for sz, bz, wz in groups[2]:
-                signs.append((sx, sy, sz))
-                shifts.append((bx, by, bz))
-                weights.append(wx * wy * wz)
-    tail, centre = np.zeros(3), np.zeros(3)
-    if not half_space and min(len(groups[0]), len(groups[1])) > 2:
-        tail = _tail(groups)
-        # the first reflection of each group is x -> 2 centre - x; in deep water there is none
-        centre = 0.5 * np.array([group[min(1, len(group) - 1)][1] for group in groups])
+    made = [
+        ((sx, sy, sz), (bx, by, bz), wx * wy * wz)
+        for sx, bx, wx in groups[0]
+        for sy, by, wy in groups[1]
+        for sz, bz, wz in groups[2]
+    ]
+    # those that mirror alike stand together, the identity first: kernels sum them as one
+    made.sort(key=lambda image: image[0], reverse=True)
+    signs, shifts, weights = zip(*made, strict=True)
     return Images(np.array(signs), np.array(shifts), np.array(weights), tail, centre)
 
 

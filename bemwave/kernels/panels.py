@@ -367,31 +367,70 @@ def double_layer(
     return out
 
 
+# Triangles whose influences on a point are summed over the images before they are handed on:
+# few enough to stay in the fastest cache.
+TILE = 256
+
+
+@njit(
+    cache=True, error_model="numpy", fastmath={"reassoc", "contract", "arcp", "afn", "nsz"}
+)
+def _far_dipoles(
+    x: float, y: float, z: float, weight: float, geometry: Array, points: Array, sums: Array
+) -> None:
+    """Adds 1/r and (x - x').n'/r^3 at three points of each triangle that is far, else nothing."""
+    share = weight / 3.0
+    for t in range(sums.shape[1]):
+        dx, dy, dz = x - geometry[0, t], y - geometry[1, t], z - geometry[2, t]
+        far = dx * dx + dy * dy + dz * dz > geometry[3, t]
+        for q in range(3):
+            dx, dy, dz = x - points[0, q, t], y - points[1, q, t], z - points[2, q, t]
+            square = dx * dx + dy * dy + dz * dz
+            source = share * geometry[4, t] / math.sqrt(square)
+            height = dx * geometry[5, t] + dy * geometry[6, t] + dz * geometry[7, t]
+            sums[0, t] += source if far else 0.0
+            sums[1 + q, t] += source * height / square if far else 0.0
+
+
+@njit(
+    cache=True, error_model="numpy", fastmath={"reassoc", "contract", "arcp", "afn", "nsz"}
+)
+def _far_pulls(
+    x: float, y: float, z: float, weight: float, geometry: Array, points: Array, sums: Array
+) -> None:
+    """Adds the gradient of 1/r at three points of each triangle that is far, else nothing."""
+    share = -weight / 3.0
+    for t in range(sums.shape[1]):
+        dx, dy, dz = x - geometry[0, t], y - geometry[1, t], z - geometry[2, t]
+        far = dx * dx + dy * dy + dz * dz > geometry[3, t]
+        ex, ey, ez = 0.0, 0.0, 0.0
+        for q in range(3):
+            dx, dy, dz = x - points[0, q, t], y - points[1, q, t], z - points[2, q, t]
+            square = dx * dx + dy * dy + dz * dz
+            pull = share * geometry[4, t] / (square * math.sqrt(square))
+            ex, ey, ez = ex + pull * dx, ey + pull * dy, ez + pull * dz
+        # chosen, not multiplied by zero: a point of a near triangle may coincide
+        sums[0, t] += ex if far else 0.0
+        sums[1, t] += ey if far else 0.0
+        sums[2, t] += ez if far else 0.0
+
+
 @njit(cache=True, error_model="numpy", inline="always")
-def _distant(x: float, y: float, z: float, tri: Array) -> bool:
-    """Whether three points stand for the triangle."""
+def _is_near(x: float, y: float, z: float, tri: Array) -> bool:
     dx, dy, dz = x - tri[24], y - tri[25], z - tri[26]
-    return dx * dx + dy * dy + dz * dz > DISTANT * DISTANT * tri[27] * tri[27]
+    return not dx * dx + dy * dy + dz * dz > DISTANT * DISTANT * tri[27] * tri[27]
 
 
-@njit(cache=True, error_model="numpy", inline="always")
-def _potential_and_angles(x: float, y: float, z: float, tri: Array) -> Any:
-    """int 1/r and the three int hat_j d(1/r)/dn' over the triangle."""
-    if not _distant(x, y, z, tri):
-        h0, h1, h2 = _hat_angles(x, y, z, tri)
-        return _potential(x, y, z, tri), h0, h1, h2
-    total, h0, h1, h2 = 0.0, 0.0, 0.0, 0.0
-    for q in range(3):
-        l0, l1, l2 = THREE[q, 0], THREE[q, 1], THREE[q, 2]
-        dx = x - _corner_sum(tri, l0, l1, l2, 0)
-        dy = y - _corner_sum(tri, l0, l1, l2, 1)
-        dz = z - _corner_sum(tri, l0, l1, l2, 2)
-        share = tri[28] / (3.0 * math.sqrt(dx * dx + dy * dy + dz * dz))
-        height = dx * tri[9] + dy * tri[10] + dz * tri[11]
-        dipole = share * height / (dx * dx + dy * dy + dz * dz)
-        total += share
-        h0, h1, h2 = h0 + l0 * dipole, h1 + l1 * dipole, h2 + l2 * dipole
-    return total, h0, h1, h2
+@njit(cache=True, error_model="numpy")
+def _far_geometry(sources: Array) -> Array:
+    """(8, m) centroid, squared distance beyond which it is far, area and normal, by rows."""
+    rows = np.empty((8, sources.shape[0]))
+    for t in range(sources.shape[0]):
+        rows[0:3, t] = sources[t, 24:27]
+        rows[3, t] = DISTANT * DISTANT * sources[t, 27] * sources[t, 27]
+        rows[4, t] = sources[t, 28]
+        rows[5:8, t] = sources[t, 9:12]
+    return rows
 
 
 @njit(cache=True, error_model="numpy", parallel=True)
@@ -416,35 +455,40 @@ def potential_at(
     """
     single = np.zeros((x.shape[0], sources.shape[0]))
     double = np.zeros((x.shape[0], nodes))
+    geometry, points = _far_geometry(sources), _rule_points(sources, THREE)
     for p in prange(x.shape[0]):
-        for image in range(signs.shape[0]):
-            px = signs[image, 0] * (x[p, 0] - shifts[image, 0])
-            py = signs[image, 1] * (x[p, 1] - shifts[image, 1])
-            pz = signs[image, 2] * (x[p, 2] - shifts[image, 2])
-            scale = weights[image] / FOUR_PI
-            for t in range(sources.shape[0]):
-                total, h0, h1, h2 = _potential_and_angles(px, py, pz, sources[t])
-                single[p, t] += scale * total
-                double[p, corners[t, 0]] -= scale * h0
-                double[p, corners[t, 1]] -= scale * h1
-                double[p, corners[t, 2]] -= scale * h2
+        sums = np.empty((4, TILE))
+        for first in range(0, sources.shape[0], TILE):
+            last = min(first + TILE, sources.shape[0])
+            part = sums[:, : last - first]
+            part[:] = 0.0
+            for image in range(signs.shape[0]):
+                px = signs[image, 0] * (x[p, 0] - shifts[image, 0])
+                py = signs[image, 1] * (x[p, 1] - shifts[image, 1])
+                pz = signs[image, 2] * (x[p, 2] - shifts[image, 2])
+                weight = weights[image] / FOUR_PI
+                shape, rule = geometry[:, first:last], points[:, :, first:last]
+                _far_dipoles(px, py, pz, weight, shape, rule, part)
+                for t in range(first, last):
+                    if _is_near(px, py, pz, sources[t]):
+                        h0, h1, h2 = _hat_angles(px, py, pz, sources[t])
+                        single[p, t] += weight * _potential(px, py, pz, sources[t])
+                        double[p, corners[t, 0]] -= weight * h0
+                        double[p, corners[t, 1]] -= weight * h1
+                        double[p, corners[t, 2]] -= weight * h2
+            for t in range(first, last):
+                total, r0, r1, r2 = part[:, t - first]
+                single[p, t] += total
+                rest = (r0 + r1 + r2) / 6.0
+                double[p, corners[t, 0]] -= 0.5 * r0 + rest
+                double[p, corners[t, 1]] -= 0.5 * r1 + rest
+                double[p, corners[t, 2]] -= 0.5 * r2 + rest
     return single, double
 
 
 @njit(cache=True, error_model="numpy", inline="always")
 def _attraction(x: float, y: float, z: float, tri: Array) -> Any:
     """Gradient at the point of int 1/r over the triangle."""
-    if _distant(x, y, z, tri):
-        ex, ey, ez = 0.0, 0.0, 0.0
-        for q in range(3):
-            l0, l1, l2 = THREE[q, 0], THREE[q, 1], THREE[q, 2]
-            dx = x - _corner_sum(tri, l0, l1, l2, 0)
-            dy = y - _corner_sum(tri, l0, l1, l2, 1)
-            dz = z - _corner_sum(tri, l0, l1, l2, 2)
-            square = dx * dx + dy * dy + dz * dz
-            pull = -tri[28] / (3.0 * square * math.sqrt(square))
-            ex, ey, ez = ex + pull * dx, ey + pull * dy, ez + pull * dz
-        return ex, ey, ez
     g0, g1, g2, _d0, _d1, _d2, _height, angle = _edge_sums(x, y, z, tri)
     return (
         -(tri[12] * g0 + tri[15] * g1 + tri[18] * g2 + tri[9] * angle),
@@ -480,22 +524,40 @@ def velocity_at(
     """
     single = np.zeros((x.shape[0], 3, sources.shape[0]))
     double = np.zeros((x.shape[0], 3, nodes))
+    geometry, points = _far_geometry(sources), _rule_points(sources, THREE)
+    images = signs.shape[0]
     for p in prange(x.shape[0]):
-        for image in range(signs.shape[0]):
-            d0, d1, d2 = signs[image, 0], signs[image, 1], signs[image, 2]
-            px, py = d0 * (x[p, 0] - shifts[image, 0]), d1 * (x[p, 1] - shifts[image, 1])
-            pz = d2 * (x[p, 2] - shifts[image, 2])
-            scale = weights[image] / FOUR_PI
-            for t in range(sources.shape[0]):
-                ex, ey, ez = _attraction(px, py, pz, sources[t])
-                ex, ey, ez = ex * scale, ey * scale, ez * scale
-                single[p, 0, t] += d0 * ex
-                single[p, 1, t] += d1 * ey
-                single[p, 2, t] += d2 * ez
-                for j in range(3):
-                    cx, cy, cz = curls[t, j, 0], curls[t, j, 1], curls[t, j, 2]
-                    node = corners[t, j]
-                    double[p, 0, node] -= d0 * (ey * cz - ez * cy)
-                    double[p, 1, node] -= d1 * (ez * cx - ex * cz)
-                    double[p, 2, node] -= d2 * (ex * cy - ey * cx)
+        sums = np.empty((3, TILE))
+        for first in range(0, sources.shape[0], TILE):
+            last = min(first + TILE, sources.shape[0])
+            part = sums[:, : last - first]
+            part[:] = 0.0
+            for image in range(images):
+                sign = signs[image]
+                px = sign[0] * (x[p, 0] - shifts[image, 0])
+                py = sign[1] * (x[p, 1] - shifts[image, 1])
+                pz = sign[2] * (x[p, 2] - shifts[image, 2])
+                weight = weights[image] / FOUR_PI
+                shape, rule = geometry[:, first:last], points[:, :, first:last]
+                _far_pulls(px, py, pz, weight, shape, rule, part)
+                for t in range(first, last):
+                    if _is_near(px, py, pz, sources[t]):
+                        ex, ey, ez = _attraction(px, py, pz, sources[t])
+                        part[0, t - first] += weight * ex
+                        part[1, t - first] += weight * ey
+                        part[2, t - first] += weight * ez
+                if image + 1 < images and (signs[image + 1] == sign).all():
+                    continue  # images that mirror alike are summed before they are turned
+                for t in range(first, last):
+                    ex, ey, ez = part[:, t - first]
+                    single[p, 0, t] += sign[0] * ex
+                    single[p, 1, t] += sign[1] * ey
+                    single[p, 2, t] += sign[2] * ez
+                    for j in range(3):
+                        cx, cy, cz = curls[t, j, 0], curls[t, j, 1], curls[t, j, 2]
+                        node = corners[t, j]
+                        double[p, 0, node] -= sign[0] * (ey * cz - ez * cy)
+                        double[p, 1, node] -= sign[1] * (ez * cx - ex * cz)
+                        double[p, 2, node] -= sign[2] * (ex * cy - ey * cx)
+                part[:] = 0.0
     return single, double
