@@ -8,7 +8,7 @@ either (the half-space kernel: the image in z = 0 with a minus sign).
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -53,6 +53,16 @@ class Images:
         turn: Array = np.prod(self.signs, axis=1)[:, None] * self.signs
         return self.weights[:, None] * turn
 
+    def of_surface_dipoles(self) -> Images:
+        """Fewer images for dipoles on z = 0 in open water, where G has opposite signs by pairs.
+
+        A point's mirror image in z = 0 sees them with the opposite sign, so both count alike.
+        """
+        up = self.signs[:, 2] > 0
+        return replace(
+            self, signs=self.signs[up], shifts=self.shifts[up], weights=2.0 * self.weights[up]
+        )
+
     def seen_from_surface(self, weights: Array, sources_too: bool) -> tuple[Array, Array, Array]:
         """Signs, shifts and weights (k, c) of fewer images for targets on z = 0.
 
@@ -94,6 +104,16 @@ def make_images(
     # those that mirror alike stand together, the identity first: kernels sum them as one
     made.sort(key=lambda image: image[0], reverse=True)
     signs, shifts, weights = zip(*made, strict=True)
+    tail, centre = np.zeros(3), np.zeros(3)
+    if not half_space and min(len(groups[0]), len(groups[1])) > 2:
+        tail = _tail(groups)
+        # the first reflection of each group is x -> 2 centre - x; in deep water there is none
+        centre = 0.5 * np.array([group[min(1, len(group) - 1)][1] for group in groups])
+    tail, centre = np.zeros(3), np.zeros(3)
+    if not half_space and min(len(groups[0]), len(groups[1])) > 2:
+        tail = _tail(groups)
+        # the first reflection of each group is x -> 2 centre - x; in deep water there is none
+        centre = 0.5 * np.array([group[min(1, len(group) - 1)][1] for group in groups])
     return Images(np.array(signs), np.array(shifts), np.array(weights), tail, centre)
 
 

@@ -22,6 +22,7 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.kernels import panels as kernel
 
 Array = npt.NDArray[np.float64]
+Ints = npt.NDArray[np.int64]
 
 BLOCK = 256  # points for which influences are held at a time while maps are folded
 
@@ -194,35 +195,49 @@ def _apply(maps: tuple[Array, ...], values: tuple[Array, ...]) -> Array:
 
 def _maps(samplers: PanelSamplers, points: Array, components: int) -> tuple[Array, ...]:
     """The representation formula at points: maps of nodal potential, surface and hull flux."""
-    e, images = samplers.elements, samplers.images
-    corners = np.vstack([e.water, e.hull])
-    table = np.vstack([e.water_table, e.hull_table])
-    curls = hat_curls(e.points[corners].reshape(-1, 3, 3), table)
+    e, closed = samplers.elements, samplers.closed
+    means = _corner_means(e)
     rows = components * len(points)
-    to_triangles = _corner_means(e)
-    nodes = np.empty((rows, e.nodes))
-    water = np.empty((rows, e.free if samplers.closed else 0))
+    nodes = np.zeros((rows, e.nodes))
+    water = np.empty((rows, e.free if closed else 0))
     hull = np.empty((rows, len(e.hull)))
-    around = (images.signs, images.shifts, images.weights)
-    of_flux, of_dipoles = left_out(images, e.points[corners].reshape(-1, 3, 3), table[:, 9:12])
-    of_potential = np.zeros(len(e.points))
-    np.add.at(of_potential, corners, of_dipoles)
+    # in open water flux through the surface has no effect of its own: G vanishes there
+    at_surface = samplers.images if closed else samplers.images.of_surface_dipoles()
+    sheets = (
+        (e.water, e.water_table, at_surface),
+        (e.hull, e.hull_table, samplers.images),
+    )
     for start in range(0, len(points), BLOCK):
         part = np.ascontiguousarray(points[start : start + BLOCK])
-        if components == 3:
-            single, double = kernel.velocity_at(part, table, corners, curls, len(e.points), *around)
-        else:
-            single, double = kernel.potential_at(part, table, corners, len(e.points), *around)
-            single += of_flux
-            double += of_potential
-        size = components * len(part)
-        at = slice(components * start, components * start + size)
-        single, double = single.reshape(size, -1), double.reshape(size, -1)
-        nodes[at] = double[:, : e.nodes]
-        hull[at] = single[:, len(e.water) :]
-        if samplers.closed:
-            water[at] = (to_triangles.T @ single[:, : len(e.water)].T).T
+        at = slice(components * start, components * (start + len(part)))
+        for corners, table, images in sheets:
+            single, double = _influences(e.points, corners, table, images, part, components)
+            nodes[at] += double[:, : e.nodes]
+            if corners is e.hull:
+                hull[at] = single
+            elif closed:
+                water[at] = (means.T @ single.T).T
     return nodes, water, hull
+
+
+def _influences(
+    nodes: Array, corners: Ints, table: Array, images: Images, points: Array, components: int
+) -> tuple[Array, Array]:
+    """Of triangles at points: (rows, m) of unit flux, (rows, nodes) of unit potentials."""
+    vertices = nodes[corners].reshape(-1, 3, 3)
+    around = (images.signs, images.shifts, images.weights)
+    rows = components * len(points)
+    if components == 3:
+        curls = hat_curls(vertices, table)
+        single, double = kernel.velocity_at(points, table, corners, curls, len(nodes), *around)
+    else:
+        single, double = kernel.potential_at(points, table, corners, len(nodes), *around)
+        of_flux, of_dipoles = left_out(images, vertices, table[:, 9:12])
+        single += of_flux
+        far = np.zeros(len(nodes))
+        np.add.at(far, corners, of_dipoles)
+        double += far
+    return single.reshape(rows, -1), double.reshape(rows, -1)
 
 
 def _corner_means(e: Elements) -> sparse.csr_matrix:
