@@ -13,6 +13,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 import numpy.typing as npt
 
+from bemwave.flow.lattice import NONE, LeftOut, left_out
+
 Array = npt.NDArray[np.float64]
 
 # Images above and below kept for the half-space over a bed.  Their signs alternate, so with the
@@ -33,16 +35,13 @@ class Images:
     """The maps x -> signs x + shifts, each with its weight; the first is the identity.
 
     signs, shifts : (k, 3); weights : (k,).
-    tail : (3,) what images left out add to the potential, per second moments (xx, yy, zz) of the
-        sources about `centre` [1/m^3]; see `left_out`.
-    centre : (3,) a corner of the mirrors, on the bed.
+    beyond : what a cut-off lattice of images leaves out.
     """
 
     signs: Array
     shifts: Array
     weights: Array
-    tail: Array
-    centre: Array
+    beyond: LeftOut = NONE
 
     @property
     def curl_weights(self) -> Array:
@@ -104,57 +103,22 @@ def make_images(
     # those that mirror alike stand together, the identity first: kernels sum them as one
     made.sort(key=lambda image: image[0], reverse=True)
     signs, shifts, weights = zip(*made, strict=True)
-    tail, centre = np.zeros(3), np.zeros(3)
-    if not half_space and min(len(groups[0]), len(groups[1])) > 2:
-        tail = _tail(groups)
-        # the first reflection of each group is x -> 2 centre - x; in deep water there is none
-        centre = 0.5 * np.array([group[min(1, len(group) - 1)][1] for group in groups])
-    tail, centre = np.zeros(3), np.zeros(3)
-    if not half_space and min(len(groups[0]), len(groups[1])) > 2:
-        tail = _tail(groups)
-        # the first reflection of each group is x -> 2 centre - x; in deep water there is none
-        centre = 0.5 * np.array([group[min(1, len(group) - 1)][1] for group in groups])
-    return Images(np.array(signs), np.array(shifts), np.array(weights), tail, centre)
-
-
-def left_out(images: Images, vertices: Array, normals: Array) -> tuple[Array, Array]:
-    """Potential inside water closed by four mirrors of the images beyond the cut-off.
-
-    They have no charge and no dipole, so what comes first is the potential of their second
-    moments, the same everywhere inside.
-
-    Parameters
-    ----------
-    vertices, normals : (m, 3, 3) and (m, 3) of the sources.
-
-    Returns
-    -------
-    (m,) of unit flux on each triangle [m], (m, 3) of each hat's dipoles, minus sign included.
-    """
-    x = vertices - images.centre
-    total = x.sum(axis=1)
-    area = 0.5 * np.linalg.norm(np.cross(x[:, 1] - x[:, 0], x[:, 2] - x[:, 0]), axis=1)
-    second = (x**2).sum(axis=1) + total**2
-    first = np.einsum("mja,ma->mj", x + total[:, None], normals * images.tail)
-    return area / 12.0 * (second @ images.tail), -area[:, None] / 6.0 * first
+    beyond = NONE
+    if not half_space and math.isfinite(depth) and min(len(groups[0]), len(groups[1])) > 2:
+        beyond = _beyond(groups)
+    return Images(np.array(signs), np.array(shifts), np.array(weights), beyond)
 
 
 _Group = list[tuple[float, float, float]]
 
 
-def _tail(groups: list[_Group]) -> Array:
-    """Second derivatives of 1/(8 pi r), summed over the lattice of cells outside the cut-off.
-
-    As an integral over the plane outside the rectangle |x| < a, |y| < b (Gauss's theorem); each
-    cell holds the images by the bed and one wall of each pair.
-    """
-    counts = [len(group) // 2 for group in groups[:2]]
-    periods = [group[2][1] - group[0][1] for group in groups[:2]]
-    a, b = (0.5 * n * abs(p) for n, p in zip(counts, periods, strict=True))
-    xx, yy = 4 * b / (a * math.hypot(a, b)), 4 * a / (b * math.hypot(a, b))
-    cells = 8 * math.pi * abs(periods[0] * periods[1])
-    tail: Array = 4 * len(groups[2]) / cells * np.array([xx, yy, -xx - yy])
-    return tail
+def _beyond(groups: list[_Group]) -> LeftOut:
+    """What the images of a closed tank of four mirrors leave out."""
+    # each group starts with the identity and the reflection x -> 2 centre - x
+    centre = 0.5 * np.array([group[1][1] for group in groups])
+    dx, dy = (abs(group[2][1]) for group in groups[:2])
+    a, b = 0.25 * len(groups[0]) * dx, 0.25 * len(groups[1]) * dy
+    return left_out(centre, a, b, dx * dy)
 
 
 def _axis_group(axis: str, mirrors: tuple[Mirror, ...], span: float) -> _Group:

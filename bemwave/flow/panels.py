@@ -30,6 +30,7 @@ from scipy.sparse.linalg import splu
 from bemwave.errors import RunError
 from bemwave.flow.elements import Elements, split
 from bemwave.flow.images import Images, Mirror, make_images
+from bemwave.flow.lattice import curl_moments
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.kernels import panels as kernel
 
@@ -162,6 +163,7 @@ def _forms(
     for axis in (0, 1, 2):
         energy += _sandwich(curl_b[axis], layers[axis], curl_b[axis])
     del layers
+    _add_images_left_out(energy, e, images, (curl_f, curl_b))
     progress(0.7)
     given = (_double_layer(e, hull, images, closed) - 0.5 * e.shares(e.hull, hull)).T
     if factor is not None and across is not None:
@@ -171,6 +173,19 @@ def _forms(
         energy += inner.T @ inner
         given -= inner.T @ linalg.solve_triangular(factor, across, lower=True)
     return energy, np.ascontiguousarray(given)
+
+
+def _add_images_left_out(
+    energy: Array, e: Elements, images: Images, curls: tuple[list[sparse.csr_matrix], ...]
+) -> None:
+    """Without them waves beside mirrors are wrong by what a cut through the lattice lets past."""
+    beyond = images.beyond
+    for axis in np.flatnonzero(beyond.fourth):
+        moment = np.zeros(e.nodes)
+        for corners, curl in zip((e.water, e.hull), curls, strict=True):
+            triangles = e.points[corners].reshape(-1, 3, 3)
+            moment += curl[axis].T @ curl_moments(beyond, triangles)[:, axis]
+        energy += beyond.fourth[axis] * np.outer(moment, moment)
 
 
 def _sandwich(left: sparse.csr_matrix, layer: Array, right: sparse.csr_matrix) -> Array:

@@ -15,7 +15,8 @@ from scipy import sparse
 
 from bemwave.errors import InputError
 from bemwave.flow.elements import Elements, hat_curls, split
-from bemwave.flow.images import Mirror, left_out, make_images
+from bemwave.flow.images import Images, Mirror, make_images
+from bemwave.flow.lattice import potentials
 from bemwave.flow.recovery import Recovery, recover
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.surface_mesh import SurfaceMesh
@@ -232,7 +233,7 @@ def _influences(
         single, double = kernel.velocity_at(points, table, corners, curls, len(nodes), *around)
     else:
         single, double = kernel.potential_at(points, table, corners, len(nodes), *around)
-        of_flux, of_dipoles = left_out(images, vertices, table[:, 9:12])
+        of_flux, of_dipoles = potentials(images.beyond, vertices, table[:, 9:12])
         single += of_flux
         far = np.zeros(len(nodes))
         np.add.at(far, corners, of_dipoles)
