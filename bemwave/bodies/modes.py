@@ -66,7 +66,8 @@ def stiffness(hull: Hull, density: float, gravity: float) -> Array:
 
 def centre_on_earth(hull: Hull) -> Array:
     """(3,) the centre of mass in its mean place [m]."""
-    return np.asarray(hull.place(hull.centre_of_mass[None, :]))[0]
+    centre: Array = hull.place(hull.centre_of_mass)
+    return centre
 
 
 def displacement(hull: Hull, motion: Array) -> Pose:

@@ -31,7 +31,8 @@ class Driving:
 
     Attributes
     ----------
-    parts : "scattered" and "radiated", those that there are; humps and patches go with the first.
+    parts : "scattered" and "radiated", those that there are; what humps and patches make and
+        hulls throw back of it belongs to the first.
     motions : for each body its six displacements in time, None where it is fixed.
     patches : travelling pressure.
     ramp : the start-up.
@@ -57,7 +58,7 @@ def driving(survey: Survey, elements: Elements) -> Driving:
     """Make the given fluxes of a surveyed case on its elements."""
     ramp = start_up(survey)
     parts: dict[str, GivenFlux] = {}
-    if survey.hulls and survey.scattered.count:
+    if survey.scattered.count or survey.case.hump or survey.case.pressure:
         parts["scattered"] = _scattered(survey, elements, ramp)
     moving = _moving(survey, elements, ramp)
     if moving.motions:

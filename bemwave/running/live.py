@@ -84,7 +84,7 @@ def steps(case: Case) -> Iterator[LiveState]:
     refuse_too_large(surveyed)
     solution = None if surveyed.mesh is None else Solution(surveyed)
     field = LiveField(surveyed, solution)
-    step = surveyed.periods.kept / STEPS_PER_PERIOD if solution is None else solution.step
+    step = solution.step if solution is not None else _sea_step(surveyed)
     count = int(np.floor(case.run.duration / step + 1e-9))
     for time in step * np.arange(count + 1):
         if solution is None:
@@ -92,3 +92,8 @@ def steps(case: Case) -> Iterator[LiveState]:
         else:
             solution.advance_to(float(time))
             yield LiveState(field, solution.state(float(time)))
+
+
+def _sea_step(surveyed: Survey) -> float:
+    """Between states of a case in which the sea is all there is [s]."""
+    return min(surveyed.periods.kept / STEPS_PER_PERIOD, surveyed.case.run.record_every)

@@ -224,7 +224,27 @@ def _sheet(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> SurfaceMesh
     surface = case.surface
     if surface.mesh is not None:
         ready = read_mesh(case.folder / surface.mesh)
+        _refuse_other_extent(ready, outline, surface.mesh)
         polygons = [polygon for hull in hulls for polygon in hull.polygons()]
         return fitted_water(ready, polygons, surface.mesh)
     fine = surface.fine_spacing or default_fine_spacing(surface.spacing, hulls)
     return water_surface(outline, surface.spacing, hulls, fine)
+
+
+def _refuse_other_extent(ready: SurfaceMesh, outline: Outline, name: str) -> None:
+    """A ready sheet must be as large as the useful water and its absorber."""
+    if isinstance(outline, Circle):
+        low = np.array([outline.x, outline.y]) - outline.radius
+        high = low + 2.0 * outline.radius
+    else:
+        low = np.array([outline.x_min, outline.y_min])
+        high = np.array([outline.x_max, outline.y_max])
+    found_low, found_high = ready.points[:, :2].min(axis=0), ready.points[:, :2].max(axis=0)
+    # a circle's rim is a polygon of the same area
+    allowed = 0.01 * float((high - low).max())
+    if np.abs(found_low - low).max() > allowed or np.abs(found_high - high).max() > allowed:
+        raise InputError(
+            f"[surface] mesh = {name!r} reaches from ({found_low[0]:g}, {found_low[1]:g}) to "
+            f"({found_high[0]:g}, {found_high[1]:g}); expected {outline}, the useful water and its "
+            "absorber: make it again, or change [surface] size or absorber"
+        )
