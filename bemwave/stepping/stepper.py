@@ -2,12 +2,14 @@
 
 Leapfrog on the exact map of a step: the unknown beside phi_n is the step's mean E of eta + head,
 
-    E(n+1/2) = E(n-1/2) + dt [A_dt (phi_n - (g dt^2/12) f_n) + f_n],   phi_n+1 = phi_n - g dt E(n+1/2)
+    E(n+1/2) = E(n-1/2) + dt [A_dt (phi_n - (g dt^2/12) f_n) + f_n]
+    phi_n+1 = phi_n - g dt E(n+1/2)
 
 f_n being the surface flux of the given fluxes and the head's rate, smoothed over the step as
 Numerov does (f_n + (f_n+1 - 2 f_n + f_n-1)/12): free waves are exact, forced ones right to the
-fourth order. The absorber acts on E by half steps of Crank-Nicolson on either side, in the weak
-form int nu hat hat, so that it can only take energy. One dense product a step.
+fourth order. The absorber takes nu (E(n+1/2) + E(n-1/2))/2 from the rate, in the weak form
+int nu hat hat: the steps' energy (E'ME g + phi_n' M A_dt phi_n+1)/2 then only falls, by
+g dt (E+E)' D (E+E)/4, D the weak form. One dense product a step.
 
 Between and at steps the state is read off the polynomial through eight successive phi: that gives
 phi and, by its slope, eta = -d(phi)/dt / g - head; fluxes and hull potentials then follow from the
@@ -64,9 +66,9 @@ class Stepper:
         free = flow.elements.free
         self._xy = flow.elements.points[:free, :2]
         self._map = exact_map(flow.surface_matrix, flow.solve_mass, gravity, step)
-        self._halve: Any = None
+        self._solve_damped: Any = None
         if damping is not None:
-            self._halve = splu(sparse.csc_matrix(flow.mass + 0.25 * step * damping)).solve
+            self._solve_damped = splu(sparse.csc_matrix(flow.mass + 0.5 * step * damping)).solve
         self.count = 0
         self._potentials = [np.zeros((free, max(1, len(parts))))]
         self._mean = self._first_mean(elevation)
@@ -97,16 +99,16 @@ class Stepper:
         flux = self._map @ (potential - (g * dt**2 / 12.0) * forced) + forced
         if self.count == 0:
             flux *= 0.5  # what is given begins at t = 0: the first step sees half a stencil
-        self._mean = self._half_damped(self._half_damped(self._mean) + dt * flux)
+        self._mean = self._mean + dt * self._damped(flux)
         self._potentials.append(potential - g * dt * self._mean)
         del self._potentials[:-STENCIL]
         self.count += 1
 
-    def _half_damped(self, mean: Array) -> Array:
-        if self._halve is None:
-            return mean
-        loss = self.damping @ mean
-        return np.asarray(mean - self._halve(0.5 * self.step * loss))
+    def _damped(self, flux: Array) -> Array:
+        """Rate of E from the surface flux: less what the absorber takes of E, old and new."""
+        if self.damping is None:
+            return flux
+        return np.asarray(self._solve_damped(self.flow.mass @ flux - self.damping @ self._mean))
 
     def _forced_flux(self, count: int) -> Array:
         """(free, parts) surface flux of what is given at a step, smoothed over it."""
@@ -117,7 +119,7 @@ class Stepper:
         return np.asarray(self._forced[count - start])
 
     def _forced_block(self, start: int) -> Array:
-        times = (start + np.arange(-1, BLOCK + 1)) * self.step
+        times: Array = (start + np.arange(-1.0, BLOCK + 1)) * self.step
         block = np.zeros((BLOCK, *self._potentials[0].shape))
         for k, part in enumerate(self.parts):
             flux = _smoothed(part.flux(times), start)
