@@ -35,6 +35,7 @@ Array = npt.NDArray[np.float64]
 
 STENCIL = 8
 BLOCK = 32  # steps whose given fluxes are worked out together, as one matrix product
+START_TERMS = 12  # of the series of sin(x)/x for x <= LARGEST_TURN, to 1e-16
 
 
 class Stepper:
@@ -80,11 +81,12 @@ class Stepper:
         mean = np.zeros_like(self._potentials[0])
         start = self._head(0.0) if elevation is None else elevation + self._head(0.0)
         if start.any():
-            # the mean of cos(w t) over a step is sin(x)/x, x = w dt, here in powers of Y
-            term = mean[:, 0] = start
-            for factor in _sinc_series(12):
-                term = self.gravity * self.step**2 * (self._map @ term)
-                mean[:, 0] += factor * term
+            # the mean of cos(w t) over a step is sin(x)/x, x = w dt: a series in Y = g dt^2 A
+            turn, term = self.gravity * self.step**2, start
+            for k in range(START_TERMS):
+                mean[:, 0] += term
+                image = self.flow.solve_mass(self.flow.surface_matrix @ term)
+                term = -turn / ((2 * k + 2) * (2 * k + 3)) * image
         return mean
 
     @property
@@ -192,22 +194,9 @@ def _smoothed(values: Array, start: int) -> Array:
     """Numerov's mean over steps of columns -1 ... BLOCK; from t = 0 on alone at the very start."""
     smooth = values[:, 1:-1] + np.diff(values, 2, axis=1) / 12.0
     if start == 0:
-        smooth[:, 0] = values[:, 1] + (values[:, 2] - values[:, 1]) / 3.0
+        # what moves phi in the first step: f + dt f'/3 + dt^2 f''/12
+        smooth[:, 0] = (7.0 * values[:, 1] + 6.0 * values[:, 2] - values[:, 3]) / 12.0
     return np.asarray(smooth)
-
-
-def _sinc_series(terms: int) -> list[float]:
-    """Coefficients of sin(x)/x in powers 1, 2 ... of 4 sin^2(x/2).
-
-    The reciprocal of x/sin(x) = sum (k!)^2/(2k+1)! Y^k, from the series of arcsin(z)/sqrt(1-z^2).
-    """
-    inverse = [1.0]
-    for k in range(1, terms + 1):
-        inverse.append(inverse[-1] * k * k / (2.0 * k * (2.0 * k + 1.0)))
-    direct = [1.0]
-    for n in range(1, terms + 1):
-        direct.append(-sum(inverse[k] * direct[n - k] for k in range(1, n + 1)))
-    return direct[1:]
 
 
 def _lagrange(at: float, count: int) -> tuple[Array, Array]:
