@@ -2,10 +2,10 @@
 
 Outside the useful water the surface is damped, eta_t = w - nu eta, with nu growing with the square
 of the distance; the potential is left alone, so that energy only ever falls, by g int nu eta^2 a
-second. Damping the potential as well by as much takes a fifth off a narrow layer and gains nothing
-at a wavelength, where the best strength of either reflects 1 or 2 % (the computation below).
+second. Damping the potential by as much too is no better: in deep water the best layer a wavelength
+wide then leaves 1.6 %, this one .9 % (both by the computation below).
 
-The forecast is that computation: linear elements on a line across the layer, at one frequency,
+The forecast is a computation with linear elements on a line across the layer, at one frequency,
 
     (g S - w^2 M - i w M_nu) phi = a maker of waves,
 
