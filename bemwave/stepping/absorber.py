@@ -92,7 +92,7 @@ def layer_for(
     Examples
     --------
     >>> layer_for(40.0, math.inf, 9.80665, 2.5).width
-    40.0
+    42.5
     """
     if width is not None:
         return _tuned(width, wavelength, depth, gravity, spacing, closed)
