@@ -185,6 +185,10 @@ def _periods_made(case: Case) -> Iterator[float]:
         # from the waves of six widths, those of most energy, to the shortest that matter
         yield period_of_length(6.0 * width, depth, gravity)
         yield period_of_length(2.0 * width, depth, gravity)
+    for patch in case.pressure:
+        speed = math.hypot(*patch.velocity)
+        if speed > 0.0:
+            yield 2.0 * math.pi * speed / gravity  # the waves that follow it, in deep water
 
 
 def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
