@@ -18,16 +18,16 @@ from bemwave.geometry.water_surface import water_surface
 
 FOLDER = Path(__file__).parent
 
-SIZE = (80.0, 60.0)  # useful water, m, round the origin
-ABSORBER = 20.0  # width outside it, m
-SPACING, FINE_SPACING = 2.8, 1.4  # of the water, far away and at waterlines, m
+SIZE = (48.0, 38.0)  # useful water, m, round the origin
+ABSORBER = 50.0  # width outside it, m
+SPACING, FINE_SPACING = 3.4, 1.4  # of the water, far away and at waterlines, m
 
 TENDER_DRAUGHT, TENDER_PANEL = 1.9, 1.2
-TENDER_POSITION, TENDER_HEADING = (-20.0, -4.0), 30.0  # m, degrees
+TENDER_POSITION, TENDER_HEADING = (12.0, 0.0), 90.0  # m, degrees
 
-PLATFORM = {"spacing": 20.0, "column_radius": 2.0, "pontoon": 2.4, "draught": 8.0}
-PLATFORM_PANEL = 1.5
-PLATFORM_POSITION, PLATFORM_HEADING = (14.0, 0.0), 0.0
+PLATFORM = {"spacing": 16.0, "column_radius": 2.0, "pontoon": 2.0, "draught": 6.0}
+PLATFORM_PANEL = 2.2
+PLATFORM_POSITION, PLATFORM_HEADING = (-12.5, 0.0), 0.0
 
 
 def main():
