@@ -6,16 +6,21 @@ Exit codes: 0 done, 1 a check failed, 2 the input is wrong, 3 the run could not 
 
 from __future__ import annotations
 
+import logging
 import math
+import signal
 import sys
 from collections.abc import Sequence
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
 from bemwave import __version__
 from bemwave.errors import BemwaveError, InputError, NotYetError
+
+if TYPE_CHECKING:
+    from bemwave.records import Verdict
 
 _file = click.Path(path_type=Path)
 _anything = {"ignore_unknown_options": True, "allow_extra_args": True}
@@ -28,7 +33,7 @@ def _above_0(context: click.Context, option: click.Parameter, value: float | Non
 
 
 class _Interrupted(Exception):
-    """Ctrl-C, kept from click, which would print an empty line before our message."""
+    """Ctrl-C with what to do next, kept from click, which would print an empty line before it."""
 
 
 class _Commands(click.Group):
@@ -36,7 +41,7 @@ class _Commands(click.Group):
         try:
             return super().invoke(context)
         except KeyboardInterrupt:
-            raise _Interrupted from None
+            raise _Interrupted("interrupted") from None
 
 
 @click.group(cls=_Commands, invoke_without_command=True)
@@ -62,15 +67,28 @@ def new(folder: Path) -> None:
 @click.argument("file", type=_file)
 @click.option("--cut", is_flag=True, help="Cut at still water and keep what is below.")
 @click.option("--panel-size", type=float, callback=_above_0, help="Remesh to this size, m.")
-@click.option("--up", type=click.Choice(["x", "y", "z"]), default="z", help="The file's up axis.")
-@click.option("--scale", type=float, default=1.0, callback=_above_0, help="Metres in its unit.")
+@click.option("--up", type=click.Choice(["x", "y", "z"]), help="The file's up axis [z].")
+@click.option("--scale", type=float, callback=_above_0, help="Metres in the file's unit [1].")
 @click.option("--draught", type=float, callback=_above_0, help="Depth of the lowest point, m.")
-@click.option("--out", type=_file, help="Write the prepared mesh here.")
-def mesh(file: Path, out: Path | None, **how: Any) -> None:
-    """Inspect a hull file: dimensions, volume, centres, faults; cut and remesh it."""
-    from bemwave.geometry.inspect import inspect_hull
+@click.option("--out", type=_file, help="Write the prepared mesh here, waterline at z = 0.")
+def mesh(file: Path, out: Path | None, **how: Any) -> int:
+    """Inspect a hull file: dimensions, volume, centres, faults; exit 1 if there are faults."""
+    from bemwave.geometry.files import write_mesh
+    from bemwave.geometry.inspection import inspect_hull
 
-    click.echo(inspect_hull(file, out=out, **how))
+    found = inspect_hull(file, **how)
+    parts = [("part " + name, str(count), "triangles") for name, count in found.parts.items()]
+    click.echo(_columns([*found.rows(), *(parts if len(parts) > 1 else [])]))
+    for note in found.notes:
+        click.echo(f"note: {note}")
+    for fault in found.faults:
+        click.echo(f"fault: {fault}")
+    if not found.faults:
+        click.echo("no faults found")
+    if out is not None:
+        write_mesh(found.mesh, out)
+        click.echo(f"wrote {out}")
+    return 1 if found.faults else 0
 
 
 @commands.command()
@@ -98,14 +116,28 @@ def run(case: Path, out: Path | None, resume: bool, couple: Path | None) -> None
     if couple is not None:
         raise NotYetError("not yet: --couple comes with a later version; leave it out")
     asked = read_case(case)
+    from bemwave.handoff.writer import CAUTION
+    from bemwave.records import default_folder, read_checks
     from bemwave.running import run as solve
 
-    solve(asked, out or default_run_folder(case), resume=resume)
+    folder = out or default_folder(case)
+    again = f"bemwave run {case} --resume" + (f" --out {out}" if out else "")
+    signal.signal(signal.SIGTERM, signal.default_int_handler)  # as Ctrl-C
+    _tell_what_goes_on()
+    try:
+        finished = solve(asked, folder, resume=resume)
+    except KeyboardInterrupt:
+        raise _Interrupted(f"interrupted; go on with: {again}") from None
+    click.echo(f"run folder: {folder}")
+    click.echo(_verdicts(read_checks(finished.folder.checks)))
+    click.echo(CAUTION)
 
 
-def default_run_folder(case: Path) -> Path:
-    """The folder of a run that was given none: beside the case file, with its name and -run."""
-    return case.with_name(f"{case.stem}-run")
+def _tell_what_goes_on() -> None:
+    """Show the lines of the log, as they come, above the results."""
+    shown = logging.StreamHandler(sys.stdout)
+    shown.setFormatter(logging.Formatter("%(message)s"))
+    logging.getLogger("bemwave").handlers = [shown]
 
 
 @commands.command()
@@ -115,7 +147,25 @@ def check(run: Path, convergence: bool) -> int:
     """Judge RUN by its checks, each with its figure and limit; exit 1 if one fails."""
     from bemwave.running import check as judge
 
-    return 0 if judge(run, convergence=convergence) else 1
+    verdicts = judge(run, convergence=convergence)
+    click.echo(_verdicts(verdicts))
+    return 1 if any(verdict.verdict == "fail" for verdict in verdicts) else 0
+
+
+def _verdicts(verdicts: Sequence[Verdict]) -> str:
+    """A table of name, figure, limit, verdict and where the limit comes from."""
+    rows: list[tuple[str, ...]] = [("check", "figure", "limit", "verdict", "source")]
+    for v in verdicts:
+        figures = ("-" if number is None else f"{number:.3g}" for number in (v.figure, v.limit))
+        rows.append((v.name, *figures, v.verdict, v.source))
+    return _columns(rows)
+
+
+def _columns(rows: Sequence[tuple[str, ...]]) -> str:
+    """Rows of words as columns of equal width."""
+    widths = [max(map(len, column)) for column in zip(*rows, strict=True)]
+    lines = ("  ".join(map(str.ljust, row, widths)).rstrip() for row in rows)
+    return "\n".join(lines)
 
 
 def _comes_later(name: str, does: str) -> None:
@@ -143,8 +193,8 @@ def status_of(arguments: Sequence[str] | None = None) -> int:
         return _fail(f"{error.format_message().rstrip('.')}; see {path} --help", 2)
     except BemwaveError as error:
         return _fail(str(error), error.exit_code)
-    except _Interrupted:
-        return _fail("interrupted; a run goes on with bemwave run CASE --resume", 130)
+    except _Interrupted as error:
+        return _fail(str(error), 130)
     except MemoryError:
         return _fail("the machine has no memory left; see bemwave plan for what a case needs", 3)
     except OSError as error:

@@ -1,7 +1,8 @@
-"""A picture of a case's layout, to scale: water, absorber, bodies, gauges, boxes."""
+"""A picture of a case's layout, to scale: water, absorber, panels, bodies, gauges, boxes, waves."""
 
 from __future__ import annotations
 
+import math
 from pathlib import Path
 from typing import Any
 
@@ -31,24 +32,51 @@ def draw(survey: Survey, path: Path) -> None:
         for k, loop in enumerate(plan):
             label = hull.name if k == 0 else None
             axes.fill(*loop.T, label=label, color=f"C{number}", zorder=3)
-    for gauge in survey.case.gauge:
-        axes.plot(*gauge.position, "k+", zorder=4)
-        axes.annotate(gauge.name, gauge.position, (4, 4), textcoords="offset points", fontsize=8)
-    for entry in survey.case.handoff:
-        box = box_of(entry)
-        if box is not None:
-            half = 0.5 * np.asarray(box.size)
-            corners = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [-1, -1]]) * half
-            axes.plot(*box.to_earth(corners).T, "--", color="k", label=f"box {entry.name}")
+    _places(axes, survey)
+    _headings(axes, survey)
     axes.set(xlabel="x, m", ylabel="y, m", title=survey.case.title)
     axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False)
     figure.savefig(path, dpi=120, format="png")
 
 
+def _places(axes: Any, survey: Survey) -> None:
+    """Gauges by number and boxes by outline, named in the legend."""
+    for number, gauge in enumerate(survey.case.gauge, 1):
+        label = f"{number}: gauge {gauge.name}"
+        axes.plot(*gauge.position, "k.", label=label, markersize=4, zorder=4)
+        axes.annotate(
+            str(number), gauge.position, (3, 3), textcoords="offset points", fontsize=9, zorder=4
+        )
+    for entry in survey.case.handoff:
+        box = box_of(entry)
+        if box is not None:
+            half = 0.5 * np.asarray(box.size)
+            corners = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [-1, -1]]) * half
+            label = f"hand-off {entry.name}"
+            axes.plot(*box.to_earth(corners).T, "--", color="k", label=label, zorder=4)
+
+
+def _headings(axes: Any, survey: Survey) -> None:
+    """An arrow for each entry of waves, from the edge they come from towards the middle."""
+    surface = survey.case.surface
+    reach = 0.5 * min(surface.extent)
+    for wave in survey.case.waves:
+        along = np.array([math.cos(math.radians(a)) for a in (wave.heading, wave.heading - 90.0)])
+        tail = np.array(surface.centre) - reach * along
+        axes.annotate(
+            "",
+            tail + 0.35 * reach * along,
+            tail,
+            arrowprops={"arrowstyle": "-|>", "color": "C3", "linewidth": 2.0},
+            zorder=5,
+        )
+
+
 def _outline(axes: Any, outline: Any, label: str, **style: Any) -> None:
     if isinstance(outline, Circle):
         angle = np.linspace(0.0, 2.0 * np.pi, 181)
-        x, y = outline.x + outline.radius * np.cos(angle), outline.y + outline.radius * np.sin(angle)
+        x = outline.x + outline.radius * np.cos(angle)
+        y = outline.y + outline.radius * np.sin(angle)
     else:
         x = np.array([outline.x_min, outline.x_max, outline.x_max, outline.x_min])
         y = np.array([outline.y_min, outline.y_min, outline.y_max, outline.y_max])

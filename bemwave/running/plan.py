@@ -10,10 +10,11 @@ from pathlib import Path
 import numpy as np
 
 from bemwave.case import Case
-from bemwave.running.budget import GIGABYTE, budget, memory_allowed, refuse_too_large
+from bemwave.running.budget import GIGABYTE, budget, memory_allowed
 from bemwave.running.driving import start_up
 from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.outputs import dry_places
+from bemwave.running.sampling import refuse_unfit, sampling_memory, sampling_seconds
 from bemwave.running.sea import PANELS_PER_WAVELENGTH, length_of_period
 from bemwave.running.survey import Survey, survey
 
@@ -33,7 +34,7 @@ def plan(case: Case, *, picture: str | os.PathLike[str] | None = None) -> str:
         As `run` would, for what can be told before solving.
     """
     surveyed = survey(case)
-    refuse_too_large(surveyed)
+    refuse_unfit(surveyed)
     lines = [
         (label, text)
         for section in (_route, _water, _sea, _bodies, _panels, _times, _places, _cost)
@@ -71,11 +72,11 @@ def _water(s: Survey) -> _Lines:
     else:
         yield "edges", "open"
     if s.layer is not None:
-        length = length_of_period(s.periods.longest, depth, s.case.water.gravity)
-        yield (
-            "absorber",
-            f"{s.layer.width:.3g} m wide, for waves up to {length:.3g} m ({s.periods.longest:.3g} s)"
-            f"; reflects {100 * forecasts(s)['reflection']:.2g} % of them",
+        longest = s.periods.longest
+        length = length_of_period(longest, depth, s.case.water.gravity)
+        yield "absorber", (
+            f"{s.layer.width:.3g} m wide, for waves up to {length:.3g} m ({longest:.3g} s); "
+            f"reflects {100 * s.layer.reflection:.2g} % of them"
         )
 
 
@@ -102,8 +103,8 @@ def _bodies(s: Survey) -> _Lines:
     for hull in s.hulls:
         h = hull.hydrostatics
         yield f"body {hull.name}", (
-            f"{len(hull.mesh.triangles)} panels, {h.length:.4g} x {h.beam:.4g} x {h.draught:.4g} m, "
-            f"{h.volume:.4g} m3, waterplane {h.waterplane_area:.4g} m2"
+            f"{len(hull.mesh.triangles)} panels, {h.length:.4g} x {h.beam:.4g} x "
+            f"{h.draught:.4g} m, {h.volume:.4g} m3, waterplane {h.waterplane_area:.4g} m2"
         )
         for note in hull.notes:
             yield "", note
@@ -129,8 +130,9 @@ def _panels(s: Survey) -> _Lines:
 def _times(s: Survey) -> _Lines:
     yield "start-up", f"{start_up(s).length:.3g} s"
     first, duration = trustworthy_from(s), s.case.run.duration
-    late = "" if first < duration else f": later than the run's end, {duration:g} s"
-    yield "trust from", f"t = {first:.3g} s, when scattered waves have crossed the useful water{late}"
+    yield "trust from", f"t = {first:.3g} s, when solved waves have crossed the useful water"
+    if first > duration:
+        yield "", f"that is after the run's end, {duration:g} s: a longer duration is needed"
 
 
 def _places(s: Survey) -> _Lines:
@@ -145,11 +147,13 @@ def _places(s: Survey) -> _Lines:
 
 def _cost(s: Survey) -> _Lines:
     cost = budget(s)
+    needed, allowed = (m / GIGABYTE for m in (cost.memory + sampling_memory(s), memory_allowed(s)))
     yield "triangles", f"{cost.triangles} ({cost.nodes} unknowns on the surface)"
-    yield "memory", (
-        f"{cost.memory / GIGABYTE:.2g} GB of {memory_allowed(s) / GIGABYTE:.3g} GB allowed"
+    yield "memory", f"{needed:.2g} GB of {allowed:.3g} GB allowed"
+    yield "time", (
+        f"about {_span(cost.assembly)} to assemble, {_span(cost.stepping)} to solve, "
+        f"{_span(sampling_seconds(s))} to sample"
     )
-    yield "time", f"about {_span(cost.assembly)} to assemble, {_span(cost.stepping)} to solve"
 
 
 def _span(seconds: float) -> str:

@@ -1,13 +1,19 @@
-"""Progress of a run: a bar with the time left on a terminal, and lines in the run's log."""
+"""Progress of a run: a bar with the time left on a terminal, and lines for the run's log.
+
+Lines go to Python's logger "bemwave"; while a run is on they are kept in its log.txt as well.
+"""
 
 from __future__ import annotations
 
+import logging
 import sys
-import time as clock
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Protocol
+
+log = logging.getLogger("bemwave")
+log.setLevel(logging.INFO)
 
 
 class Report(Protocol):
@@ -18,21 +24,26 @@ class Report(Protocol):
 
 
 @contextmanager
-def progress(stage: str, log: Path) -> Iterator[Report]:
-    """Show one stage on the terminal, if there is one, and note it in the log when it is over."""
-    started = clock.monotonic()
+def kept_in(path: Path) -> Iterator[None]:
+    """Add every line of the log to a file too, each with the time of day."""
+    keeper = logging.FileHandler(path, encoding="utf-8")
+    keeper.setFormatter(logging.Formatter("%(asctime)s  %(message)s"))
+    log.addHandler(keeper)
+    try:
+        yield
+    finally:
+        log.removeHandler(keeper)
+        keeper.close()
+
+
+@contextmanager
+def progress(stage: str) -> Iterator[Report]:
+    """Show one stage on the terminal, if there is one."""
     if sys.stderr.isatty():
         with _bar(stage) as report:
             yield report
     else:
         yield lambda share, figure="": None
-    note(f"{stage}: {clock.monotonic() - started:.1f} s", log)
-
-
-def note(line: str, log: Path) -> None:
-    """Add a line to the log."""
-    with log.open("a", encoding="utf-8") as file:
-        file.write(line + "\n")
 
 
 @contextmanager
@@ -41,7 +52,7 @@ def _bar(stage: str) -> Iterator[Report]:
     from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 
     columns = (
-        TextColumn("{task.description:<12}"),
+        TextColumn("{task.description:<10}"),
         BarColumn(),
         TextColumn("{task.percentage:>3.0f} %"),
         TimeRemainingColumn(),

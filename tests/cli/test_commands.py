@@ -12,6 +12,7 @@ import pytest
 from bemwave import cli, errors
 from bemwave.case import read_case, refuse_not_yet
 from bemwave.cli import status_of
+from bemwave.records import default_folder
 
 COMMANDS = [
     "new", "mesh", "plan", "run", "sample", "check", "response", "compare", "report", "sweep",
@@ -130,7 +131,7 @@ def test_new_fills_an_empty_folder(tmp_path: Path) -> None:
 
 
 def test_the_default_run_folder_is_beside_the_case() -> None:
-    assert cli.default_run_folder(Path("a/storm.toml")) == Path("a/storm-run")
+    assert default_folder(Path("a/storm.toml")) == Path("a/storm-run")
 
 
 def test_the_program_itself_returns_the_code_without_a_traceback(tmp_path: Path) -> None:

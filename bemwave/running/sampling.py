@@ -1,0 +1,122 @@
+"""What it takes to write what a case asks for: points, memory and time of hand-offs and frames."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from numba import get_num_threads
+
+from bemwave.errors import InputError
+from bemwave.flow.images import make_images
+from bemwave.frames.writer import frame_times
+from bemwave.handoff import box_of
+from bemwave.handoff.box import Box
+from bemwave.handoff.delivery import instants
+from bemwave.handoff.point_list import read_points
+from bemwave.running.budget import GIGABYTE, memory_allowed, memory_of, refuse_too_large
+from bemwave.running.survey import Survey
+
+MOST_POINTS = 5_000_000  # of a hand-off or a frame; more is a slip of the pen
+
+# rough costs, measured on one core
+_INFLUENCE = 1.2e-7  # s, of a triangle on velocity and pressure at a point, each image
+_COMPONENT = 2e-8  # s, of a component of the sea at a point and instant
+_BANDWIDTH = 1e10  # bytes a second
+
+
+@dataclass(frozen=True)
+class Sampled:
+    """A hand-off or the frames: points, how often, and the spacing that makes them [m]."""
+
+    where: str
+    points: int
+    instants: int
+    spacing: float
+    inside: bool
+
+
+def refuse_unfit(survey: Survey) -> None:
+    """Raise InputError for what does not fit in memory, and for points that cannot be read."""
+    refuse_too_large(survey)
+    asked = list(sampled(survey))
+    for one in asked:
+        if one.points > MOST_POINTS:
+            raise InputError(
+                f"{one.where} spacing = {one.spacing:g} m makes {one.points:.2g} points; expected "
+                f"at most {MOST_POINTS:.0g}: give a larger spacing, or less to sample"
+            )
+    sampling, allowed = sampling_memory(survey), memory_allowed(survey)
+    needed = memory_of(survey)[2] + sampling
+    if needed > allowed:
+        most = max(asked, key=lambda one: one.points * one.inside)
+        raise InputError(
+            f"{needed / GIGABYTE:.1f} GB are needed, {sampling / GIGABYTE:.1f} GB of them to "
+            f"sample; expected at most {allowed / GIGABYTE:.1f} GB: {most.where} makes "
+            f"{most.points} points, give it a larger spacing or raise [run] memory_limit"
+        )
+
+
+def sampling_memory(survey: Survey) -> float:
+    """Memory for the linear maps to all points inside the water [bytes]."""
+    return sum(one.points * _row(survey) for one in sampled(survey) if one.inside)
+
+
+def sampling_seconds(survey: Survey) -> float:
+    """Wall time to make the maps and to use them at every instant."""
+    images = len(make_images(survey.case.water.depth, not survey.closed, survey.mirrors).weights)
+    triangles = 0 if survey.mesh is None else len(survey.mesh.triangles)
+    maps = _INFLUENCE * triangles * images / get_num_threads()
+    seconds = 0.0
+    for one in sampled(survey):
+        use = _COMPONENT * survey.sea.count + one.inside * _row(survey) / _BANDWIDTH
+        seconds += one.points * (one.inside * maps + one.instants * use)
+    return seconds
+
+
+def _row(survey: Survey) -> float:
+    """Bytes of the maps to velocity and pressure at one point, and of the sea there."""
+    sea = 5 * 16.0 * survey.sea.count
+    if survey.mesh is None:
+        return sea
+    hull = len(survey.mesh.triangles) - len(survey.water.triangles)
+    return 4 * 8.0 * (len(survey.water.points) + 1.5 * hull) + sea
+
+
+def sampled(survey: Survey) -> Iterator[Sampled]:
+    """Every hand-off of a case, and its frames.
+
+    Raises
+    ------
+    InputError
+        If a list of points cannot be read, or leaves the water.
+    """
+    case = survey.case
+    for entry in case.handoff:
+        where, box = f'[[handoff]] "{entry.name}"', box_of(entry)
+        often = len(instants(entry, survey.periods.kept))
+        if box is None:
+            yield Sampled(where, len(read_points(entry, case).points), often, 0.0, True)
+        else:
+            points = _box_points(box, entry.volume_at_start)
+            yield Sampled(where, points, often, min(box.spacing), True)
+    frames = case.frames
+    if frames is not None:
+        points, spacing = len(survey.water.points), case.surface.spacing
+        if frames.region is not None:
+            x, y = (math.ceil(side / frames.spacing) for side in frames.region.size)
+            points, spacing = (x + 1) * (y + 1), frames.spacing
+        yield Sampled("[frames]", points, len(frame_times(frames)), spacing, False)
+
+
+def _box_points(box: Box, with_volume: bool) -> int:
+    """About as many points as a box has on its faces, in its zone and, if asked for, inside."""
+    sides = (*box.size, box.top - box.bottom)
+    x, y, z = (
+        math.ceil(side / spacing)
+        for side, spacing in zip(sides, (box.spacing[0], *box.spacing), strict=True)
+    )
+    core = math.prod(max(0.0, 1.0 - 2.0 * box.zone / side) for side in box.size)
+    volume = x * y * z
+    return 2 * (x * y + y * z + z * x) + round((1.0 - core) * volume) + with_volume * volume
