@@ -107,9 +107,11 @@ def cylinder(
 def sphere(radius: float, centre_depth: float, panel_size: float) -> SurfaceMesh:
     """Sphere with its centre `centre_depth` below still water; 0 is a floating hemisphere.
 
-    Four sectors of rings at equal steps of latitude. The points lie on a sphere a little larger
-    than `radius`, so XX waterplane of the hemisphere is then too large by about
-    pi^2/(60 rings^2) (.2 % at 9 rings).
+    Four sectors of rows, between those of equal latitude and those of an octahedron's faces
+    projected radially: the former give a little too much added mass at infinite frequency, the
+    latter too little. Points lie on a sphere a little larger than `radius`, those of the waterline
+    on a circle a little larger, so that volume and waterplane area are exact: the damping of heave
+    goes with the square of the waterplane, which volume alone makes .7 % too large at 9 rows.
 
     Raises
     ------
@@ -132,9 +134,7 @@ def sphere(radius: float, centre_depth: float, panel_size: float) -> SurfaceMesh
         unit = _sewn([lower, upper])
     else:
         unit = _sewn([lower, *_belt(lower, top, radius, panel_size)])
-    exact = math.pi * (2.0 / 3.0 - math.cos(top) + math.cos(top) ** 3 / 3.0)
-    growth = (exact / _volume_under(unit, -math.cos(top))) ** (1.0 / 3.0)
-    points = unit.points * radius * growth
+    points = radius * _filled_out(unit, top).points
     points[:, 2] -= centre_depth if submerged else points[:, 2].max()
     return unit.with_points(points)
 
@@ -143,7 +143,9 @@ def _cap(top: float, radius: float, panel_size: float) -> SurfaceMesh:
     """Unit sphere from its lowest point up to the angle `top` from there, normals inward."""
     rings = max(2, round(radius * top / panel_size))
     ring, angle = disc_angles(rings, 4)
-    polar = top * ring / rings
+    along = np.mod(angle / (0.5 * np.pi), 1.0)
+    flat = np.arctan2(ring * np.hypot(along, 1.0 - along), rings - ring) / (0.5 * np.pi)
+    polar = top * 0.5 * (flat + ring / rings)
     x, y = np.sin(polar) * np.cos(angle), np.sin(polar) * np.sin(angle)
     points = np.stack([x, y, -np.cos(polar)], axis=-1)
     points[ring == rings, 2] = -math.cos(top) if top < 0.5 * math.pi else 0.0
@@ -165,6 +167,20 @@ def _belt(lower: SurfaceMesh, top: float, radius: float, panel_size: float) -> l
     height[0] = 0.0
     points = np.stack([np.sin(polar) * np.cos(turn), np.sin(polar) * np.sin(turn), height], axis=-1)
     return [_mirrored_in_quarters(points, layers, around).flipped()]
+
+
+def _filled_out(unit: SurfaceMesh, top: float) -> SurfaceMesh:
+    """Move points of a unit sphere out, to the waterplane and volume of the round one."""
+    exact = math.pi * (2.0 / 3.0 - math.cos(top) + math.cos(top) ** 3 / 3.0)
+    level = -math.cos(top)
+    points = unit.points.copy()
+    rim = np.zeros(len(points), dtype=bool)
+    if top < math.pi:
+        rim = points[:, 2] == points[:, 2].max()
+        points[rim, :2] *= polygon_radius(1.0, int(rim.sum()))
+    for _ in range(40):  # the volume goes nearly with the cube, so each round gains a digit
+        points[~rim] *= (exact / _volume_under(unit.with_points(points), level)) ** (1.0 / 3.0)
+    return unit.with_points(points)
 
 
 def _volume_under(mesh: SurfaceMesh, level: float) -> float:
