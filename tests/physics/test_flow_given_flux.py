@@ -8,7 +8,6 @@ import pytest
 from bemwave.flow.panels import PanelFlow
 from bemwave.geometry.boundary import boundary_mesh
 from bemwave.geometry.outline import SIDES, Circle, Rectangle
-from bemwave.geometry.patterns import disc_triangles
 from bemwave.geometry.surface_mesh import SurfaceMesh, joined
 from bemwave.geometry.topology import weld
 from bemwave.geometry.water_surface import water_surface
