@@ -42,7 +42,7 @@ drawings = st.builds(
     hull=st.booleans(),
     depth=st.sampled_from([0.2, 0.7, 3.0]),
 )
-often = settings(max_examples=15, deadline=None, derandomize=True)
+often = settings(max_examples=10, deadline=None, derandomize=True)
 
 
 def circle(radius, z, sides=10):
