@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 import time as clock
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path
 
@@ -89,12 +89,13 @@ def run(case: Case, out: str | os.PathLike[str], *, resume: bool = False) -> Run
     solution = _assemble(surveyed)
     if not again:
         create_folder(folder.path, case.text)
-    with kept_in(folder.log):
+    with kept_in(folder.log), heard() as interrupted:
         manifest = _begin(surveyed, solution, folder)
         log.info(f"set up in {clock.monotonic() - started:.1f} s")
         with _ending(manifest, folder.manifest):
             kept = _restore(solution, folder) if resume else None
-            _loop(surveyed, solution, outputs_of(surveyed, solution, folder, kept), folder)
+            outputs = outputs_of(surveyed, solution, folder, kept)
+            _loop(surveyed, solution, outputs, folder, interrupted)
             log.info(f"solved after {clock.monotonic() - started:.1f} s")
             write_checks(judge(Run(folder.path)), folder.checks)
     return Run(folder.path)
@@ -207,11 +208,15 @@ def _restore(solution: Solution | None, folder: RunFolder) -> Mapping[str, int] 
 
 
 def _loop(
-    surveyed: Survey, solution: Solution | None, outputs: dict[str, Output], folder: RunFolder
+    surveyed: Survey,
+    solution: Solution | None,
+    outputs: dict[str, Output],
+    folder: RunFolder,
+    interrupted: Callable[[], bool],
 ) -> None:
     """Visit every instant that an output wants, in order."""
     settings, saved = surveyed.case.run, clock.monotonic()
-    with progress("solving") as report, heard() as interrupted:
+    with progress("solving") as report:
         for state, wanting in _visits(solution, outputs):
             for output in wanting:
                 output.write(state)

@@ -36,7 +36,7 @@ def draw(survey: Survey, path: Path) -> None:
     _headings(axes, survey)
     axes.set(xlabel="x, m", ylabel="y, m", title=survey.case.title)
     axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False)
-    figure.savefig(path, dpi=120, format="png")
+    figure.savefig(path, dpi=120, format="png", bbox_inches="tight")
 
 
 def _places(axes: Any, survey: Survey) -> None:
@@ -57,12 +57,13 @@ def _places(axes: Any, survey: Survey) -> None:
 
 
 def _headings(axes: Any, survey: Survey) -> None:
-    """An arrow for each entry of waves, from the edge they come from towards the middle."""
+    """An arrow for each entry of waves, where they come from: in the absorber if there is one."""
     surface = survey.case.surface
-    reach = 0.5 * min(surface.extent)
+    reach = 0.5 * max(surface.extent)
+    start = 1.0 if survey.layer is None else 1.5
     for wave in survey.case.waves:
         along = np.array([math.cos(math.radians(a)) for a in (wave.heading, wave.heading - 90.0)])
-        tail = np.array(surface.centre) - reach * along
+        tail = np.array(surface.centre) - start * reach * along
         axes.annotate(
             "",
             tail + 0.35 * reach * along,

@@ -1,0 +1,243 @@
+"""A run that was interrupted and goes on ends with the very arrays of one that was not."""
+
+from __future__ import annotations
+
+import filecmp
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+import netCDF4
+import numpy as np
+import pytest
+
+from bemwave.case import Case, read_case
+from bemwave.errors import InputError, RunError
+from bemwave.flow.state import SurfaceState
+from bemwave.records import read_manifest
+from bemwave.running import loop, run
+
+TANK = """\
+[water]
+depth = 1.0
+[surface]
+size = [4.0, 1.5]
+spacing = 0.4
+edges = { x_min = "wall", x_max = "absorb", y_min = "wall", y_max = "wall" }
+absorber = 2.0
+[[wavemaker]]
+side = "x_min"
+kind = "flap"
+stroke = 0.02
+period = 1.6
+[run]
+duration = 4.0
+record_every = 0.1
+[[gauge]]
+position = [0.0, 0.0]
+[[handoff]]
+name = "box"
+box = { size = [1.5, 0.6], bottom = -0.4, top = 0.2 }
+start = 2.0
+every = 0.1
+volume_at_start = true
+[frames]
+formats = ["ply", "vtk"]
+start = 2.0
+fps = 5
+"""
+
+SEA_ALONE = """\
+[water]
+depth = 5.0
+[[waves]]
+kind = "jonswap"
+height = 0.1
+period = 2.0
+components = 50
+[surface]
+size = [8.0, 4.0]
+spacing = 0.5
+[run]
+duration = 4.0
+[[gauge]]
+position = [0.0, 0.0]
+[[handoff]]
+name = "box"
+box = { size = [2.0, 2.0], bottom = -1.0, top = 0.5 }
+spacing = 0.5
+every = 0.1
+"""
+
+CASES = {"tank": TANK, "sea alone": SEA_ALONE}
+
+
+@pytest.fixture(scope="module")
+def whole(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str], tuple[Case, Path]]:
+    """Each case and the folder of its uninterrupted run, made once."""
+    made: dict[str, tuple[Case, Path]] = {}
+
+    def of(name: str) -> tuple[Case, Path]:
+        if name not in made:
+            home = tmp_path_factory.mktemp("whole")
+            (home / "case.toml").write_text(CASES[name])
+            case = read_case(home / "case.toml")
+            run(case, home / "run")
+            made[name] = case, home / "run"
+        return made[name]
+
+    return of
+
+
+def interrupt_after(visits: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Have the next run hear Ctrl-C after a number of instants."""
+    left = [visits]
+
+    @contextmanager
+    def heard() -> Iterator[Callable[[], bool]]:
+        def came() -> bool:
+            return left[0] == 0
+
+        yield came
+
+    def count(state: SurfaceState) -> None:
+        left[0] -= 1
+        check(state)
+
+    check = loop._check_finite
+    monkeypatch.setattr(loop, "heard", heard)
+    monkeypatch.setattr(loop, "_check_finite", count)
+
+
+def interrupted(case: Case, out: Path, monkeypatch: pytest.MonkeyPatch, *visits: int) -> None:
+    for number, stop in enumerate(visits):
+        interrupt_after(stop, monkeypatch)
+        with pytest.raises(KeyboardInterrupt):
+            run(case, out, resume=number > 0)
+        monkeypatch.undo()
+
+
+def arrays_of(path: Path) -> dict[str, np.ndarray]:
+    with netCDF4.Dataset(path) as file:
+        file.set_auto_mask(False)
+        arrays = {name: np.asarray(file[name][:]) for name in file.variables}
+    # text comes as objects, whose bytes are addresses
+    return {name: a.astype(str) if a.dtype == object else a for name, a in arrays.items()}
+
+
+def assert_same(one: Path, other: Path) -> None:
+    """All arrays bit for bit, all other files byte for byte; not log and manifest."""
+    files = {p.relative_to(one) for p in one.rglob("*") if p.is_file()}
+    files = {p for p in files if p.parts[0] not in ("checkpoint", "log.txt", "manifest.json")}
+    assert {Path("checks.json"), Path("sea.nc")} <= files
+    for file in sorted(files):
+        if file.suffix == ".nc":
+            first, second = arrays_of(one / file), arrays_of(other / file)
+            assert first.keys() == second.keys()
+            for name, array in first.items():
+                assert array.shape == second[name].shape, (file, name)
+                assert array.tobytes() == second[name].tobytes(), (file, name)
+        else:
+            assert filecmp.cmp(one / file, other / file, shallow=False), file
+
+
+@pytest.mark.parametrize("name", CASES)
+@pytest.mark.parametrize("stops", [(1,), (25,), (20, 25, 5)], ids=str)
+def test_interrupted_and_resumed_is_bit_identical(
+    name: str,
+    stops: tuple[int, ...],
+    whole: Callable[[str], tuple[Case, Path]],
+    tmp_path: Path,
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    case, expected = whole(name)
+    out = tmp_path / "run"
+    interrupted(case, out, monkeypatch, *stops)
+    assert read_manifest(out / "manifest.json").status == "interrupted"
+    run(case, out, resume=True)
+    assert read_manifest(out / "manifest.json").status == "finished"
+    assert_same(expected, out)
+
+
+def test_a_damaged_checkpoint_is_passed_over_and_told(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    case, expected = whole("tank")
+    out = tmp_path / "run"
+    interrupted(case, out, monkeypatch, 20, 10)
+    latest = max((out / "checkpoint").iterdir())
+    latest.write_bytes(latest.read_bytes()[:-100])
+    run(case, out, resume=True)
+    assert f"{latest} is damaged and passed over" in (out / "log.txt").read_text()
+    assert_same(expected, out)
+
+
+def test_without_a_checkpoint_it_starts_again_and_says_so(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    case, expected = whole("tank")
+    out = tmp_path / "run"
+    interrupted(case, out, monkeypatch, 20)
+    for file in (out / "checkpoint").iterdir():
+        file.unlink()
+    run(case, out, resume=True)
+    assert "no checkpoint to go on from: starting again" in (out / "log.txt").read_text()
+    assert_same(expected, out)
+
+
+def test_resume_where_nothing_was_started_starts(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path
+) -> None:
+    case, expected = whole("tank")
+    run(case, tmp_path / "run", resume=True)
+    assert_same(expected, tmp_path / "run")
+
+
+def test_a_finished_run_is_left_as_it_is(whole: Callable[[str], tuple[Case, Path]]) -> None:
+    case, folder = whole("tank")
+    before = {p: p.stat().st_mtime_ns for p in folder.rglob("*") if p.is_file()}
+    run(case, folder, resume=True)
+    assert before == {p: p.stat().st_mtime_ns for p in folder.rglob("*") if p.is_file()}
+
+
+def test_a_run_of_another_case_is_not_gone_on_with(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    case, _ = whole("tank")
+    interrupted(case, tmp_path / "run", monkeypatch, 20)
+    (tmp_path / "other.toml").write_text(TANK.replace("stroke = 0.02", "stroke = 0.03"))
+    with pytest.raises(InputError, match="holds a run of another case"):
+        run(read_case(tmp_path / "other.toml"), tmp_path / "run", resume=True)
+
+
+def test_a_full_disk_ends_the_run_resumably(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    case, expected = whole("tank")
+    out = tmp_path / "run"
+    interrupted(case, out, monkeypatch, 20)
+
+    def full(*arguments: object) -> None:
+        raise OSError(28, "No space left on device")
+
+    with monkeypatch.context() as patch:
+        patch.setattr(loop, "_check_finite", full)
+        with pytest.raises(RunError, match=r"No space left on device.*--resume"):
+            run(case, out, resume=True)
+    assert read_manifest(out / "manifest.json").status == "failed"
+    run(case, out, resume=True)
+    assert_same(expected, out)
+
+
+def test_a_field_that_is_no_longer_a_number_ends_the_run(
+    whole: Callable[[str], tuple[Case, Path]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    case, _ = whole("tank")
+    interrupted(case, tmp_path / "run", monkeypatch, 20)
+    latest = max((tmp_path / "run" / "checkpoint").iterdir())
+    kept = loop.latest_checkpoint(latest.parent)[0]
+    assert kept is not None
+    spoiled = {name: array * np.nan for name, array in kept.arrays.items()}
+    loop.write_checkpoint(loop.Checkpoint(spoiled, kept.facts), latest.parent, 10**6)
+    with pytest.raises(RunError, match="no longer a number at t = "):
+        run(case, tmp_path / "run", resume=True)
