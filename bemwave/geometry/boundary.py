@@ -64,8 +64,11 @@ def boundary_mesh(
             )
     if len(walls):
         rim = outer_rim(water, mesh)
+        edges = {side: rim[_on_side(water, rim, side)] for side in walls}
+        # one set of layers, or walls would not share their nodes where they meet
+        z = -_layers(water, np.concatenate(list(edges.values())), walls[0], depth)
         for side in walls:
-            wall = _wall(water, rim[_on_side(water, rim, side)], f"wall_{side}", depth)
+            wall = _wall(water, edges[side], f"wall_{side}", z)
             mesh, _ = attached(mesh, wall, np.ones(len(wall.points), dtype=bool))
     return mesh
 
@@ -91,15 +94,19 @@ def _on_side(water: SurfaceMesh, rim: IntArray, side: str) -> BoolArray:
     return np.asarray(np.all(np.abs(across[rim] - place) < tolerance, axis=1))
 
 
-def _wall(water: SurfaceMesh, edges: IntArray, name: str, depth: float) -> SurfaceMesh:
-    """Extrude rim edges from z = 0 down to the bed; normals out of the tank."""
+def _layers(water: SurfaceMesh, edges: IntArray, side: str, depth: float) -> FloatArray:
+    """Depths of the rows of nodes of all walls that stand on these edges of the rim."""
     if not math.isfinite(depth):
         raise InputError(
-            f"{name} is to be meshed in water of depth 'deep': walls need a bed to stand on; "
+            f"wall_{side} is to be meshed in water of depth 'deep': walls need a bed to stand on; "
             "give [water] depth in metres"
         )
     length = np.linalg.norm(np.diff(water.points[edges], axis=1), axis=-1).mean()
-    z = -wall_layers(depth, float(length))
+    return wall_layers(depth, float(length))
+
+
+def _wall(water: SurfaceMesh, edges: IntArray, name: str, z: FloatArray) -> SurfaceMesh:
+    """Extrude rim edges from z = 0 down to the bed; normals out of the tank."""
     start, end = water.points[edges[:, 0]], water.points[edges[:, 1]]
     # the water lies to the left of its rim: along the rim x down points into the tank
     strips = []
@@ -112,12 +119,13 @@ def _wall(water: SurfaceMesh, edges: IntArray, name: str, depth: float) -> Surfa
     return weld(joined(strips), 0.0)[0]
 
 
-def wall_layers(depth: float, first: float, growth: float = 1.15) -> FloatArray:
+def wall_layers(depth: float, edge: float) -> FloatArray:
     """Depths of a wall's rows of nodes, from 0 to `depth`, (n,), m.
 
-    The first layer is about as high as the rim's edges are long; each is up to `growth` times the
-    one above, for waves fade downwards.
+    Layers are half as high as the rim's edges are long at the surface, where a tank's error comes
+    from, and grow evenly to as high at the bed (or 10 edges down; waves fade): the mesh is refined
+    everywhere when the edges are, and sloshing frequencies keep the scheme's third order.
     """
-    count = max(1, math.ceil(math.log1p(depth / first * (growth - 1.0)) / math.log(growth)))
-    heights = growth ** np.arange(count)
-    return np.asarray(depth * np.concatenate([[0.0], np.cumsum(heights)]) / heights.sum())
+    reach = min(depth, 10.0 * edge)
+    count = max(1, math.ceil(2.0 * reach / edge * math.log1p(depth / reach)))
+    return np.asarray(reach * np.expm1(np.linspace(0.0, math.log1p(depth / reach), count + 1)))

@@ -75,8 +75,6 @@ def errors(tank, unknowns, mode, structured, **options):
     return had, np.sort(np.abs(relative))[:pair].max()
 
 
-# until the top layer of walls is half as high as the rim's edges are long, and layers refine
-COARSE_WALLS = pytest.mark.xfail(reason="walls are meshed too coarsely", strict=True)
 LIMITS = {12: 0.0015, 16: 0.0006}
 
 
@@ -110,7 +108,7 @@ def test_box_of_mirrors(mode, unknowns):
     ("tank", "mode", "structured"),
     [
         # measured at 12 and 16, %
-        pytest.param("box", (1, 0), True, marks=COARSE_WALLS),  # .107 .054
+        ("box", (1, 0), True),  # .107 .054
         ("box", (2, 0), True),  # .047 .022
         ("box", (2, 0), False),  # .060 .024
         ("round", (1, 1), True),  # .064 .021
@@ -142,10 +140,10 @@ def test_higher_modes_with_meshed_walls(tank, mode, unknowns, structured):
     ("tank", "mode", "structured"),
     [
         # measured
-        pytest.param("box", (2, 0), True, marks=COARSE_WALLS),  # 2.81
-        pytest.param("box", (2, 0), False, marks=COARSE_WALLS),  # 2.90
-        pytest.param("round", (2, 1), True, marks=COARSE_WALLS),  # 2.81
-        pytest.param("round", (2, 1), False, marks=COARSE_WALLS),  # 3.12
+        ("box", (2, 0), True),  # 2.81
+        ("box", (2, 0), False),  # 2.90
+        ("round", (2, 1), True),  # 2.81
+        ("round", (2, 1), False),  # 3.12
     ],
 )
 def test_order(tank, mode, structured):

@@ -311,14 +311,22 @@ def test_walls_need_a_bed():
         boundary_mesh(water_surface(BASIN, 2.0), walls=["x_min"])
 
 
-@pytest.mark.parametrize(("depth", "first"), [(0.3, 1.0), (1.0, 1.0), (5.0, 0.5), (100.0, 1.0)])
-def test_wall_layers_start_at_the_rim_s_size_and_grow_gently(depth, first):
-    z = wall_layers(depth, first)
+@pytest.mark.parametrize(("depth", "edge"), [(0.3, 1.0), (1.0, 1.0), (5.0, 0.5), (100.0, 1.0)])
+def test_wall_layers_start_at_half_the_rim_s_size_and_grow_gently(depth, edge):
+    z = wall_layers(depth, edge)
     heights = np.diff(z)
     assert (z[0], z[-1]) == (0.0, pytest.approx(depth))
-    assert heights[0] <= first + 1e-12
-    assert np.all(heights[1:] / heights[:-1] < 1.1501)
-    assert depth < first or heights[0] > 0.5 * first
+    assert heights[0] < 0.55 * edge
+    assert np.all(heights[1:] / heights[:-1] < 1.5)
+    assert np.all(heights[z[1:] <= 10.0 * edge] < 1.1 * edge)
+    assert depth < edge or heights[0] > 0.3 * edge
+
+
+def test_walls_of_unequal_edges_have_common_layers():
+    """Else the walls would not hang together where they meet."""
+    water = water_surface(Rectangle(0.0, 2.0, 0.0, 1.0), 0.29)
+    mesh = boundary_mesh(water, walls=SIDES, depth=0.65)
+    assert len(boundary_loops(mesh.triangles)) == 1
 
 
 # the mesher's manners
