@@ -74,7 +74,7 @@ class PanelFlow:
         self.images = make_images(depth, not closed, mirrors, span)
         self.mass = self.elements.mass
         self._solve_mass = splu(self.mass).solve
-        energy, given = _forms(self.elements, self.images, closed, progress)
+        energy, given = forms(self.elements, self.images, closed, progress)
         self._eliminate_hull(energy, given)
         progress(1.0)
 
@@ -139,10 +139,13 @@ class _Columns:
         return layer
 
 
-def _forms(
-    e: Elements, images: Images, closed: bool, progress: Callable[[float], None]
+def forms(
+    e: Elements,
+    images: Images,
+    closed: bool = False,
+    progress: Callable[[float], None] = lambda share: None,
 ) -> tuple[Array, Array]:
-    """Q (nodes, nodes) and N (nodes, mB)."""
+    """Q (nodes, nodes) and N (nodes, mB) of elements."""
     water, hull = e.water_table, e.hull_table
     curl_f, curl_b = e.curls(e.water, water), e.curls(e.hull, hull)
     weights = np.column_stack([images.curl_weights, images.weights])
