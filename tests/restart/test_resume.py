@@ -47,6 +47,39 @@ start = 2.0
 fps = 5
 """
 
+SPHERE = """\
+[water]
+depth = "deep"
+[[waves]]
+kind = "regular"
+height = 0.1
+period = 1.8
+[surface]
+size = [4.0, 3.0]
+spacing = 0.7
+absorber = 2.8
+[[body]]
+name = "ball"
+form = "sphere"
+radius = 0.4
+centre_depth = 1.0
+panel_size = 0.4
+attitude = "forced"
+forced = { mode = "heave", amplitude = 0.05, period = 1.8 }
+[run]
+duration = 4.0
+record_every = 0.1
+[[gauge]]
+position = [0.5, 0.0]
+[[handoff]]
+name = "box"
+box = { size = [3.0, 2.0], bottom = -0.5, top = 0.2 }
+start = 3.0
+every = 0.1
+crest = "wheeler"
+field = "parts"
+"""
+
 SEA_ALONE = """\
 [water]
 depth = 5.0
@@ -69,7 +102,7 @@ spacing = 0.5
 every = 0.1
 """
 
-CASES = {"tank": TANK, "sea alone": SEA_ALONE}
+CASES = {"tank": TANK, "sphere": SPHERE, "sea alone": SEA_ALONE}
 
 
 @pytest.fixture(scope="module")
