@@ -8,6 +8,7 @@ from functools import cached_property
 import numpy as np
 import numpy.typing as npt
 from scipy import sparse
+from scipy.sparse import csgraph
 
 from bemwave.flow.images import Mirror
 from bemwave.geometry.surface_mesh import SurfaceMesh
@@ -71,6 +72,21 @@ class Elements:
         values = ((self.water_table[:, 28] * weight)[:, None] * local.ravel()).ravel()
         n = len(self.points)
         return sparse.csc_matrix((values, (rows, cols)), shape=(n, n))[: self.free, : self.free]
+
+    def sunken(self) -> Array:
+        """(bodies, mB) ones on the triangles of each connected body wholly under water."""
+        pieces = sparse.csr_matrix(
+            (
+                np.ones(3 * len(self.hull)),
+                (np.repeat(np.arange(len(self.hull)), 3), self.hull.ravel()),
+            ),
+            shape=(len(self.hull), len(self.points)),
+        )
+        count, piece = csgraph.connected_components(pieces @ pieces.T, directed=False)
+        on_surface = (self.hull < self.free) | (self.hull >= self.nodes)
+        afloat = np.unique(piece[on_surface.any(axis=1)])
+        under = np.setdiff1d(np.arange(count), afloat)
+        return (piece == under[:, None]).astype(np.float64)
 
     def shares(self, corners: Ints, table: Array) -> sparse.csr_matrix:
         """(m, nodes) int over each triangle of each hat: a third of its area at its corners."""

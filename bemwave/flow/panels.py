@@ -162,20 +162,48 @@ def forms(
     mixed += _sandwich(curl_f[1], layers[1], curl_b[1])
     energy += mixed + mixed.T
     across = layers[2] if closed else None
-    layers = _single_layers(hull, hull, (images.signs, images.shifts, weights[:, :3]))
+    sunken = e.sunken()
+    columns = weights[:, :4] if len(sunken) else weights[:, :3]
+    layers = _single_layers(hull, hull, (images.signs, images.shifts, columns))
     for axis in (0, 1, 2):
         energy += _sandwich(curl_b[axis], layers[axis], curl_b[axis])
+    made = sunken @ layers[3] if len(sunken) else np.zeros((0, len(hull)))
     del layers
     _add_images_left_out(energy, e, images, (curl_f, curl_b))
     progress(0.7)
-    given = (_double_layer(e, hull, images, closed) - 0.5 * e.shares(e.hull, hull)).T
+    double = _double_layer(e, hull, images, closed)
+    share = e.shares(e.hull, hull).toarray()
+    given = (double - 0.5 * share).T
+    level = sunken @ (double + 0.5 * share)
     if factor is not None and across is not None:
         share = e.shares(e.water, water)
         row = _double_layer(e, water, images, closed) + 0.5 * share
         inner = linalg.solve_triangular(factor, row, lower=True, overwrite_b=True)
+        other = linalg.solve_triangular(factor, across, lower=True)
         energy += inner.T @ inner
-        given -= inner.T @ linalg.solve_triangular(factor, across, lower=True)
+        given -= inner.T @ other
+        level -= (sunken @ other.T) @ inner
+        made = made - (sunken @ other.T) @ other
+    _fix_constants(energy, given, level, made)
     return energy, np.ascontiguousarray(given)
+
+
+def _fix_constants(energy: Array, given: Array, level: Array, made: Array) -> None:
+    """Set the mean potential of bodies wholly under water, which Q leaves free.
+
+    On a closed surface curls do not see a constant. The first of the boundary's two equations does:
+    its integral over body i, level_i phi = made_i q, joins the energy as a square. At the solution
+    it is zero, so that nothing else changes.
+
+    Parameters
+    ----------
+    energy, given : Q and N, changed in place; N as (nodes, mB).
+    level, made : (bodies, nodes) and (bodies, mB).
+    """
+    for left, right in zip(level, made, strict=True):
+        weight = np.trace(energy) / len(energy) / (left @ left) * np.count_nonzero(left)
+        energy += weight * np.outer(left, left)
+        given -= weight * np.outer(left, right)
 
 
 def _add_images_left_out(
