@@ -7,7 +7,9 @@ import math
 
 import numpy as np
 import pytest
+from scipy.integrate import cumulative_simpson
 
+from bemwave.case import Case
 from bemwave.flow.panels import PanelFlow
 from bemwave.geometry import forms
 from bemwave.geometry.boundary import boundary_mesh
@@ -16,6 +18,8 @@ from bemwave.geometry.outline import SIDES, Circle, Rectangle
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.water_surface import fitted_water, water_surface
+from bemwave.running.solution import Solution
+from bemwave.running.survey import survey
 from bemwave.stepping.exact import LARGEST_TURN, exact_map, fastest_frequency
 from bemwave.stepping.stepper import Stepper
 
@@ -134,3 +138,55 @@ def test_the_absorber_only_takes_energy(seed):
     kept = np.array(kept)
     assert np.diff(kept).max() < 1e-13 * kept[0]
     assert kept[-1] < 1e-6 * kept[0]
+
+
+PERIOD = 2.0
+FLUME = {"x_min": "wall", "y_min": "wall", "y_max": "wall", "x_max": "absorb"}
+DRIVEN = {
+    "wavemaker": {
+        "wavemaker": [{"side": "x_min", "kind": "piston", "stroke": 0.1, "period": PERIOD}],
+        "surface": {"size": [6.4, 2.0], "centre": [3.2, 0.0], "spacing": 0.4, "edges": FLUME},
+    },
+    "rolling box": {
+        "body": [
+            {
+                "name": "barge",
+                "form": "box",
+                "length": 2.0,
+                "beam": 1.0,
+                "draught": 0.4,
+                "panel_size": 0.25,
+                "attitude": "forced",
+                "forced": {"mode": "roll", "amplitude": 5.0, "period": PERIOD},
+            }
+        ],
+        "surface": {"size": [8.0, 8.0], "spacing": 0.7, "fine_spacing": 0.25},
+    },
+    "patch": {
+        "pressure": [
+            {"head": 0.1, "width": 1.0, "centre": [-3.0, 0.0], "velocity": [0.6, 0.0]}
+        ],
+        "surface": {"size": [10.0, 8.0], "spacing": 0.6},
+    },
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("driven", DRIVEN)
+def test_the_ledger_closes(driven, request):
+    """What is put in is there or was absorbed, within 1 % of the work done."""
+    if driven == "rolling box":
+        request.getfixturevalue("needs_gmsh")
+    case = Case(water={"depth": 1.0}, run={"duration": 4 * PERIOD}, **DRIVEN[driven])
+    solution = Solution(survey(case))
+    times = np.arange(0.0, 4 * PERIOD, solution.step)
+    rows = np.empty((len(times), 3))
+    for k, time in enumerate(times):
+        solution.advance_to(time)
+        rows[k] = solution.energy(solution.state(time))
+    stored, power, taken = rows.T
+    put_in = cumulative_simpson(power, x=times, initial=0.0)
+    absorbed = cumulative_simpson(taken, x=times, initial=0.0)
+    missing = stored - stored[0] - put_in + absorbed
+    work = cumulative_simpson(np.abs(power), x=times)[-1]
+    assert np.abs(missing).max() < 0.01 * work
+    assert absorbed[-1] > 0.02 * work  # so that all three took part
