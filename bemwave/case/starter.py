@@ -25,7 +25,7 @@ period = 3.5                    # for a spectrum the peak period
 heading = 0.0                   # where the waves go, counter-clockwise from +x
 
 [surface]
-size = [32.0, 24.0]             # the useful water round [0, 0]; an absorber is added outside it
+size = [24.0, 18.0]             # the useful water round [0, 0]; an absorber is added outside it
 spacing = 1.5                   # size of the water's panels: 12 or more in the shortest wavelength
 fine_spacing = 0.8              # at the waterline
 
@@ -52,12 +52,12 @@ position = [-8.0, 0.0]
 name = "box"                    # solver: case-run/handoff/box.nc
 box = { centre = [0.0, 0.0], size = [20.0, 14.0], bottom = -6.0, top = 1.0 }
 spacing = [1.0, 0.5]            # horizontal, vertical
-start = 14.0                    # when the waves round the barge have settled
+start = 18.0                    # when the waves round the barge have settled: see the plan
 
 [frames]                        # the water's surface as meshes for a renderer: case-run/frames/
 formats = ["vtk"]               # "vtk" for ParaView, "ply" for a renderer
 fps = 10
-start = 14.0
+start = 18.0
 spacing = 0.5                   # may be finer than the panels: the incident waves are exact
 """
 
