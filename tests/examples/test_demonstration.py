@@ -1,4 +1,4 @@
-"""The demonstration: its meshes and its case agree, its plan is sound, its run passes all checks."""
+"""The demonstration: meshes and case agree, its plan is sound, its run passes all checks."""
 
 from __future__ import annotations
 

@@ -1,0 +1,100 @@
+"""The loop: instants of all outputs in order, each once; what is told while it goes on."""
+
+from __future__ import annotations
+
+import logging
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from bemwave.case import Case
+from bemwave.flow.state import SurfaceState
+from bemwave.running import loop, run, steps
+from bemwave.running.progress import kept_in, log, progress
+
+TANK = Case(
+    water={"depth": 1.0},
+    surface={"size": [3.0, 2.0], "spacing": 0.3, "edges": "wall"},
+    hump=[{"height": 0.02, "width": 0.6, "centre": [0.3, 0.1]}],
+    run={"duration": 1.0, "record_every": 0.1},
+)
+
+
+class Recorder:
+    """An output that keeps the times it was given."""
+
+    def __init__(self, times: list[float]) -> None:
+        self.times, self.given = np.array(times), list[float]()
+
+    @property
+    def count(self) -> int:
+        return len(self.given)
+
+    def write(self, state: SurfaceState) -> None:
+        self.given.append(state.time)
+
+    def flush(self) -> None:
+        pass
+
+
+def test_every_output_gets_each_of_its_instants_in_order() -> None:
+    third = 1.0 / 3.0
+    outputs = {
+        "coarse": Recorder([0.0, 1.0, 2.0]),
+        "fine": Recorder([0.0, third, 2 * third, 3 * third, 4 * third]),
+        "late": Recorder([1.0 + 1e-12, 1.5]),
+        "none": Recorder([]),
+    }
+    visited = []
+    for state, wanting in loop._visits(None, dict(outputs)):
+        visited.append(state.time)
+        for output in wanting:
+            output.write(state)
+    assert visited == sorted(visited)
+    assert len(visited) == 7  # 0, 1/3, 2/3, 1 for three of them, 4/3, 3/2, 2
+    for output in outputs.values():
+        assert output.given == pytest.approx(output.times, abs=1e-9)
+
+
+def test_live_steps_and_the_recorded_run_agree(tmp_path: Path) -> None:
+    recorded = run(TANK, tmp_path / "run")
+    place = np.array([[0.2, -0.3, -0.4], [-0.7, 0.5, -0.1]])
+    checked = 0
+    for state in steps(TANK):
+        known = recorded.state(min(state.time, 1.0))
+        scale = np.abs(known.elevation).max()
+        # records are single precision, and cubic between themselves
+        assert known.elevation == pytest.approx(state.solved.elevation, abs=0.01 * scale)
+        near = np.abs(recorded.times - state.time).min()
+        if near < 1e-9:
+            one, other = state.velocity(place), recorded.velocity(place, state.time)
+            assert one == pytest.approx(other, abs=2e-6)
+            checked += 1
+    assert checked >= 1
+
+
+def test_the_log_keeps_what_is_told_with_the_time_of_day(tmp_path: Path) -> None:
+    with kept_in(tmp_path / "log.txt"):
+        log.info("half way")
+    log.info("after the run")
+    (line,) = (tmp_path / "log.txt").read_text().splitlines()
+    assert line.endswith("  half way")
+    assert line[:2] == "20"
+    assert all(not isinstance(handler, logging.FileHandler) for handler in log.handlers)
+
+
+def test_progress_is_a_bar_on_a_terminal_and_silent_elsewhere(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    with progress("solving") as report:
+        report(0.5, "t = 1.0 s")
+    assert capsys.readouterr().err == ""
+    monkeypatch.setattr("sys.stderr.isatty", lambda: True)
+    with progress("solving") as report:
+        report(0.5, "t = 1.0 s")
+        report(1.0, "t = 2.0 s")
+    shown = capsys.readouterr().err
+    assert "solving" in shown
+    assert "100 %" in shown
+    assert "t = 2.0 s" in shown

@@ -1,0 +1,108 @@
+"""What a plan says, and how near its forecasts of points and memory come."""
+
+from __future__ import annotations
+
+import math
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from bemwave import cli
+from bemwave.case import Case, read_case
+from bemwave.handoff import box_of
+from bemwave.handoff.box import box_points, box_volume
+from bemwave.running import plan
+from bemwave.running.check import coarser
+from bemwave.running.sampling import sampled, sampling_memory
+from bemwave.running.survey import survey
+
+DEMONSTRATION = Path(cli.__file__).parents[1] / "examples" / "tender_by_platform.toml"
+HUMP = {"height": 0.1, "width": 1.0}
+
+
+def case(**tables: Any) -> Case:
+    given = {
+        "water": {"depth": 4.0},
+        "surface": {"size": [10.0, 8.0], "spacing": 0.8},
+        "hump": [HUMP],
+        "run": {"duration": 10.0},
+    }
+    return Case(**{**given, **tables})
+
+
+def told(asked: Case) -> dict[str, str]:
+    rows = (line.split("  ", 1) for line in plan(asked).splitlines())
+    return {label: text.strip() for label, text in rows}
+
+
+def test_open_water() -> None:
+    found = told(case())
+    assert found["useful water"] == "10 x 8 m, 4 m deep"
+    assert found["edges"] == "open"
+    assert found["incident sea"] == "none"
+    # the waves of a hump of width 1 are up to 6 m long
+    assert "for waves up to 6 m" in found["absorber"]
+    assert "not scattered" not in found
+
+
+def test_closed_water() -> None:
+    found = told(case(surface={"size": [10.0, 8.0], "spacing": 0.8, "edges": "wall"}))
+    assert found["edges"] == "walls all round, meshed"
+    assert "absorber" not in found
+
+
+def test_a_straight_wall_is_an_image() -> None:
+    walls = {"size": [10.0, 8.0], "spacing": 0.8, "edges": {"y_max": "wall"}}
+    assert told(case(surface=walls))["edges"] == (
+        "straight walls at y = 4, by images; open elsewhere"
+    )
+
+
+def test_sea_alone() -> None:
+    found = told(case(hump=[], waves=[{"kind": "jonswap", "height": 0.2, "period": 2.0}]))
+    assert found["panels"] == "none: the sea is all there is"
+    assert found["incident sea"].startswith("1000 components, periods 0.5 to 4 s")
+    # 1000 frequencies over 3.5 peak frequencies: some spacings are much smaller than the mean
+    assert float(found["repeats after"].split()[0]) > 1000 * 2.0 / 3.5
+    assert found["triangles"] == "0 (0 unknowns on the surface)"
+
+
+def test_a_run_that_ends_too_early_is_told() -> None:
+    assert "after the run's end, 1 s: a longer duration" in plan(case(run={"duration": 1.0}))
+    assert "after the run's end" not in plan(case(run={"duration": 60.0}))
+
+
+def test_a_gauge_in_a_waterline_is_told() -> None:
+    tables = read_case(DEMONSTRATION).model_dump(exclude_unset=True, exclude_none=True)
+    tables["gauge"][1]["position"] = [12.0, 1.0]
+    found = told(Case(**tables).placed(DEMONSTRATION.parent))
+    assert found["gauge between"] == "lies on or inside a waterline: it will read NaN"
+
+
+def test_points_are_counted_as_they_are_made() -> None:
+    asked = survey(read_case(DEMONSTRATION))
+    handoff, frames = sampled(asked)
+    box = box_of(asked.case.handoff[0])
+    assert box is not None
+    made = len(box_points(box).points) + len(box_volume(box).points)
+    assert handoff.points == pytest.approx(made, rel=0.1)
+    assert handoff.instants == 81
+    assert (frames.points, frames.instants) == (47 * 37, 41)
+    # four rows of eight bytes a point, over every node and panel
+    least = 4 * 8 * made * (len(asked.water.points) + 1011)
+    assert least < sampling_memory(asked) < 1.5 * least
+
+
+def test_coarser_is_the_same_case_on_larger_panels_and_nothing_written() -> None:
+    asked = read_case(DEMONSTRATION)
+    found = coarser(asked)
+    assert found.surface.spacing == pytest.approx(1.5 * 3.4)
+    assert found.surface.fine_spacing == pytest.approx(1.5 * 1.4)
+    assert found.surface.mesh is None
+    assert [body.panel_size for body in found.body] == pytest.approx([1.8, 3.3])
+    assert (found.handoff, found.gauge, found.frames) == ((), (), None)
+    assert found.waves == asked.waves
+    assert found.surface.absorber == asked.surface.absorber
+    assert found.folder == asked.folder
+    assert math.isinf(found.water.depth)
