@@ -67,6 +67,7 @@ class Stepper:
         free = flow.elements.free
         self._xy = flow.elements.points[:free, :2]
         self._map = exact_map(flow.surface_matrix, flow.solve_mass, gravity, step)
+        self._given_map = flow.solve_mass(flow.hull_flux_matrix)
         self._solve_damped: Any = None
         if damping is not None:
             self._solve_damped = splu(sparse.csc_matrix(flow.mass + 0.5 * step * damping)).solve
@@ -98,7 +99,9 @@ class Stepper:
         """One step."""
         potential, g, dt = self._potentials[-1], self.gravity, self.step
         forced = self._forced_flux(self.count)
-        flux = self._map @ (potential - (g * dt**2 / 12.0) * forced) + forced
+        moving = potential - (g * dt**2 / 12.0) * forced
+        # part by part: libraries are slow at products with two or three columns
+        flux = np.column_stack([self._map @ part for part in moving.T]) + forced
         if self.count == 0:
             flux *= 0.5  # what is given begins at t = 0: the first step sees half a stencil
         self._mean = self._mean + dt * self._damped(flux)
@@ -124,8 +127,7 @@ class Stepper:
         times: Array = (start + np.arange(-1.0, BLOCK + 1)) * self.step
         block = np.zeros((BLOCK, *self._potentials[0].shape))
         for k, part in enumerate(self.parts):
-            flux = _smoothed(part.flux(times), start)
-            block[:, :, k] = self.flow.solve_mass(self.flow.hull_flux_matrix @ flux).T
+            block[:, :, k] = (self._given_map @ _smoothed(part.flux(times), start)).T
         if self.patches:
             rates = np.column_stack([self._head_rate(time) for time in times])
             block[:, :, 0] += _smoothed(rates, start).T
