@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import tempfile
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -11,8 +12,10 @@ import numpy as np
 from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.checks.verdicts import PRACTICE, judged
-from bemwave.records import Run, Verdict, open_run, write_checks
-from bemwave.running.loop import run as solve
+from bemwave.records import Run, RunFolder, Verdict, open_run, write_checks
+from bemwave.running.loop import solve
+from bemwave.running.sea import scattered_sea
+from bemwave.running.survey import survey
 
 COARSER = 1.5
 LIMIT = 0.10
@@ -40,11 +43,18 @@ def check(path: str | os.PathLike[str], *, convergence: bool = False) -> list[Ve
 
 
 def _convergence(run: Run) -> Verdict:
-    """Root mean square difference of the total elevation between the two, over the finer's."""
+    """Root mean square difference of the total elevation between the two, over the finer's.
+
+    The bodies scatter the same waves in both, also those with too few of the larger panels.
+    """
+    if run.history is None:
+        return Verdict("convergence", 0.0, None, "info", "the sea alone: no panels")
+    surface, home = run.case.surface, Path(run.manifest.notes["case_folder"])
+    surveyed = survey(coarser(run.case.placed(home)))
+    scattered, share = scattered_sea(surveyed.sea, surface.spacing)
+    surveyed = replace(surveyed, scattered=scattered, unscattered_share=share)
     with tempfile.TemporaryDirectory(prefix="bemwave-") as folder:
-        home = Path(run.manifest.notes["case_folder"])
-        coarse = solve(coarser(run.case.placed(home)), Path(folder) / "run")
-        surface = run.case.surface
+        coarse = solve(surveyed, RunFolder(Path(folder) / "run"))
         side = np.linspace(-0.45, 0.45, 15)
         x, y = np.meshgrid(
             surface.centre[0] + side * surface.extent[0],

@@ -78,17 +78,22 @@ def run(case: Case, out: str | os.PathLike[str], *, resume: bool = False) -> Run
     >>> run.elevation(0.0, 0.0, run.times).max()                    # doctest: +SKIP
     1.83
     """
-    started, folder = clock.monotonic(), RunFolder(Path(out))
+    folder = RunFolder(Path(out))
     again = resume and folder.holds_run
     if again and read_manifest(folder.manifest).status == "finished":
         log.info(f"{folder.path} holds a finished run: nothing is left to do")
         return Run(folder.path)
     _refuse_folder(folder, case, again)
-    surveyed = survey(case)
+    return solve(survey(case), folder, resume)
+
+
+def solve(surveyed: Survey, folder: RunFolder, resume: bool = False) -> Run:
+    """Solve a surveyed case, as `run` does, in a folder that it can go into."""
+    started = clock.monotonic()
     refuse_unfit(surveyed)
     solution = _assemble(surveyed)
-    if not again:
-        create_folder(folder.path, case.text)
+    if not folder.holds_run:
+        create_folder(folder.path, surveyed.case.text)
     with kept_in(folder.log), heard() as interrupted:
         manifest = _begin(surveyed, solution, folder)
         log.info(f"set up in {clock.monotonic() - started:.1f} s")
