@@ -212,6 +212,6 @@ def test_the_ready_hulls_keep_their_figures(demo):
     whole = inspect_hull(MESHES / "tender.stl", draught=maker.TENDER_DRAUGHT).hydrostatics
     assert tender.hydrostatics.volume == pytest.approx(whole.volume, rel=0.03)  # chords
     assert tender.hydrostatics.waterplane_area == pytest.approx(whole.waterplane_area, rel=0.01)
-    assert platform.hydrostatics.draught == pytest.approx(8.0)
+    assert platform.hydrostatics.draught == pytest.approx(maker.PLATFORM["draught"])
     assert platform.hydrostatics.waterplane_area == pytest.approx(16 * math.pi)
     assert len(platform.waterlines) == 4
