@@ -9,6 +9,8 @@ surface is evaluated at nodes; far away through a few panels and nodes that stan
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import numpy.typing as npt
 from scipy import sparse
@@ -77,7 +79,7 @@ class Coupling:
         result[self.beyond] = self._rise_beyond @ (self._gather @ both)
         return result
 
-    def _near_maps(self) -> tuple[Array, sparse.csr_matrix]:
+    def _near_maps(self) -> tuple[Array, Array]:
         """Flux on panels and potential at nodes of the near sheet, by grid node."""
         sheet, e = self.sheet, self.e
         i, j = np.divmod(self.near, sheet.shape[1])
@@ -131,8 +133,8 @@ class Coupling:
 
         every = np.arange(len(panels) + len(below))
         tried = rows(every, nodes[sample]) * weight[sample]
-        rank, order, spread = interpolative.interp_decomp(tried.T, ACCURACY, rand=False)
-        full = interpolative.reconstruct_interp_matrix(order, spread).T
+        rank, order, spread = _stand_ins(tried.T)
+        full = spread.T
         self._skeleton_rows = rows(order[:rank], nodes) * weight
         on_line = np.zeros((len(e.points) - e.below, rank))
         self._skeleton_spread = np.vstack(
@@ -153,8 +155,7 @@ class Coupling:
         tried *= (1.0 + np.linalg.norm(sheet.xy[sample] - e.points[:, :2].mean(axis=0), axis=1))[
             :, None
         ] ** 3
-        rank, order, spread = interpolative.interp_decomp(tried, ACCURACY, rand=False)
-        self._gather = interpolative.reconstruct_interp_matrix(order, spread)
+        rank, order, self._gather = _stand_ins(tried)
         self._rise_beyond = self._rise(self.beyond, order[:rank])
 
     def _rise(self, nodes: Ints, columns: Ints) -> Array:
@@ -182,8 +183,16 @@ class Coupling:
         return result
 
 
+def _stand_ins(tried: Array) -> tuple[int, Ints, Array]:
+    """How many columns stand for all, their numbers first, and all of them as sums of these."""
+    found: Any = interpolative.interp_decomp(tried, ACCURACY, rand=False)
+    rank, order, spread = found
+    return rank, order, np.asarray(interpolative.reconstruct_interp_matrix(order, spread))
+
+
 def _hat_projection(nx: int, ny: int) -> sparse.csr_matrix:
     """From values of a smooth field to the coefficients of its best hats on equal triangles."""
+
     def along(n: int) -> sparse.csr_matrix:
         second = sparse.diags([1.0, -2.0, 1.0], [-1, 0, 1], shape=(n, n))
         return sparse.csr_matrix(second)

@@ -86,7 +86,7 @@ class Elements:
         on_surface = (self.hull < self.free) | (self.hull >= self.nodes)
         afloat = np.unique(piece[on_surface.any(axis=1)])
         under = np.setdiff1d(np.arange(count), afloat)
-        return (piece == under[:, None]).astype(np.float64)
+        return np.asarray(piece == under[:, None], dtype=np.float64)
 
     def shares(self, corners: Ints, table: Array) -> sparse.csr_matrix:
         """(m, nodes) int over each triangle of each hat: a third of its area at its corners."""

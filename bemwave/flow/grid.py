@@ -164,7 +164,7 @@ def hull_elements(hulls: Sequence[Hull]) -> tuple[Elements, list[Waterline]]:
         hull_triangles=np.arange(len(mesh.triangles)),
     )
     first = 0
-    lines = []
+    lines: list[Waterline] = []
     for hull in hulls:
         panels = first + np.arange(len(hull.mesh.triangles))
         row = len(elements.hull) + sum(len(line.rows) for line in lines)

@@ -172,9 +172,9 @@ def forms(
     _add_images_left_out(energy, e, images, (curl_f, curl_b))
     progress(0.7)
     double = _double_layer(e, hull, images, closed)
-    share = e.shares(e.hull, hull).toarray()
-    given = (double - 0.5 * share).T
-    level = sunken @ (double + 0.5 * share)
+    half = 0.5 * e.shares(e.hull, hull).toarray()
+    given = (double - half).T
+    level = sunken @ (double + half)
     if factor is not None and across is not None:
         share = e.shares(e.water, water)
         row = _double_layer(e, water, images, closed) + 0.5 * share

@@ -94,9 +94,7 @@ class Continuation:
             self._from_outside @ field[self.outside] + self._from_flux @ flux[self.rows]
         )
 
-    def _polynomials(
-        self, sheet: Sheet, nodes: Ints, waterline: Waterline
-    ) -> tuple[Array, Array]:
+    def _polynomials(self, sheet: Sheet, nodes: Ints, waterline: Waterline) -> tuple[Array, Array]:
         """Values at nodes of the ring from nodes outside, and from fluxes of the waterline."""
         places, outside = sheet.xy[nodes], sheet.xy[self.outside]
         far, near = KDTree(outside).query(places, k=NEAR)

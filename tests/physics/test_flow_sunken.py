@@ -4,6 +4,7 @@ import math
 
 import numpy as np
 import pytest
+
 from bemwave.flow.grid import hull_elements
 from bemwave.flow.images import make_images
 from bemwave.flow.panels import PanelFlow, forms
