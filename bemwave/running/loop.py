@@ -33,7 +33,7 @@ from bemwave.records import (
     write_manifest,
 )
 from bemwave.records.manifest import Status
-from bemwave.running.forecast import forecasts
+from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.interrupts import heard
 from bemwave.running.outputs import Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
@@ -137,6 +137,8 @@ def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Ma
     route, reason = surveyed.route
     notes = {"case_folder": str(case.folder.resolve()), **forecasts(surveyed)}
     if solution is not None:
+        notes["start_up"] = solution.driving.ramp.length if solution.driving.parts else 0.0
+        notes["trustworthy_from"] = trustworthy_from(surveyed)
         notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)
     manifest = Manifest(
         inputs=hashes_of(_input_files(case), case.folder),

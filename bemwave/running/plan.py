@@ -133,6 +133,12 @@ def _times(s: Survey) -> _Lines:
     yield "trust from", f"t = {first:.3g} s, when solved waves have crossed the useful water"
     if first > duration:
         yield "", f"that is after the run's end, {duration:g} s: a longer duration is needed"
+    for entry in s.case.handoff:
+        if s.hulls and s.scattered.count and entry.start < start_up(s).length:
+            yield "", (
+                f"hand-off {entry.name} starts at {entry.start:g} s, during the start-up: the "
+                "waves that bodies throw back are not all there and its box will not close"
+            )
 
 
 def _places(s: Survey) -> _Lines:

@@ -106,3 +106,13 @@ def test_coarser_is_the_same_case_on_larger_panels_and_nothing_written() -> None
     assert found.surface.absorber == asked.surface.absorber
     assert found.folder == asked.folder
     assert math.isinf(found.water.depth)
+
+
+def test_a_hand_off_during_the_start_up_is_told() -> None:
+    ball = {"name": "ball", "form": "sphere", "radius": 0.6, "centre_depth": 1.4}
+    waves = [{"kind": "regular", "height": 0.1, "period": 2.0}]
+    box = {"box": {"size": [4.0, 3.0], "bottom": -2.0, "top": 0.5}}
+    found = plan(case(hump=[], waves=waves, body=[ball], handoff=[{**box, "start": 2.0}]))
+    assert "hand-off handoff1 starts at 2 s, during the start-up" in found
+    found = plan(case(hump=[], waves=waves, body=[ball], handoff=[{**box, "start": 4.0}]))
+    assert "during the start-up" not in found
