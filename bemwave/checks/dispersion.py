@@ -48,9 +48,10 @@ def _measured(run: Run) -> float | None:
         return None
     k = float(wavenumber_of_frequency(frequency, run.sea.depth, run.sea.gravity))
     places = _clear_places(run, math.pi / k)
-    window = np.flatnonzero(
-        history.times >= history.times[-1] - PERIODS * 2 * math.pi / frequency - 1e-9
-    )
+    begin = history.times[-1] - PERIODS * 2 * math.pi / frequency
+    if begin < run.manifest.notes.get("trustworthy_from", 0.0):
+        return None  # the start-up is still in the record
+    window = np.flatnonzero(history.times >= begin - 1e-9)
     interval = history.times[-1] - history.times[-2] if len(history.times) > 1 else math.inf
     if len(places) < 50 or frequency * interval > 1.5 or len(window) < 12:
         return None

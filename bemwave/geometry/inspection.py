@@ -163,4 +163,6 @@ def _range(low: float, high: float) -> str:
 
 
 def _triple(values: FloatArray) -> str:
-    return ", ".join("none" if math.isnan(value) else f"{value:.4g}" for value in values)
+    # to the micrometre: a hull that is as wide to port as to starboard has y = 0, not 1e-17
+    rounded = (round(float(value), 6) + 0.0 for value in values)
+    return ", ".join("none" if math.isnan(value) else f"{value:.4g}" for value in rounded)

@@ -7,7 +7,7 @@ The flux above still water is of second order and told apart.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -55,6 +55,10 @@ class Closure:
         The water's surface as it is solved.
     waterplanes : sequence of Waterplane
         One for each body that pierces the surface.
+    kept_out : Sea, optional
+        The waves that bodies keep out of their waterplanes; by default the whole sea.
+    share : callable, optional
+        The share of them kept out at a time: less than 1 during a start-up.
     """
 
     def __init__(
@@ -65,6 +69,8 @@ class Closure:
         flow: Flow | None,
         water: SurfaceMesh,
         waterplanes: Sequence[Waterplane] = (),
+        kept_out: Sea | None = None,
+        share: Callable[[float], float] = lambda time: 1.0,
     ) -> None:
         self._area = box.area
         self._faces = np.flatnonzero(points.face < len(BOX_FACES))
@@ -75,7 +81,8 @@ class Closure:
         # a box whose top is under water has no surface of its own: all its faces count
         if box.top > 0.0:
             self._surface.append(_IncidentRate(sea, box))
-            self._planes = [_WaterplaneRate(sea, box, plane) for plane in waterplanes]
+            waves = sea if kept_out is None else kept_out
+            self._planes = [_WaterplaneRate(waves, box, plane, share) for plane in waterplanes]
             if flow is not None:
                 self._surface.append(_SolvedRate(flow, box, water))
 
@@ -110,7 +117,8 @@ class Closure:
         return flux
 
     def _volume_rate(self, state: SurfaceState, bodies: Array | None) -> float:
-        moved = np.zeros((len(self._planes), 6)) if bodies is None else bodies
+        # without a surface, or of the incident waves alone, no waterplane counts
+        moved = np.zeros((len(self._planes), 6)) if bodies is None else bodies[: len(self._planes)]
         surface = sum(part.at(state) for part in self._surface)
         planes = sum(p.at(state, v) for p, v in zip(self._planes, moved, strict=True))
         return float(surface + planes)
@@ -154,9 +162,12 @@ class _SolvedRate:
 
 
 class _WaterplaneRate:
-    """A body's own vertical velocity over its waterplane, in place of the sea's."""
+    """A body's own vertical velocity over its waterplane, in place of the sea it keeps out."""
 
-    def __init__(self, sea: Sea, box: Box, plane: Waterplane) -> None:
+    def __init__(
+        self, sea: Sea, box: Box, plane: Waterplane, share: Callable[[float], float]
+    ) -> None:
+        self._share = share
         points, self._weights = waterplane_quadrature(box, plane)
         self._sea = sea.at(on_surface(points))
         arm = (points - plane.reference) @ turn(plane.heading)
@@ -165,7 +176,7 @@ class _WaterplaneRate:
         self._moments = self._weights @ np.column_stack([ones, arm[:, 1], -arm[:, 0]])
 
     def at(self, state: SurfaceState, body: Array) -> float:
-        incident = self._weights @ self._sea.elevation_rate(state.time)
+        incident = self._share(state.time) * (self._weights @ self._sea.elevation_rate(state.time))
         return float(self._moments @ body[2:5] - incident)
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -37,6 +37,8 @@ class Scene:
     Attributes
     ----------
     sea : the incident waves, mirrored ones included.
+    scattered : those of them that hulls scatter; None: all. The others pass through hulls.
+    start_up : the share of these that hulls scatter at a time, 1 once the run has started up.
     flow : samplers of the solved part; None where nothing is solved.
     water : the water's surface as it is solved.
     hulls : the bodies, at rest.
@@ -49,6 +51,8 @@ class Scene:
     hulls: Sequence[Hull] = ()
     shortest_period: float = math.inf
     peak_period: float = math.inf
+    scattered: Sea | None = None
+    start_up: Callable[[float], float] = lambda time: 1.0
 
     def solid(self, points: Array) -> NDArray[np.bool_]:
         """Which points (n, 3) lie inside hulls, or straight over their waterplanes."""
@@ -139,7 +143,16 @@ class Handoff:
         alone = self._entry.field == "incident"
         flow = None if alone else scene.flow
         waterplanes = [] if alone else [Waterplane.of(hull) for hull in scene.hulls]
-        closure = Closure(box, points, scene.sea, flow, scene.water, waterplanes)
+        closure = Closure(
+            box,
+            points,
+            scene.sea,
+            flow,
+            scene.water,
+            waterplanes,
+            scene.scattered,
+            scene.start_up,
+        )
         return closure, CellDivergence(box, scene.sea, flow, scene.solid)
 
     def _open(self, name: str, points: PointSet, keep: int | None, balanced: bool) -> HandoffFile:

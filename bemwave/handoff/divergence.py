@@ -77,6 +77,9 @@ def _cells(box: Box) -> tuple[Array, Array]:
     submerged = int(np.sum(edges[2] < 0.0)) - (0 if edges[2][-1] >= 0.0 else 1)
     z = np.unique([0, submerged // 2, submerged - 1])
     index = np.stack([g.ravel() for g in np.meshgrid(x, y, z, indexing="ij")], axis=1)
+    # in the middle of the box there may be a hull, and the near field is the other solver's
+    at_side = np.isin(index[:, 0], x[[0, -1]]) | np.isin(index[:, 1], y[[0, -1]])
+    index = index[at_side]
     low = np.column_stack([edges[k][index[:, k]] for k in range(3)])
     high = np.column_stack([edges[k][index[:, k] + 1] for k in range(3)])
     return low, high - low

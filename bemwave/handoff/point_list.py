@@ -61,7 +61,8 @@ def load_points(path: Path) -> Array:
 
 
 def _from_csv(path: Path) -> Array:
-    lines = path.read_text(encoding="utf-8-sig").splitlines()
+    # what is not UTF-8 is no number either, and told with its line
+    lines = path.read_text(encoding="utf-8-sig", errors="replace").splitlines()
     header = lines[0].replace(" ", "") if lines else ""
     if header != HEADER:
         raise InputError(

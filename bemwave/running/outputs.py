@@ -19,6 +19,7 @@ from bemwave.geometry.pose import Pose
 from bemwave.handoff import Handoff, Scene
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
 from bemwave.records.energy import EnergyFile
+from bemwave.running.driving import start_up
 from bemwave.running.solution import Solution
 from bemwave.running.survey import Survey
 
@@ -193,7 +194,14 @@ def outputs_of(
     if case.gauge:
         outputs["gauges"] = GaugesOutput(survey, flow, folder, keep("gauges"))
     scene = Scene(
-        survey.sea, flow, survey.water, survey.hulls, survey.periods.kept, survey.periods.peak
+        survey.sea,
+        flow,
+        survey.water,
+        survey.hulls,
+        survey.periods.kept,
+        survey.periods.peak,
+        survey.scattered,
+        start_up(survey).share,
     )
     for entry in case.handoff:
         name = f"handoff/{entry.name}"

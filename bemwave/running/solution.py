@@ -87,7 +87,7 @@ class Solution:
         mesh, hull = self.survey.mesh, self.survey.hulls[number]
         assert mesh is not None
         panels = panels_of(self.flow.elements, mesh.part, mesh.part_names.index(hull.name))
-        return BodyLoads(self.flow.elements, panels, hull, self.survey.sea)
+        return BodyLoads(self.flow.elements, panels, hull, self.survey.scattered)
 
     def samplers(self) -> PanelSamplers:
         """Samplers of the field at places."""

@@ -38,6 +38,10 @@ class Ramp:
         t = np.clip(times / self.length, 0.0, 1.0)
         return np.asarray(0.5 - 0.5 * np.cos(math.pi * t))
 
+    def share(self, time: float) -> float:
+        """`value` at one time."""
+        return float(self.value(np.array([time]))[0])
+
     def rate(self, times: Array) -> Array:
         """(times,) [1/s]."""
         if self.length == 0.0:

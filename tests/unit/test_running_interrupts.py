@@ -23,8 +23,15 @@ def interrupted_twice(number: signal.Signals) -> None:
 
 
 @pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM])
-def test_the_first_is_noted_and_the_second_breaks_off(number: signal.Signals) -> None:
-    before = signal.getsignal(number)
+def test_the_first_is_noted_and_the_second_breaks_off(
+    number: signal.Signals, request: pytest.FixtureRequest
+) -> None:
+    def before(number: int, frame: object) -> None:
+        raise AssertionError("the handler that was there before was called")
+
+    # not whatever there is: a shell's background jobs, a CI's perhaps, ignore Ctrl-C
+    own = signal.signal(number, before)
+    request.addfinalizer(lambda: signal.signal(number, own))
     with pytest.raises(KeyboardInterrupt):
         interrupted_twice(number)
     assert signal.getsignal(number) is before
