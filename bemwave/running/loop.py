@@ -137,7 +137,6 @@ def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Ma
     route, reason = surveyed.route
     notes = {"case_folder": str(case.folder.resolve()), **forecasts(surveyed)}
     if solution is not None:
-        notes["start_up"] = solution.driving.ramp.length if solution.driving.parts else 0.0
         notes["trustworthy_from"] = trustworthy_from(surveyed)
         notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)
     manifest = Manifest(

@@ -137,7 +137,7 @@ def _times(s: Survey) -> _Lines:
         if s.hulls and s.scattered.count and entry.start < start_up(s).length:
             yield "", (
                 f"hand-off {entry.name} starts at {entry.start:g} s, during the start-up: the "
-                "waves that bodies throw back are not all there and its box will not close"
+                "waves that bodies throw back are not all there"
             )
 
 
