@@ -122,7 +122,6 @@ def run(case: Path, out: Path | None, resume: bool, couple: Path | None) -> None
 
     folder = out or default_folder(case)
     again = f"bemwave run {case} --resume" + (f" --out {out}" if out else "")
-    signal.signal(signal.SIGTERM, signal.default_int_handler)  # as Ctrl-C
     _tell_what_goes_on()
     try:
         finished = solve(asked, folder, resume=resume)
@@ -208,4 +207,5 @@ def _fail(message: str, status: int) -> int:
 
 def main() -> None:
     """The `bemwave` command."""
+    signal.signal(signal.SIGTERM, signal.default_int_handler)  # ends things as Ctrl-C does
     sys.exit(status_of())
