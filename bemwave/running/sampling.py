@@ -25,6 +25,9 @@ _INFLUENCE = 1.2e-7  # s, of a triangle on velocity and pressure at a point, eac
 _COMPONENT = 2e-8  # s, of a component of the sea at a point and instant
 _BANDWIDTH = 1e10  # bytes a second
 
+_FIELDS = 3  # of the sea whose factors are kept at a hand-off's points
+_SEA_KEPT = 2.0**30  # bytes, at most, by `waves.SeaAtPoints`
+
 
 @dataclass(frozen=True)
 class Sampled:
@@ -59,8 +62,12 @@ def refuse_unfit(survey: Survey) -> None:
 
 
 def sampling_memory(survey: Survey) -> float:
-    """Memory for the linear maps to all points inside the water [bytes]."""
-    return sum(one.points * _row(survey) for one in sampled(survey) if one.inside)
+    """Memory for the linear maps to all points inside the water, and for the sea there [bytes]."""
+    needed = 0.0
+    for one in sampled(survey):
+        needed += min(_FIELDS * 16.0 * survey.sea.count * one.points, _SEA_KEPT)
+        needed += one.points * _row(survey) * one.inside
+    return needed
 
 
 def sampling_seconds(survey: Survey) -> float:
@@ -76,12 +83,11 @@ def sampling_seconds(survey: Survey) -> float:
 
 
 def _row(survey: Survey) -> float:
-    """Bytes of the maps to velocity and pressure at one point, and of the sea there."""
-    sea = 5 * 16.0 * survey.sea.count
+    """Bytes of the maps to velocity and pressure at one point."""
     if survey.mesh is None:
-        return sea
+        return 0.0
     hull = len(survey.mesh.triangles) - len(survey.water.triangles)
-    return 4 * 8.0 * (len(survey.water.points) + 1.5 * hull) + sea
+    return 4 * 8.0 * (len(survey.water.points) + 1.5 * hull)
 
 
 def sampled(survey: Survey) -> Iterator[Sampled]:
