@@ -150,8 +150,8 @@ BAD: dict[str, tuple[str, Files, str]] = {
         "are the most that are meshed: give a larger one",
     ),
     "a body over the edge": (
-        swap('"barge.stl"\n', '"barge.stl"\nposition = [13.0, 0.0]\npanel_size = 8.0\n'),
-        barge(BOX), "barge reaches (17, -2), outside the water surface",
+        swap('mesh = "barge.stl"', BLOCK + "panel_size = 1.0\nposition = [13.0, 0.0]"), {},
+        ", outside the water surface, the rectangle x -15 to 15, y -10 to 10: move it",
     ),
     "bodies that overlap": (
         swap(BODY, "".join(
