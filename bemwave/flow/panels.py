@@ -25,10 +25,9 @@ from collections.abc import Callable
 import numpy as np
 import numpy.typing as npt
 from scipy import linalg, sparse
-from scipy.sparse.linalg import splu
 
 from bemwave.errors import RunError
-from bemwave.flow.elements import Elements, split
+from bemwave.flow.elements import Elements, solver_of, split
 from bemwave.flow.images import Images, Mirror, make_images
 from bemwave.flow.lattice import curl_moments
 from bemwave.geometry.surface_mesh import SurfaceMesh
@@ -73,7 +72,7 @@ class PanelFlow:
         span = float(np.ptp(mesh.points[:, :2], axis=0).max())
         self.images = make_images(depth, not closed, mirrors, span)
         self.mass = self.elements.mass
-        self._solve_mass = splu(self.mass).solve
+        self._solve_mass = solver_of(self.mass)
         energy, given = forms(self.elements, self.images, closed, progress)
         self._eliminate_hull(energy, given)
         progress(1.0)

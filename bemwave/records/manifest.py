@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import math
 import platform
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, dataclass, field, replace
@@ -20,6 +21,7 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.records.folder import write_whole
 
 Status = Literal["running", "finished", "interrupted", "failed"]
+_PERIODS = ("shortest_period", "peak_period")
 _LIBRARIES = ("numpy", "scipy", "numba", "netCDF4", "pydantic")
 
 
@@ -93,7 +95,11 @@ class Manifest:
 
 def write_manifest(manifest: Manifest, path: Path) -> None:
     """Write manifest.json; at every moment the old or the new one is there, whole."""
-    write_whole(path, (json.dumps(asdict(manifest), indent=2) + "\n").encode("utf-8"))
+    content = asdict(manifest)
+    for period in _PERIODS:  # JSON has no infinity; null stands for it
+        content[period] = content[period] if math.isfinite(content[period]) else None
+    text = json.dumps(content, indent=2, allow_nan=False) + "\n"
+    write_whole(path, text.encode("utf-8"))
 
 
 def read_manifest(path: Path) -> Manifest:
@@ -108,6 +114,8 @@ def read_manifest(path: Path) -> Manifest:
         content = json.loads(path.read_text(encoding="utf-8"))
         content["mirrors"] = tuple((axis, float(place)) for axis, place in content["mirrors"])
         content["part_names"] = tuple(content["part_names"])
+        for period in _PERIODS:
+            content[period] = math.inf if content[period] is None else content[period]
         content["bodies"] = {name: Rest(**rest) for name, rest in content["bodies"].items()}
         return Manifest(**content)
     except FileNotFoundError:

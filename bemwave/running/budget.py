@@ -79,7 +79,9 @@ def budget(survey: Survey) -> Budget:
     if survey.mesh is None:
         return Budget(0, 0, memory, 0.0, 0.0)
     product = _seconds_per_flop()
-    assembly = _assembly_seconds(survey) + product * (2 * nodes**3 * 9 + triangles**3 / 3)
+    # five products for the step's map, and where walls close the water a factor of the sheet's V
+    flops = 10 * nodes**3 + (triangles**3 / 3 if survey.closed else 0)
+    assembly = _assembly_seconds(survey) + product * flops
     step = max(survey.periods.shortest / 40, 1e-3)
     steps = survey.case.run.duration / step
     # a step and a state read off are about four products bound by memory, 8 bytes an entry

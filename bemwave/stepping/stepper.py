@@ -24,8 +24,8 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 from scipy import sparse
-from scipy.sparse.linalg import splu
 
+from bemwave.flow.elements import solver_of
 from bemwave.flow.panels import PanelFlow
 from bemwave.flow.state import SurfaceState
 from bemwave.stepping.exact import exact_map
@@ -70,7 +70,7 @@ class Stepper:
         self._given_map = flow.solve_mass(flow.hull_flux_matrix)
         self._solve_damped: Any = None
         if damping is not None:
-            self._solve_damped = splu(sparse.csc_matrix(flow.mass + 0.5 * step * damping)).solve
+            self._solve_damped = solver_of(sparse.csc_matrix(flow.mass + 0.5 * step * damping))
         self.count = 0
         self._potentials = [np.zeros((free, max(1, len(parts))))]
         self._mean = self._first_mean(elevation)
@@ -170,8 +170,9 @@ class Stepper:
     def state(self, time: float) -> SurfaceState:
         """The solved field, its parts added, at any time among the kept steps."""
         potential, rate = (part.sum(axis=1) for part in self.parts_at(time))
-        flux, flux_rate = np.zeros(len(self.flow.elements.hull)), np.zeros(
-            len(self.flow.elements.hull)
+        flux, flux_rate = (
+            np.zeros(len(self.flow.elements.hull)),
+            np.zeros(len(self.flow.elements.hull)),
         )
         for part in self.parts:
             flux = flux + part.flux(np.array([time]))[:, 0]
