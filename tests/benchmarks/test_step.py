@@ -37,10 +37,14 @@ DRIVEN = {
 @pytest.mark.usefixtures("needs_gmsh")
 @pytest.mark.parametrize("driven", DRIVEN)
 def test_step_against_a_product(benchmark, driven):
-    """About 2700 unknowns on the surface, a barge and an absorber."""
+    """About 4700 unknowns on the surface, a barge and an absorber.
+
+    The map, 175 MB, comes from memory as in any larger run. One of 2600 unknowns that stays in the
+    processor's cache costs 1.4 to 1.6 products a step on two cores, 1.3 on one.
+    """
     case = Case(
         water={"depth": "deep"},
-        surface={"size": [26.0, 26.0], "spacing": 0.8, "fine_spacing": 0.5, "absorber": 6.0},
+        surface={"size": [26.0, 26.0], "spacing": 0.6, "fine_spacing": 0.4, "absorber": 6.0},
         run={"duration": 30.0},
         **{"body": [BODY], **DRIVEN[driven]},
     )
@@ -67,5 +71,5 @@ def test_step_against_a_product(benchmark, driven):
     benchmark.pedantic(stepper.advance, rounds=STEPS)
     benchmark.extra_info["unknowns"] = len(dense)
     benchmark.extra_info["over a product"] = round(taken[steps] / taken[products], 2)
-    # measured on one core: 1.3 let go and in a sea, 1.25 with two parts
+    # measured on two cores: 1.2 let go, 1.3 in a sea, 1.25 with two parts
     assert taken[steps] <= 1.5 * taken[products]
