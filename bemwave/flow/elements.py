@@ -33,7 +33,7 @@ class Elements:
     water, hull : (mF, 3), (mB, 3) corners.
     free, below, pinned : numbers of nodes of each kind.
     order : (n,) the mesh's node number of each new one.
-    water_triangles, hull_triangles : the mesh's triangle numbers of each.
+    hull_triangles : the mesh's triangle numbers of the hull's.
     """
 
     points: Array
@@ -43,7 +43,6 @@ class Elements:
     below: int
     pinned: int
     order: Ints
-    water_triangles: Ints
     hull_triangles: Ints
 
     @property
@@ -150,7 +149,6 @@ def split(mesh: SurfaceMesh, closed: bool, mirrors: tuple[Mirror, ...], depth: f
         below=len(below),
         pinned=len(pinned),
         order=order,
-        water_triangles=np.flatnonzero(is_water),
         hull_triangles=np.flatnonzero(~is_water),
     )
 

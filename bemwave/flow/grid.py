@@ -145,7 +145,7 @@ def hull_elements(hulls: Sequence[Hull]) -> tuple[Elements, list[Waterline]]:
     empty = np.zeros((0, 3), dtype=np.int64)
     none = np.zeros(0, dtype=np.int64)
     if not hulls:
-        return Elements(np.zeros((0, 3)), empty, empty, 0, 0, 0, none, none, none), []
+        return Elements(np.zeros((0, 3)), empty, empty, 0, 0, 0, none, none), []
     mesh = joined([hull.mesh for hull in hulls])
     on_line = mesh.points[:, 2] == 0.0
     order = np.concatenate([np.flatnonzero(~on_line), np.flatnonzero(on_line)])
@@ -160,7 +160,6 @@ def hull_elements(hulls: Sequence[Hull]) -> tuple[Elements, list[Waterline]]:
         below=below,
         pinned=len(order) - below,
         order=order,
-        water_triangles=none,
         hull_triangles=np.arange(len(mesh.triangles)),
     )
     first = 0
@@ -174,18 +173,11 @@ def hull_elements(hulls: Sequence[Hull]) -> tuple[Elements, list[Waterline]]:
 
 
 def _waterline(e: Elements, panels: IntArray, row: int) -> Waterline:
-    """Middles of the panel edges on z = 0; normals as at the waterline, not of the facets."""
+    """Middles of the panel edges on z = 0, with the normals of their facets."""
     corners = e.hull[panels]
     on_line = corners >= e.below
     edge = np.flatnonzero(on_line.sum(axis=1) == 2)
     share = on_line[edge][:, :, None] / 2.0
     points = (e.points[corners[edge]] * share).sum(axis=1)[:, :2]
-    return Waterline(points, _normals_at(e, panels, edge), row + np.arange(len(edge)))
-
-
-def _normals_at(e: Elements, panels: IntArray, edge: IntArray) -> Array:
-    """Normals at z = 0 over panels with an edge there: the facet's, turned on by its curvature.
-
-    A facet's normal is the hull's at the facet's middle; the next facet below tells how it turns.
-    """
-    return e.hull_table[panels[edge], 9:12]
+    normals = e.hull_table[panels[edge], 9:12]
+    return Waterline(points, normals, row + np.arange(len(edge)))
