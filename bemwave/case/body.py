@@ -141,6 +141,11 @@ class Body(Table):
         """The word for its shape: `mesh`, or the name of the form."""
         return self.form or "mesh"
 
+    @property
+    def motions_file(self) -> str | None:
+        """The name of the .csv file that moves it, or None."""
+        return self.attitude if self.attitude.lower().endswith(".csv") else None
+
     @model_validator(mode="after")
     def _check(self) -> Self:
         if (self.mesh is None) == (self.form is None):

@@ -68,7 +68,7 @@ def _measured(run: Run) -> float | None:
 def _steady_frequency(run: Run) -> float | None:
     """The one frequency of all that makes waves in the case, or None."""
     case = run.case
-    if case.hump or case.pressure:
+    if case.hump or case.pressure or any(body.motions_file for body in case.body):
         return None
     periods = {m.period for m in case.wavemaker}
     periods |= {body.forced.period for body in case.body if body.forced is not None}

@@ -15,12 +15,14 @@ from bemwave.kernels.panels import SEVEN, THREE
 from bemwave.running.survey import Survey
 from bemwave.stepping.forcing import (
     GivenFlux,
+    Motion,
     MovingParts,
     Oscillation,
     PressurePatch,
     Ramp,
     ScatteredSea,
 )
+from bemwave.stepping.motion_file import FileMotion
 
 Array = npt.NDArray[np.float64]
 
@@ -39,7 +41,7 @@ class Driving:
     """
 
     parts: dict[str, GivenFlux]
-    motions: tuple[tuple[Oscillation | None, ...], ...]
+    motions: tuple[tuple[Motion | None, ...], ...]
     patches: Sequence[PressurePatch]
     ramp: Ramp
 
@@ -74,24 +76,29 @@ def _scattered(survey: Survey, elements: Elements, ramp: Ramp) -> ScatteredSea:
     return ScatteredSea(sea, elements.hull_table[:, 9:12], THREE[:, 3], ramp)
 
 
-def _motions(survey: Survey, ramp: Ramp) -> list[tuple[Oscillation | None, ...]]:
+def _motions(survey: Survey, ramp: Ramp) -> list[tuple[Motion | None, ...]]:
     """Displacements of each body; metres and radians."""
     result = []
-    for body in survey.case.body:
-        row: list[Oscillation | None] = [None] * 6
+    for body, file in zip(survey.case.body, survey.motion_files, strict=True):
+        row: list[Motion | None] = [None] * 6
         if body.forced is not None:
             mode = MODES.index(body.forced.mode)
             amplitude = body.forced.amplitude * (math.pi / 180.0 if mode > 2 else 1.0)
             row[mode] = Oscillation(amplitude, 2.0 * math.pi / body.forced.period, ramp)
+        if file is not None:
+            row = [
+                FileMotion(file, mode, ramp) if mode in file.moved else None for mode in range(6)
+            ]
         result.append(tuple(row))
     return result
 
 
 def _moving(survey: Survey, elements: Elements, ramp: Ramp) -> MovingParts:
-    """Forced bodies and wavemakers."""
+    """Bodies that are moved, and wavemakers."""
     mesh = survey.mesh
     assert mesh is not None
-    shapes, motions = [], []
+    shapes: list[Array] = []
+    motions: list[Motion] = []
     for hull, row in zip(survey.hulls, _motions(survey, ramp), strict=True):
         panels = panels_of(elements, mesh.part, mesh.part_names.index(hull.name))
         body_shapes = mode_shapes(elements, panels, hull)

@@ -161,6 +161,7 @@ def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Ma
 
 def _input_files(case: Case) -> list[str]:
     named = [wave.file for wave in case.waves] + [body.mesh for body in case.body]
+    named += [body.motions_file for body in case.body]
     named += [case.surface.mesh] + [handoff.points for handoff in case.handoff]
     return sorted({str(name) for name in named if name is not None})
 

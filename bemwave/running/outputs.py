@@ -53,7 +53,9 @@ class HistoryOutput:
         e = solution.flow.elements
         below = e.points[e.free : e.nodes]
         panels = e.hull_table[:, 24:27]
-        self._file = HistoryFile(folder.history, e.points[: e.free], below, panels, keep)
+        self._file = HistoryFile(
+            folder.history, self.times, e.points[: e.free], below, panels, keep
+        )
 
     @property
     def count(self) -> int:
@@ -75,9 +77,9 @@ class LedgerOutput:
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         self.times = fine_times(solution.survey)
         self._solution = solution
-        self._energy = EnergyFile(folder.path / "energy.nc", keep)
+        self._energy = EnergyFile(folder.path / "energy.nc", self.times, keep)
         names = [hull.name for hull in solution.survey.hulls]
-        self._bodies = BodiesFile(folder.bodies, names, keep) if names else None
+        self._bodies = BodiesFile(folder.bodies, self.times, names, keep) if names else None
 
     @property
     def count(self) -> int:
@@ -112,7 +114,7 @@ class GaugesOutput:
         self._solved = None if flow is None else flow.surface_sampler(xy)
         decks = [math.nan if gauge.deck is None else gauge.deck for gauge in gauges]
         names = [gauge.name for gauge in gauges]
-        self._file = GaugesFile(folder.gauges, names, xy, decks, keep)
+        self._file = GaugesFile(folder.gauges, self.times, names, xy, decks, keep)
 
     @property
     def count(self) -> int:
@@ -221,7 +223,7 @@ def outputs_of(
 
 
 def _moves(survey: Survey, number: int) -> bool:
-    return survey.case.body[number].forced is not None
+    return survey.case.body[number].attitude != "fixed"
 
 
 def fine_times(survey: Survey) -> Array:

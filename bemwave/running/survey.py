@@ -10,6 +10,7 @@ import numpy as np
 import numpy.typing as npt
 
 from bemwave.case import Case, refuse_not_yet
+from bemwave.case.body import Body
 from bemwave.errors import InputError
 from bemwave.flow.images import Mirror
 from bemwave.geometry.bodies import default_fine_spacing, hull_from
@@ -22,6 +23,7 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.water_surface import fitted_water, water_surface
 from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
 from bemwave.stepping.absorber import Layer, layer_for
+from bemwave.stepping.motion_file import MotionFile
 from bemwave.waves import Sea
 
 Array = npt.NDArray[np.float64]
@@ -52,6 +54,7 @@ class Survey:
     sea, scattered, unscattered_share : the incident sea, its components that hulls scatter, and
         the energy share of the others.
     hulls : the bodies at rest.
+    motion_files : what moves each of them from a file, or None.
     outline : the water with its absorber.
     layer : the absorber, or None where no edge absorbs.
     closed, mirrors : whether meshed walls close the water, and walls that are images.
@@ -65,6 +68,7 @@ class Survey:
     scattered: Sea
     unscattered_share: float
     hulls: tuple[Hull, ...]
+    motion_files: tuple[MotionFile | None, ...]
     outline: Outline
     layer: Layer | None
     closed: bool
@@ -105,7 +109,8 @@ def survey(case: Case) -> Survey:
         hull_from(body, spacing=surface.spacing, depth=water.depth, folder=case.folder)
         for body in case.body
     )
-    periods = _periods(case, sea, scattered)
+    files = tuple(_motion_file(case, body) for body in case.body)
+    periods = _periods(case, sea, scattered, list(_periods_made(case, hulls, files)))
     layer = _layer(case, periods, closed)
     outline = _outline(case, layer)
     check_layout(hulls, useful_water(case))
@@ -114,8 +119,8 @@ def survey(case: Case) -> Survey:
     walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
     mesh = boundary_mesh(sheet, hulls, walls, water.depth) if solved else None
     return Survey(
-        case, sea, scattered, unscattered, hulls, outline, layer, closed, mirrors, sheet, mesh,
-        periods,
+        case, sea, scattered, unscattered, hulls, files, outline, layer, closed, mirrors, sheet,
+        mesh, periods,
     )  # fmt: skip
 
 
@@ -151,8 +156,12 @@ def _edges(case: Case) -> tuple[bool, tuple[Mirror, ...]]:
     return False, tuple(Mirror(side[0], at[side]) for side in walls)
 
 
-def _periods(case: Case, sea: Sea, scattered: Sea) -> Periods:
-    made = list(_periods_made(case))
+def _motion_file(case: Case, body: Body) -> MotionFile | None:
+    name = body.motions_file
+    return None if name is None else MotionFile(case.folder / name, case.run.duration)
+
+
+def _periods(case: Case, sea: Sea, scattered: Sea, made: list[float]) -> Periods:
     longest, shortest = list(made), list(made)
     if case.body and scattered.count:
         order = np.argsort(scattered.frequency)
@@ -172,12 +181,17 @@ def _periods(case: Case, sea: Sea, scattered: Sea) -> Periods:
     )
 
 
-def _periods_made(case: Case) -> Iterator[float]:
+def _periods_made(
+    case: Case, hulls: tuple[Hull, ...], files: tuple[MotionFile | None, ...]
+) -> Iterator[float]:
     """Periods of the waves that bodies, wavemakers, humps and patches make themselves."""
     depth, gravity = case.water.depth, case.water.gravity
     for body in case.body:
         if body.forced is not None:
             yield body.forced.period
+    for hull, file in zip(hulls, files, strict=True):
+        if file is not None:
+            yield from file.periods(hull.hydrostatics.length / 2.0) or ()
     for maker in case.wavemaker:
         yield maker.period
     widths = [hump.width for hump in case.hump] + [patch.width for patch in case.pressure]

@@ -58,6 +58,19 @@ class Ramp:
         return np.where(inside, 0.5 * (math.pi / self.length) ** 2 * np.cos(math.pi * t), 0.0)
 
 
+class Motion(Protocol):
+    """A displacement in time, with two derivatives."""
+
+    def displacement(self, times: Array) -> Array:
+        """(times,) [m or rad]."""
+
+    def velocity(self, times: Array) -> Array:
+        """(times,) [m/s or rad/s]."""
+
+    def acceleration(self, times: Array) -> Array:
+        """(times,) [m/s^2 or rad/s^2]."""
+
+
 @dataclass(frozen=True)
 class Oscillation:
     """A displacement amplitude sin(frequency t) times a ramp, with two derivatives."""
@@ -68,9 +81,7 @@ class Oscillation:
 
     def displacement(self, times: Array) -> Array:
         """(times,) [m or rad]."""
-        return np.asarray(
-            self.amplitude * self.ramp.value(times) * np.sin(self.frequency * times)
-        )
+        return np.asarray(self.amplitude * self.ramp.value(times) * np.sin(self.frequency * times))
 
     def velocity(self, times: Array) -> Array:
         """(times,) [m/s or rad/s]."""
@@ -88,10 +99,10 @@ class Oscillation:
 
 @dataclass(frozen=True)
 class MovingParts:
-    """Hulls and walls that move: shapes (triangles, k) of unit velocity times k oscillations."""
+    """Hulls and walls that move: shapes (triangles, k) of unit velocity times k motions."""
 
     shapes: Array
-    motions: Sequence[Oscillation]
+    motions: Sequence[Motion]
 
     def flux(self, times: Array) -> Array:
         """(triangles, times) [m/s]."""

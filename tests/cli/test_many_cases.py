@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from pathlib import Path
 
 import netCDF4
@@ -42,6 +43,7 @@ CASES = {
     "corner": SURFACE + 'edges = { y_min = "wall", x_max = "wall" }\n' + WAVES + HUMP + BOX,
     "wall": SURFACE + 'edges = { x_max = "wall" }\n' + WAVES + BALL + GAUGE,
     "forced": SURFACE + BALL + SWAYS + BOX + "zone = 1.0\nvolume_at_start = true\n" + FRAMES,
+    "moved by a file": SURFACE + BALL + 'attitude = "sways.csv"\n' + WAVES + FRAMES,
     "stretched": SURFACE + WAVES + BALL + BOX + 'crest = "wheeler"\nfield = "parts"\n',
     "cut": SURFACE + WAVES + BALL + BOX + 'crest = "cut"\n',
     "incident": SURFACE + WAVES + BALL + BOX + 'field = "incident"\n',
@@ -62,6 +64,8 @@ def test_it_runs_and_what_it_writes_is_whole(name: str, tmp_path: Path) -> None:
     case = tmp_path / "case.toml"
     case.write_text(WATER + RUN + CASES[name])
     (tmp_path / "cells.csv").write_text("x,y,z\n0,0,-0.5\n1,1,0.02\n0,0,-1.4\n")
+    rows = [f"{t / 5},0,{math.sin(t / 2) / 10:.6f},0,0,0,0" for t in range(6)]
+    (tmp_path / "sways.csv").write_text("\n".join(["t,surge,sway,heave,roll,pitch,yaw", *rows]))
     assert status_of(["plan", str(case)]) == 0
     assert status_of(["run", str(case)]) == 0
     run = open_run(tmp_path / "case-run")

@@ -18,7 +18,6 @@ LATER: dict[str, dict[str, Any]] = {
     "path": {"body": [SPHERE | {"path": 2.0}]},
     'attitude = "floating"': {"body": [SPHERE | {"attitude": "floating", "free": ["heave"]}]},
     'attitude = "follow"': {"body": [SPHERE | {"attitude": "follow"}]},
-    'attitude = "motions.csv"': {"body": [SPHERE | {"attitude": "motions.csv"}]},
     "history_region": {"run": {"duration": 20.0, "history_region": {"size": [9.0, 9.0]}}},
     'precision = "single"': {"run": {"duration": 20.0, "precision": "single"}},
     'axes = "body:buoy"': {"body": [SPHERE], "handoff": [{"box": BOX, "axes": "body:buoy"}]},
