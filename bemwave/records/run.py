@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
+from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
 
@@ -18,16 +19,26 @@ from bemwave.geometry.files import read_mesh
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff import Flow, HandoffSampler, Scene, free_points
-from bemwave.handoff.fields import on_surface
-from bemwave.handoff.netcdf import open_patiently, read_times
+from bemwave.handoff.fields import SurfaceMaps, on_surface
+from bemwave.handoff.netcdf import read_times, reading
 from bemwave.records.folder import RunFolder
 from bemwave.records.history import History, cubic_in_time
 from bemwave.records.manifest import Manifest, read_manifest
 from bemwave.records.series import in_radians
 from bemwave.waves import Sea
+from bemwave.waves.at_points import SeaAtPoints
 from bemwave.waves.sea_file import read_sea
 
 Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class _Surface:
+    """The surface at fixed places: which lie inside waterlines, and the two parts of the others."""
+
+    dry: NDArray[np.bool_]
+    incident: SeaAtPoints
+    solved: SurfaceMaps | None
 
 
 class Run:
@@ -53,6 +64,7 @@ class Run:
         self.folder = RunFolder(Path(path))
         self.manifest: Manifest = read_manifest(self.folder.manifest)
         self._samplers: dict[bytes, HandoffSampler] = {}
+        self._surfaces: dict[bytes, _Surface] = {}
 
     @cached_property
     def case(self) -> Case:
@@ -140,7 +152,7 @@ class Run:
         """
         if not self.hulls:
             return np.zeros((0, 6))
-        with open_patiently(self.folder.bodies, "r") as file:
+        with reading(self.folder.bodies) as file:
             times = read_times(file)
             first, weights = cubic_in_time(times, time)
             near = np.asarray(file["velocity"][first : first + len(weights)], dtype=np.float64)
@@ -170,10 +182,14 @@ class Run:
             np.asarray(x, dtype=np.float64), np.asarray(y, dtype=np.float64)
         )
         plan = np.column_stack([at_x.ravel(), at_y.ravel()])
-        sampler, column = self._sampler(on_surface(plan))
         times = np.asarray(t, dtype=np.float64)
-        rows = [sampler.elevation(self.state(float(time)))[column] for time in times.ravel()]
-        return np.reshape(rows, (*times.shape, *at_x.shape))
+        surface = self._surface(plan)
+        elevation = surface.incident.elevation(times.ravel())
+        for row, time in zip(elevation, times.ravel(), strict=True):
+            state = self.state(float(time))
+            row += 0.0 if surface.solved is None else surface.solved.elevation(state)
+        elevation[:, surface.dry] = np.nan
+        return np.reshape(elevation, (*times.shape, *at_x.shape))
 
     def velocity(self, points: ArrayLike, t: ArrayLike) -> Array:
         """Velocity of the water on earth, m/s: NaN above the surface and inside hulls.
@@ -202,6 +218,16 @@ class Run:
         times = np.asarray(t, dtype=np.float64)
         rows = [sampler.at(self.state(float(time))).total.velocity for time in times.ravel()]
         return np.reshape(rows, (*times.shape, *places.shape))
+
+    def _surface(self, plan: Array) -> _Surface:
+        """The surface at places (n, 2); the latest is kept for the next call."""
+        self._refuse_outside(on_surface(plan))
+        key = plan.tobytes()
+        if key not in self._surfaces:
+            points = on_surface(plan)
+            solved = None if self.flow is None else self.flow.surface_sampler(plan)
+            self._surfaces = {key: _Surface(self.scene.solid(points), self.sea.at(points), solved)}
+        return self._surfaces[key]
 
     def _sampler(self, points: Array) -> tuple[HandoffSampler, NDArray[np.int64]]:
         """A sampler at points and each point's column; the latest is kept for the next call."""
