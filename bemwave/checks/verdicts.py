@@ -10,7 +10,7 @@ from scipy.integrate import cumulative_simpson
 from bemwave.checks.dispersion import dispersion_verdict
 from bemwave.handoff.closure import closure_figure
 from bemwave.handoff.divergence import divergence_figure
-from bemwave.handoff.netcdf import open_patiently
+from bemwave.handoff.netcdf import read_times, reading
 from bemwave.records import Run, Verdict
 from bemwave.records.energy import read_energy
 
@@ -60,8 +60,9 @@ def _balance(
         path = run.folder.handoff / f"{handoff.name}.nc"
         if handoff.box is None or not path.exists():
             continue
-        with open_patiently(path, "r") as file:
-            figures.append(figure_of(*(np.asarray(file[v][:]) for v in variables)))
+        with reading(path) as file:
+            count = len(read_times(file))
+            figures.append(figure_of(*(np.asarray(file[v][:count]) for v in variables)))
     if figures:
         yield judged(name, max(figures), 0.01, f"conservation of mass; limit {PRACTICE}")
 

@@ -100,7 +100,7 @@ class Handoff:
         points = read_points(entry, case) if self._box is None else box_points(self._box)
         self._sampler = self._sampler_at(points)
         self._balance = None if self._box is None else self._balances(self._box, points)
-        self._file = self._open(entry.name, points, keep, self._balance is not None)
+        self._file = self._open(entry.name, points, self.times, keep)
 
     @property
     def count(self) -> int:
@@ -155,7 +155,7 @@ class Handoff:
         )
         return closure, CellDivergence(box, scene.sea, flow, scene.solid)
 
-    def _open(self, name: str, points: PointSet, keep: int | None, balanced: bool) -> HandoffFile:
+    def _open(self, name: str, points: PointSet, times: Array, keep: int | None) -> HandoffFile:
         every = self.times[1] - self.times[0] if len(self.times) > 1 else 0.0
         terms = Terms(
             self._case.text,
@@ -166,12 +166,13 @@ class Handoff:
         )
         parts = self._entry.field == "parts"
         path = self._folder / f"{name}.nc"
-        return HandoffFile(path, points, axes_of(self._entry), terms, parts, balanced, keep)
+        balanced = self._balance is not None and times is self.times
+        return HandoffFile(path, times, points, axes_of(self._entry), terms, parts, balanced, keep)
 
     def _write_volume(self, box: Box, state: SurfaceState) -> None:
         """Write the whole box once, to start the near-field solver from."""
         points = box_volume(box)
-        file = self._open(f"{self._entry.name}-start", points, None, False)
+        file = self._open(f"{self._entry.name}-start", points, self.times[:1], None)
         file.append(self._sampler_at(points).at(state))
         file.flush()
 

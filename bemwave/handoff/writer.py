@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 
 from bemwave import __version__
-from bemwave.handoff.box import FACES, PointSet
+from bemwave.handoff.box import FACES, Array, PointSet
 from bemwave.handoff.closure import ClosureInstant
 from bemwave.handoff.divergence import DivergenceInstant
 from bemwave.handoff.netcdf import Layout, SeriesFile, Variable
@@ -70,6 +70,7 @@ class HandoffFile:
     Parameters
     ----------
     path : Path
+    times : (n,) s of the run, of all instants that will be.
     points : PointSet
     axes : Axes
         Those the file speaks in.
@@ -85,6 +86,7 @@ class HandoffFile:
     def __init__(
         self,
         path: Path,
+        times: Array,
         points: PointSet,
         axes: Axes,
         terms: Terms,
@@ -103,6 +105,7 @@ class HandoffFile:
                 *(_balance if balanced else []),
             ],
             attributes=_attributes(axes, terms),
+            times=times - axes.time_zero,
         )
         self._file = SeriesFile(path, layout, keep)
 
@@ -193,13 +196,13 @@ def _series(axes: Axes, ending: str = "") -> list[Variable]:
     elevation = f"elevation {part} above still water"
     foot = {"coordinates": "column_x column_y" + ("" if axes.up == "z" else " column_z")}
     place = ("time", "column")
-    made.append(Variable("elevation" + ending, place, "m", elevation, fill=True, attributes=foot))
+    made.append(Variable("elevation" + ending, place, "m", elevation, attributes=foot))
     return made
 
 
 def _field(name: str, units: str, long_name: str, more: Mapping[str, str]) -> Variable:
     places = {"coordinates": "x y z", **more}
-    return Variable(name, ("time", "point"), units, long_name, fill=True, attributes=places)
+    return Variable(name, ("time", "point"), units, long_name, attributes=places)
 
 
 _wet = Variable(
@@ -229,7 +232,6 @@ def _attributes(axes: Axes, terms: Terms) -> dict[str, Any]:
     return {
         "title": "Water velocity, pressure and elevation for a near-field solver",
         "source": f"bemwave {__version__}, linear potential theory",
-        "bemwave_version": __version__,
         "case": terms.case_text,
         "sign_convention": "normals nx ny nz point out of the box; fluxes are positive outward",
         "crest_rule": terms.crest,

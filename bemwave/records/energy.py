@@ -8,7 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from bemwave import __version__
-from bemwave.handoff.netcdf import Layout, SeriesFile, Variable, open_patiently, read_times
+from bemwave.handoff.netcdf import Layout, SeriesFile, Variable, read_times, reading
 
 Array = npt.NDArray[np.float64]
 
@@ -20,9 +20,9 @@ _SERIES = {
 
 
 class EnergyFile:
-    """Writes energy.nc; `keep` records of an interrupted run are kept."""
+    """Writes energy.nc at `times` (n,) s; `keep` records of an interrupted run are kept."""
 
-    def __init__(self, path: Path, keep: int | None = None) -> None:
+    def __init__(self, path: Path, times: npt.ArrayLike, keep: int | None = None) -> None:
         layout = Layout(
             dimensions={},
             fixed=[],
@@ -31,6 +31,7 @@ class EnergyFile:
                 "title": "Energy of the solved part of the water, incident waves left out",
                 "source": f"bemwave {__version__}, linear potential theory",
             },
+            times=np.asarray(times, dtype=np.float64),
         )
         self._file = SeriesFile(path, layout, keep)
 
@@ -51,7 +52,7 @@ class EnergyFile:
 
 def read_energy(path: Path) -> tuple[Array, Array, Array, Array]:
     """Times [s], energy [J], power put in and power absorbed [W], (n,) each."""
-    with open_patiently(path, "r") as file:
+    with reading(path) as file:
         times = read_times(file)
         energy, power_in, absorbed = (
             np.asarray(file[name][: len(times)], dtype=np.float64) for name in _SERIES

@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from bemwave import __version__
 from bemwave.flow.state import ARRAYS, SurfaceState, blend
-from bemwave.handoff.netcdf import Layout, SeriesFile, Variable, open_patiently, read_times
+from bemwave.handoff.netcdf import Layout, SeriesFile, Variable, read_times, reading
 
 Array = NDArray[np.float64]
 
@@ -41,6 +41,7 @@ class HistoryFile:
     Parameters
     ----------
     path : Path
+    times : (n,) s, of all records that will be.
     nodes, hull_nodes, hull_panels : (n, 3) m
         Where the values of a `SurfaceState` belong, in its order; centroids for panels.
     keep : int, optional
@@ -50,6 +51,7 @@ class HistoryFile:
     def __init__(
         self,
         path: Path,
+        times: ArrayLike,
         nodes: ArrayLike,
         hull_nodes: ArrayLike,
         hull_panels: ArrayLike,
@@ -72,6 +74,7 @@ class HistoryFile:
                 "title": "The solved part of the water, incident waves left out",
                 "source": f"bemwave {__version__}, linear potential theory",
             },
+            times=np.asarray(times, dtype=np.float64),
         )
         self._file = SeriesFile(path, layout, keep)
 
@@ -99,13 +102,13 @@ class History:
 
     def __init__(self, path: Path) -> None:
         self._path = path
-        with open_patiently(path, "r") as file:
+        with reading(path) as file:
             self.times: Array = read_times(file)
         self.record = lru_cache(maxsize=8)(self._read)
 
     def _read(self, index: int) -> SurfaceState:
         """State of one record."""
-        with open_patiently(self._path, "r") as file:
+        with reading(self._path) as file:
             fields = {name: np.asarray(file[name][index], dtype=np.float64) for name in ARRAYS}
         return SurfaceState(time=float(self.times[index]), **fields)
 

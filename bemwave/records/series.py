@@ -30,12 +30,15 @@ class BodiesFile:
     Parameters
     ----------
     path : Path
+    times : (n,) s, of all records that will be.
     names : sequence of str
     keep : int, optional
         Records of an interrupted run to keep.
     """
 
-    def __init__(self, path: Path, names: Sequence[str], keep: int | None = None) -> None:
+    def __init__(
+        self, path: Path, times: ArrayLike, names: Sequence[str], keep: int | None = None
+    ) -> None:
         dimensions = ("time", "body", "mode")
         about = "surge, sway, heave along and roll, pitch, yaw about the body's axes"
         series = [
@@ -61,7 +64,6 @@ class BodiesFile:
                 "N",
                 f"pressure load about the centre of mass, body axes, {what}; weight and buoyancy "
                 "at rest left out",
-                fill=True,
                 attributes={"comment": "N; N m for roll, pitch and yaw"},
             )
             for name, what in FORCES.items()
@@ -78,6 +80,7 @@ class BodiesFile:
                 "source": _SOURCE,
                 "caution": CAUTION,
             },
+            times=np.asarray(times, dtype=np.float64),
         )
         self._count = len(names)
         self._file = SeriesFile(path, layout, keep)
@@ -121,6 +124,7 @@ class GaugesFile:
     Parameters
     ----------
     path : Path
+    times : (n,) s, of all records that will be.
     names : sequence of str
     positions : (gauges, 2) m, on earth.
     decks : (gauges,) m, level over still water to which the gap is told; NaN where none is.
@@ -131,6 +135,7 @@ class GaugesFile:
     def __init__(
         self,
         path: Path,
+        times: ArrayLike,
         names: Sequence[str],
         positions: ArrayLike,
         decks: ArrayLike,
@@ -147,7 +152,7 @@ class GaugesFile:
                 (Variable("y", ("gauge",), "m", "y of the gauge"), place[:, 1]),
             ],
             series=[
-                Variable(name, dimensions, "m", text, fill=True)
+                Variable(name, dimensions, "m", text)
                 for name, text in (
                     ("elevation", "elevation above still water"),
                     ("incident_elevation", "elevation of the incident waves alone"),
@@ -155,6 +160,7 @@ class GaugesFile:
                 )
             ],
             attributes={"title": "Wave gauges", "source": _SOURCE, "caution": CAUTION},
+            times=np.asarray(times, dtype=np.float64),
         )
         self._file = SeriesFile(path, layout, keep)
 

@@ -98,13 +98,13 @@ def write_run(path):
         ),
         folder.manifest,
     )
-    bodies = BodiesFile(folder.bodies, ["buoy"])
+    bodies = BodiesFile(folder.bodies, np.arange(9) * 0.25, ["buoy"])
     elements = PanelSamplers(both, math.inf, closed=False).elements
     hull_nodes = elements.points[elements.free : elements.nodes]
     panels = elements.points[elements.hull].mean(axis=1)
     nodes = elements.points[: elements.free]
     shapes = projected(bell, elements), projected(rise, elements)
-    out = HistoryFile(folder.history, nodes, hull_nodes, panels)
+    out = HistoryFile(folder.history, np.arange(9) * 0.25, nodes, hull_nodes, panels)
     for time in np.arange(9) * 0.25:
         out.append(state_at(time, shapes, len(hull_nodes), len(panels)))
         bodies.append(time, np.zeros((1, 6)), velocity_at(time), {})

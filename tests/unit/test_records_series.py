@@ -33,7 +33,7 @@ def state_at(time):
 
 def written(tmp_path, times):
     path = tmp_path / "history.nc"
-    out = HistoryFile(path, np.zeros((5, 3)), np.zeros((2, 3)), np.zeros((3, 3)))
+    out = HistoryFile(path, times, np.zeros((5, 3)), np.zeros((2, 3)), np.zeros((3, 3)))
     for time in times:
         out.append(state_at(time))
     out.flush()
@@ -96,7 +96,7 @@ def test_at_the_ends_and_with_few_records_it_still_interpolates(tmp_path):
 
 def test_bodies_have_names_and_degrees(tmp_path):
     path = tmp_path / "bodies.nc"
-    out = BodiesFile(path, ["tender", "rig"])
+    out = BodiesFile(path, [0.5], ["tender", "rig"])
     motion = np.zeros((2, 6))
     motion[1] = [1, 2, 3, 0.1, 0.2, math.pi]
     out.append(0.5, motion, 2 * motion, {"force": 10 * motion})
@@ -120,7 +120,7 @@ def test_bodies_have_names_and_degrees(tmp_path):
 
 def test_gauges_have_names_and_gaps(tmp_path):
     path = tmp_path / "gauges.nc"
-    out = GaugesFile(path, ["bow", "inside"], [[1, 2], [3, 4]], [4.0, np.nan])
+    out = GaugesFile(path, [0.0], ["bow", "inside"], [[1, 2], [3, 4]], [4.0, np.nan])
     out.append(0.0, [0.25, np.nan], [0.5, 0.125])
     out.flush()
     with netCDF4.Dataset(path) as file:
