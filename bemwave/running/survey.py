@@ -23,6 +23,7 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.water_surface import fitted_water, water_surface
 from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
 from bemwave.stepping.absorber import Layer, layer_for
+from bemwave.stepping.damped_line import Behind
 from bemwave.stepping.motion_file import MotionFile
 from bemwave.waves import Sea
 
@@ -213,7 +214,8 @@ def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
     depth, gravity = case.water.depth, case.water.gravity
     width = None if surface.absorber == "auto" else float(surface.absorber)
     wavelength = length_of_period(periods.longest, depth, gravity)
-    return layer_for(wavelength, depth, gravity, surface.spacing, width=width, closed=closed)
+    behind: Behind = "wall" if closed else "still water"
+    return layer_for(wavelength, depth, gravity, surface.spacing, width=width, behind=behind)
 
 
 def useful_water(case: Case) -> Outline:

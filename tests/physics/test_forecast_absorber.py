@@ -93,7 +93,7 @@ def test_end_before_a_wall_reflects_what_the_plan_says():
     """Closed water over a bed: the flux is an unknown, and a wall stands behind the layer."""
     channel = Channel(nodes=8, cells_across=3, length=6.0, depth=0.25, closed=True)
     for width in WIDTHS:
-        layer = layer_for(1.0, 0.25, G, channel.spacing, width=width, closed=True)
+        layer = layer_for(1.0, 0.25, G, channel.spacing, width=width, behind="wall")
         reflected, _ = channel.measured(layer)
         assert reflected == pytest.approx(layer.reflection, rel=0.3)
         assert reflected <= 0.01 or width < 1.0

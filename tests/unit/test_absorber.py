@@ -7,15 +7,30 @@ import pytest
 from scipy.optimize import newton
 
 from bemwave.errors import InputError
-from bemwave.stepping.absorber import Layer, layer_for, reflection
+from bemwave.stepping.absorber import Layer, forecast, layer_for
+from bemwave.stepping.damped_line import Waves, returned
 from bemwave.waves.dispersion import phase_speed, wavenumber
 
 G = 9.80665
 DEPTHS = [math.inf, 0.2, 0.05, 0.016]  # wavelengths
 
 
+BEHIND = ["still water", "wall", "itself"]
+
+
 def frequency(depth):
     return math.sqrt(G * 2 * math.pi * math.tanh(2 * math.pi * depth))
+
+
+def returns(layer, wavelength, depth, spacing, behind="still water", angle=0.0):
+    """(reflected, passed) of one layer."""
+    waves = Waves(wavelength, depth, G, angle)
+    reflected, passed = returned(layer.width, np.array([layer.strength]), waves, spacing, behind)
+    return float(reflected[0]), float(passed[0])
+
+
+def all_that_returns(*args, **kwargs):
+    return math.hypot(*returns(*args, **kwargs))
 
 
 def test_rate_is_zero_in_useful_water_and_grows_with_the_square_outside():
@@ -25,8 +40,11 @@ def test_rate_is_zero_in_useful_water_and_grows_with_the_square_outside():
 
 @pytest.mark.parametrize("depth", DEPTHS)
 @pytest.mark.parametrize("angle", [0.0, math.radians(30.0)])
-def test_gentle_layer_before_a_wall_reflects_what_slow_damping_leaves(depth, angle):
-    """Source: WKB on the local dispersion k tanh kh = (w^2 + i w nu)/g of damped elevation."""
+def test_gentle_layer_returns_what_slow_damping_leaves(depth, angle):
+    """There and back before a wall, or there and on through the layer of the opposite side.
+
+    Source: WKB on the local dispersion k tanh kh = (w^2 + i w nu)/g of damped elevation.
+    """
     w, width = frequency(depth), 4.0
     layer = Layer(width, 0.15 * w, math.nan)
     across = 2 * math.pi * math.sin(angle)
@@ -36,8 +54,11 @@ def test_gentle_layer_before_a_wall_reflects_what_slow_damping_leaves(depth, ang
     reach = min(depth, 10.0)
     k = newton(lambda q: q * np.tanh(q * reach) - target, k)
     expected = math.exp(-2 * np.sqrt(k**2 - across**2).imag.mean() * width)
-    found = reflection(layer, 1.0, depth, G, 1 / 16, angle=angle, closed=True)
-    assert found == pytest.approx(expected, rel=0.02)
+    reflected, _ = returns(layer, 1.0, depth, 1 / 16, "wall", angle)
+    reflected_at_seam, passed = returns(layer, 1.0, depth, 1 / 16, "itself", angle)
+    assert reflected == pytest.approx(expected, rel=0.02)
+    assert passed == pytest.approx(expected, rel=0.02)
+    assert reflected_at_seam < 0.02 * passed
 
 
 def test_long_waves_lose_half_of_what_damping_both_conditions_would_take():
@@ -49,44 +70,72 @@ def test_long_waves_lose_half_of_what_damping_both_conditions_would_take():
     period = 2 * math.pi / frequency(depth)
     layer = Layer(width, 0.1 * frequency(depth), math.nan)
     expected = math.exp(-layer.strength * width / 3 / float(phase_speed(period, depth)))
-    found = reflection(layer, 1.0, depth, G, 1 / 16, closed=True)
-    assert found == pytest.approx(expected, rel=0.02)
+    assert returns(layer, 1.0, depth, 1 / 16, "wall")[0] == pytest.approx(expected, rel=0.02)
+    assert returns(layer, 1.0, depth, 1 / 16, "itself")[1] == pytest.approx(expected, rel=0.02)
 
 
-@pytest.mark.parametrize("closed", [False, True])
-def test_everything_comes_back_without_damping(closed):
-    assert reflection(Layer(1.0, 0.0, 1.0), 1.0, math.inf, G, 1 / 16, closed=closed) == (
-        pytest.approx(1.0, abs=1e-9)
-    )
+@pytest.mark.parametrize("behind", BEHIND)
+def test_nothing_is_lost_without_damping(behind):
+    expected = (0.0, 1.0) if behind == "itself" else (1.0, 0.0)
+    found = returns(Layer(1.0, 0.0, 1.0), 1.0, math.inf, 1 / 16, behind)
+    assert found == pytest.approx(expected, abs=1e-9)
 
 
 @pytest.mark.parametrize("depth", DEPTHS)
-@pytest.mark.parametrize("closed", [False, True])
-def test_automatic_width_keeps_the_limit(depth, closed):
+@pytest.mark.parametrize("behind", BEHIND)
+def test_automatic_width_keeps_the_limit(depth, behind):
     spacing = 2.5
-    layer = layer_for(40.0, 40.0 * depth, G, spacing, closed=closed)
+    layer = layer_for(40.0, 40.0 * depth, G, spacing, behind=behind)
     assert layer.width / spacing == pytest.approx(round(layer.width / spacing))
     assert 40.0 <= layer.width <= 60.0
     assert layer.reflection <= 0.005
-    again = reflection(layer, 40.0, 40.0 * depth, G, spacing, closed=closed)
-    assert again == pytest.approx(layer.reflection)
+    assert layer.passed <= 0.005
+    assert (layer.passed > 0.0) == (behind == "itself")
+    again = returns(layer, 40.0, 40.0 * depth, spacing, behind)
+    assert again == pytest.approx((layer.reflection, layer.passed))
 
 
-def test_one_wavelength_reflects_a_hundredth_at_most_in_deep_water():
-    assert layer_for(40.0, math.inf, G, 2.5, width=40.0).reflection <= 0.01
+@pytest.mark.parametrize("behind", ["still water", "itself"])
+def test_one_wavelength_returns_a_hundredth_at_most_in_deep_water(behind):
+    layer = layer_for(40.0, math.inf, G, 2.5, width=40.0, behind=behind)
+    assert max(layer.reflection, layer.passed) <= 0.01
 
 
+@pytest.mark.parametrize("behind", ["still water", "itself"])
 @pytest.mark.parametrize("shorter", [0.4, 0.6, 0.8])
-def test_shorter_waves_are_reflected_less_than_the_longest_allowed(shorter):
-    layer = layer_for(40.0, math.inf, G, 2.0, limit=0.01)
-    assert reflection(layer, 40.0 * shorter, math.inf, G, 2.0) <= 0.01
+def test_less_returns_of_shorter_waves_than_of_the_longest_allowed(shorter, behind):
+    layer = layer_for(40.0, math.inf, G, 2.0, limit=0.01, behind=behind)
+    assert max(returns(layer, 40.0 * shorter, math.inf, 2.0, behind)) <= 0.01
 
 
-def test_the_chosen_strength_is_the_best_one():
-    layer = layer_for(40.0, math.inf, G, 2.5, width=30.0)
+@pytest.mark.parametrize("behind", BEHIND)
+def test_the_chosen_strength_is_the_best_one(behind):
+    layer = layer_for(40.0, math.inf, G, 2.5, width=30.0, behind=behind)
     for factor in (0.8, 1.25):
         other = Layer(layer.width, factor * layer.strength, math.nan)
-        assert reflection(other, 40.0, math.inf, G, 2.5) > layer.reflection
+        assert all_that_returns(other, 40.0, math.inf, 2.5, behind) > math.hypot(
+            layer.reflection, layer.passed
+        )
+
+
+def test_forecast_lists_waves_as_long_as_the_layer_is_wide_and_shorter():
+    layer = layer_for(40.0, math.inf, G, 2.0, width=40.0, behind="itself")
+    found = list(forecast(layer, math.inf, G, 2.0, "itself"))
+    lengths = [length for length in (40.0, 22.8, 10.0) for _ in range(2)]
+    assert [f.wavelength for f in found] == pytest.approx(lengths)
+    assert [f.angle for f in found] == [0.0, math.pi / 4] * 3
+    longest, _, shorter, slanting, shortest, _ = found
+    assert (longest.reflected, longest.passed) == pytest.approx((layer.reflection, layer.passed))
+    assert max(shorter.reflected, shorter.passed) <= 0.002
+    assert max(shortest.reflected, shortest.passed) <= 0.0005
+    assert slanting.reflected > 3 * shorter.reflected
+    assert slanting.passed < shorter.passed  # its way through is longer
+
+
+def test_forecast_leaves_out_waves_of_less_than_three_spacings():
+    layer = layer_for(40.0, math.inf, G, 4.0, width=40.0, behind="itself")
+    found = [f.wavelength for f in forecast(layer, math.inf, G, 4.0, "itself")]
+    assert found == pytest.approx([40.0, 40.0, 22.8, 22.8])
 
 
 def test_the_unit_of_length_does_not_matter():
