@@ -148,7 +148,8 @@ class _Line:
 
         Without the share of a half that nodes on an axis of symmetry have.
         """
-        row = np.fft.ifft(symbol(2.0 * math.pi * np.fft.fftfreq(ring))).real
+        turn = np.asarray(2.0 * math.pi * np.fft.fftfreq(ring), dtype=np.float64)
+        row = np.fft.ifft(symbol(turn)).real
         i = np.arange(self.cells + 1)
         result: Array = row[(i[:, None] - i) % ring] + parity * row[(i[:, None] + i) % ring]
         return result
