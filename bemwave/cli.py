@@ -151,6 +151,25 @@ def check(run: Path, convergence: bool) -> int:
     return 1 if any(verdict.verdict == "fail" for verdict in verdicts) else 0
 
 
+def _times(context: click.Context, option: click.Parameter, text: str) -> list[float]:
+    try:
+        return [float(word) for word in text.split(",") if text]
+    except ValueError:
+        raise click.BadParameter(
+            f"got {text}, expected seconds such as 10,20", context, option
+        ) from None
+
+
+@commands.command()
+@click.argument("run", type=_file)
+@click.option("--times", default="", callback=_times, help="Map the surface at these, s: 10,20.")
+def report(run: Path, times: list[float]) -> None:
+    """Write RUN/report.html, one page about RUN; also of a run that still goes on."""
+    from bemwave.report import write_report
+
+    click.echo(f"wrote {write_report(run, times)}")
+
+
 def _verdicts(verdicts: Sequence[Verdict]) -> str:
     """A table of name, figure, limit, verdict and where the limit comes from."""
     rows: list[tuple[str, ...]] = [("check", "figure", "limit", "verdict", "source")]
@@ -177,7 +196,6 @@ def _comes_later(name: str, does: str) -> None:
 _comes_later("sample", "Take a new hand-off from a finished run.")
 _comes_later("response", "Added mass, damping, loads and motions by period.")
 _comes_later("compare", "Compare near-field gauge records with a run.")
-_comes_later("report", "Write the page of a run.")
 _comes_later("sweep", "Many runs of one case.")
 
 

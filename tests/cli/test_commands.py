@@ -49,6 +49,7 @@ def test_without_a_command_the_commands_are_listed(capsys: pytest.CaptureFixture
         (["mesh", "hull.stl", "--panel-size", "0"], "got 0, expected a number above 0"),
         (["mesh", "hull.stl", "--draught", "nan"], "got nan, expected a number above 0"),
         (["mesh", "hull.stl", "--up", "w"], "'w' is not one of 'x', 'y', 'z'"),
+        (["report", "a-run", "--times", "5;9"], "got 5;9, expected seconds such as 10,20"),
     ],
 )
 def test_wrong_use_is_an_error(
@@ -67,7 +68,6 @@ def test_wrong_use_is_an_error(
         ["sample", "RUN", "--points", "cells.csv", "--out", "new.nc"],
         ["response", "case.toml", "--periods", "4:20:0.5", "--headings", "0:180:30"],
         ["compare", "RUN", "--gauges", "gauges.csv"],
-        ["report", "RUN"],
         ["sweep", "case.toml", "--set", "waves.0.height=1,2"],
         ["run", "case.toml", "--couple", "precice.xml"],
     ],
