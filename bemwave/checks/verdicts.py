@@ -37,7 +37,7 @@ def judged(name: str, figure: float, limit: float, source: str) -> Verdict:
 
 def _energy(run: Run) -> Iterator[Verdict]:
     """Energy now against what came in less what the absorber took, over the largest of them."""
-    path = run.folder.path / "energy.nc"
+    path = run.folder.energy
     if not path.exists():
         return
     times, energy, power_in, absorbed = read_energy(path)

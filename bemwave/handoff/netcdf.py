@@ -32,6 +32,7 @@ RECORDS_PER_WRITE = 8
 SECONDS_PER_WRITE = 5.0
 PATIENCE = 20.0  # seconds to wait for another program that holds the file
 WRITTEN = "written"
+_TRIES = 5
 _CHUNK = 16_384  # bytes: smaller records are stored several together, larger ones each alone
 
 
@@ -158,12 +159,14 @@ def open_patiently(path: Path, mode: Literal["r", "a"]) -> Any:
     """
     import netCDF4
 
-    give_up = clock.monotonic() + PATIENCE
+    give_up, free = clock.monotonic() + PATIENCE, 0
     while True:
         try:
             return netCDF4.Dataset(path, mode)
         except OSError as error:
-            if not _locked(path):
+            # the other may have let go just now: only a file found free again and again is bad
+            free += not _locked(path, mode)
+            if free > _TRIES:
                 raise
             if clock.monotonic() > give_up:
                 raise RunError(
@@ -173,15 +176,13 @@ def open_patiently(path: Path, mode: Literal["r", "a"]) -> Any:
             clock.sleep(0.05)
 
 
-def _locked(path: Path) -> bool:
+def _locked(path: Path, mode: str) -> bool:
     """Whether another program holds the lock that HDF5 takes on an open file."""
     try:
         with path.open("rb") as file:
-            fcntl.flock(file, fcntl.LOCK_EX | fcntl.LOCK_NB)
-    except BlockingIOError:
-        return True
-    except OSError:
-        return False
+            fcntl.flock(file, fcntl.LOCK_NB | (fcntl.LOCK_SH if mode == "r" else fcntl.LOCK_EX))
+    except OSError as error:
+        return isinstance(error, BlockingIOError)
     return False
 
 

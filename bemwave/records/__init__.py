@@ -2,9 +2,18 @@
 
 from bemwave.records.checkpoint import Checkpoint, latest_checkpoint, write_checkpoint
 from bemwave.records.checks_file import Verdict, read_checks, write_checks
-from bemwave.records.folder import RunFolder, create_folder, default_folder, refuse_used_folder
+from bemwave.records.folder import (
+    RunFolder,
+    checksums,
+    create_folder,
+    default_folder,
+    refuse_used_folder,
+    sync_files,
+    whole,
+)
 from bemwave.records.history import History, HistoryFile
-from bemwave.records.manifest import Manifest, Rest, hashes_of, read_manifest, write_manifest
+from bemwave.records.in_use import alone_in, refuse_links
+from bemwave.records.manifest import Manifest, Rest, read_manifest, write_manifest
 from bemwave.records.run import Run, open_run
 from bemwave.records.series import BodiesFile, GaugesFile
 
@@ -19,14 +28,18 @@ __all__ = [
     "Run",
     "RunFolder",
     "Verdict",
+    "alone_in",
+    "checksums",
     "create_folder",
     "default_folder",
-    "hashes_of",
     "latest_checkpoint",
     "open_run",
     "read_checks",
     "read_manifest",
+    "refuse_links",
     "refuse_used_folder",
+    "sync_files",
+    "whole",
     "write_checkpoint",
     "write_checks",
     "write_manifest",

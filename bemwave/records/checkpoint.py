@@ -9,7 +9,7 @@ import hashlib
 import io
 import json
 import zipfile
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -31,7 +31,7 @@ class Checkpoint:
     Attributes
     ----------
     arrays : by name; the integrator's state and history.
-    facts : anything JSON can hold: step, time, records and frames written so far, random state.
+    facts : anything JSON can hold: step, time, records and frames written so far.
     """
 
     arrays: Mapping[str, NDArray[Any]]
@@ -56,41 +56,54 @@ def write_checkpoint(checkpoint: Checkpoint, folder: Path, number: int) -> Path:
     folder.mkdir(parents=True, exist_ok=True)
     path = folder / f"{number:012d}.ckpt"
     write_whole(path, _MARK + hashlib.sha256(body).hexdigest().encode("ascii") + b"\n" + body)
-    for old in _newest_first(folder)[KEPT:]:
-        old.unlink()
+    for old in folder.glob("*.ckpt"):  # halves that an interrupted write left, too
+        if old not in _newest_first(folder)[:KEPT]:
+            old.unlink()
     return path
 
 
-def latest_checkpoint(folder: Path) -> tuple[Checkpoint | None, list[Path]]:
-    """Read the newest whole checkpoint.
+def latest_checkpoint(
+    folder: Path, fault: Callable[[Checkpoint], str] = lambda checkpoint: ""
+) -> tuple[Checkpoint | None, list[str]]:
+    """Read the newest checkpoint that is whole and has no fault.
+
+    Parameters
+    ----------
+    folder : Path
+    fault : why a checkpoint cannot be gone on from, or an empty string.
 
     Returns
     -------
     checkpoint : None where there is none to go on from.
-    damaged : the newer ones that had to be passed over.
+    passed_over : what is wrong with the newer ones.
     """
-    damaged: list[Path] = []
+    passed_over: list[str] = []
     for path in _newest_first(folder):
         checkpoint = _read(path)
-        if checkpoint is not None:
-            return checkpoint, damaged
-        damaged.append(path)
-    return None, damaged
+        wrong = f"{path} is damaged" if checkpoint is None else fault(checkpoint)
+        if not wrong:
+            return checkpoint, passed_over
+        passed_over.append(wrong)
+    return None, passed_over
 
 
 def _newest_first(folder: Path) -> list[Path]:
-    return sorted(folder.glob("*.ckpt"), reverse=True)
+    return sorted((p for p in folder.glob("*.ckpt") if p.stem.isdecimal()), reverse=True)
 
 
 def _read(path: Path) -> Checkpoint | None:
     """The checkpoint in a file, or None if the file is not what was written."""
-    head, _, body = path.read_bytes().partition(b"\n")
+    try:
+        head, _, body = path.read_bytes().partition(b"\n")
+    except OSError:
+        return None
     if head != _MARK + hashlib.sha256(body).hexdigest().encode("ascii"):
         return None
     try:
         with np.load(io.BytesIO(body), allow_pickle=False) as archive:
+            if any(entry.compress_type for entry in archive.zip.infolist()):
+                return None  # not how it is written; it might unfold without end
             arrays = {name: archive[name] for name in archive.files}
-    except (ValueError, zipfile.BadZipFile):
+        return Checkpoint(arrays, json.loads(arrays.pop(_FACTS).tobytes()))
+    except (ValueError, KeyError, MemoryError, zipfile.BadZipFile):
         return None
-    facts = json.loads(arrays.pop(_FACTS).tobytes())
-    return Checkpoint(arrays, facts)

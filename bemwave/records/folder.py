@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import hashlib
 import os
+from collections.abc import Iterable, Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -44,6 +47,11 @@ class RunFolder:
     def bodies(self) -> Path:
         """Motions and forces."""
         return self.path / "bodies.nc"
+
+    @property
+    def energy(self) -> Path:
+        """Energy of the solved field."""
+        return self.path / "energy.nc"
 
     @property
     def gauges(self) -> Path:
@@ -121,17 +129,39 @@ def create_folder(path: Path, case_text: str) -> RunFolder:
 
 def write_whole(path: Path, content: bytes) -> None:
     """Write a file beside its name, put it on the disk, rename it: whole or not there."""
-    beside = path.with_name(path.name + ".part")
-    with beside.open("wb") as file:
-        file.write(content)
-        file.flush()
-        os.fsync(file.fileno())
+    with whole(path) as beside:
+        beside.write_bytes(content)
+
+
+@contextmanager
+def whole(path: Path) -> Iterator[Path]:
+    """Yield a path to write a file to, of the same ending; it then gets its name, whole."""
+    beside = path.with_stem(path.stem + ".part")
+    beside.unlink(missing_ok=True)
+    yield beside
+    sync(beside)
     os.replace(beside, path)
-    _sync_folder(path.parent)
+    sync(path.parent)  # the new name itself must survive a loss of power
 
 
-def _sync_folder(path: Path) -> None:
-    # the new name itself must survive a loss of power
+def sync_files(folder: Path, since: float) -> None:
+    """Put on the disk what was written below a folder since a time of day, s."""
+    for path in [folder, *folder.rglob("*")]:
+        if path.stat().st_mtime >= since:
+            sync(path)
+
+
+def checksums(folder: Path, names: Iterable[str]) -> dict[str, str]:
+    """SHA-256 of files, by their names from a folder."""
+    found = {}
+    for name in names:
+        with (folder / name).open("rb") as file:
+            found[name] = hashlib.file_digest(file, "sha256").hexdigest()
+    return found
+
+
+def sync(path: Path) -> None:
+    """Put a file, or the names in a folder, on the disk."""
     handle = os.open(path, os.O_RDONLY)
     try:
         os.fsync(handle)

@@ -6,7 +6,7 @@ import hashlib
 import json
 import math
 import platform
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import asdict, dataclass, field, replace
 from datetime import UTC, datetime
 from importlib.metadata import version
@@ -22,6 +22,7 @@ from bemwave.records.folder import write_whole
 
 Status = Literal["running", "finished", "interrupted", "failed"]
 _PERIODS = ("shortest_period", "peak_period")
+_SUM = "sha256"  # of the rest of the manifest
 _LIBRARIES = ("numpy", "scipy", "numba", "netCDF4", "pydantic")
 
 
@@ -69,6 +70,7 @@ class Manifest:
     shortest_period, peak_period : s, of what the field holds.
     status : how far the run is.
     started, ended : times of day, UTC.
+    files : SHA-256 of each file of a finished run, by its name in the folder.
     notes : anything else worth keeping; values that JSON can hold.
     """
 
@@ -86,6 +88,7 @@ class Manifest:
     versions: Mapping[str, str] = field(default_factory=lambda: versions_now())
     started: str = field(default_factory=lambda: now())
     ended: str | None = None
+    files: Mapping[str, str] = field(default_factory=dict)
     notes: Mapping[str, Any] = field(default_factory=dict)
 
     def with_status(self, status: Status) -> Manifest:
@@ -98,8 +101,16 @@ def write_manifest(manifest: Manifest, path: Path) -> None:
     content = asdict(manifest)
     for period in _PERIODS:  # JSON has no infinity; null stands for it
         content[period] = content[period] if math.isfinite(content[period]) else None
+    content[_SUM] = _sum_of(content)
     text = json.dumps(content, indent=2, allow_nan=False) + "\n"
     write_whole(path, text.encode("utf-8"))
+
+
+def _sum_of(content: Mapping[str, Any]) -> str:
+    """SHA-256 of all else that a manifest says."""
+    told = {key: value for key, value in content.items() if key != _SUM}
+    text = json.dumps(told, sort_keys=True, allow_nan=False)
+    return hashlib.sha256(text.encode("utf-8")).hexdigest()
 
 
 def read_manifest(path: Path) -> Manifest:
@@ -112,6 +123,9 @@ def read_manifest(path: Path) -> Manifest:
     """
     try:
         content = json.loads(path.read_text(encoding="utf-8"))
+        if content[_SUM] != _sum_of(content):
+            raise ValueError("its checksum is another")
+        del content[_SUM]
         content["mirrors"] = tuple((axis, float(place)) for axis, place in content["mirrors"])
         content["part_names"] = tuple(content["part_names"])
         for period in _PERIODS:
@@ -123,15 +137,10 @@ def read_manifest(path: Path) -> Manifest:
             f"{path.parent} holds no run ({path.name} is missing); expected a folder that "
             "`bemwave run` made: check its name"
         ) from None
-    except (ValueError, TypeError, KeyError) as error:
+    except (ValueError, TypeError, KeyError, AttributeError, RecursionError) as error:
         raise InputError(
             f"{path} is damaged ({error}); expected what `bemwave run` wrote: run the case again"
         ) from error
-
-
-def hashes_of(files: Iterable[str], folder: Path) -> dict[str, str]:
-    """SHA-256 of files, named as in the case, relative to its folder."""
-    return {name: hashlib.sha256((folder / name).read_bytes()).hexdigest() for name in files}
 
 
 def versions_now() -> dict[str, str]:

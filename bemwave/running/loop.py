@@ -3,32 +3,34 @@
 from __future__ import annotations
 
 import os
+import platform
 import time as clock
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager, suppress
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
 from numba import get_num_threads
 
+from bemwave import __version__
 from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.errors import InputError, RunError
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.files import write_mesh
 from bemwave.records import (
-    Checkpoint,
     Manifest,
     Rest,
     Run,
     RunFolder,
+    alone_in,
+    checksums,
     create_folder,
-    hashes_of,
-    latest_checkpoint,
     read_manifest,
     refuse_used_folder,
-    write_checkpoint,
+    whole,
     write_checks,
     write_manifest,
 )
@@ -37,6 +39,7 @@ from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.interrupts import heard
 from bemwave.running.outputs import Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
+from bemwave.running.resuming import refuse_changed, restore, save, tell_what_changed
 from bemwave.running.sampling import refuse_unfit
 from bemwave.running.solution import Solution, nothing_solved
 from bemwave.running.survey import Survey, survey
@@ -79,26 +82,35 @@ def run(case: Case, out: str | os.PathLike[str], *, resume: bool = False) -> Run
     1.83
     """
     folder = RunFolder(Path(out))
-    again = resume and folder.holds_run
-    if again and read_manifest(folder.manifest).status == "finished":
+    if not (resume and folder.holds_run):
+        _refuse_folder(folder)
+        return solve(survey(case), folder)
+    before = read_manifest(folder.manifest)
+    if before.status == "finished":
         log.info(f"{folder.path} holds a finished run: nothing is left to do")
         return Run(folder.path)
-    _refuse_folder(folder, case, again)
-    return solve(survey(case), folder, resume)
+    with alone_in(folder):
+        refuse_changed(case, folder, before)
+    return solve(survey(case), folder, before)
 
 
-def solve(surveyed: Survey, folder: RunFolder, resume: bool = False) -> Run:
-    """Solve a surveyed case, as `run` does, in a folder that it can go into."""
+def solve(surveyed: Survey, folder: RunFolder, before: Manifest | None = None) -> Run:
+    """Solve a surveyed case, as `run` does, in a folder that it can go into.
+
+    `before`: of the run to go on with; None starts anew.
+    """
     started = clock.monotonic()
     refuse_unfit(surveyed)
     solution = _assemble(surveyed)
-    if not folder.holds_run:
+    if before is None:
         create_folder(folder.path, surveyed.case.text)
-    with kept_in(folder.log), heard() as interrupted:
-        manifest = _begin(surveyed, solution, folder)
-        log.info(f"set up in {clock.monotonic() - started:.1f} s")
-        with _ending(manifest, folder.manifest):
-            kept = _restore(solution, folder) if resume else None
+    with alone_in(folder), kept_in(folder.log), heard() as interrupted:
+        if before is None:
+            refuse_used_folder(folder.path)  # another may have begun there meanwhile
+        with _ending(solution, folder) as told:
+            told.manifest = _begin(surveyed, solution, folder, before)
+            log.info(f"set up in {clock.monotonic() - started:.1f} s")
+            kept = None if before is None else restore(solution, folder)
             outputs = outputs_of(surveyed, solution, folder, kept)
             _loop(surveyed, solution, outputs, folder, interrupted)
             log.info(f"solved after {clock.monotonic() - started:.1f} s")
@@ -106,15 +118,9 @@ def solve(surveyed: Survey, folder: RunFolder, resume: bool = False) -> Run:
     return Run(folder.path)
 
 
-def _refuse_folder(folder: RunFolder, case: Case, again: bool) -> None:
-    """Raise InputError where this run cannot go: told before the work, not after it."""
-    if not again:
-        refuse_used_folder(folder.path)
-    elif folder.case.read_text(encoding="utf-8") != case.text:
-        raise InputError(
-            f"{folder.path} holds a run of another case; expected the case it was started with: "
-            "give that case, or another --out"
-        )
+def _refuse_folder(folder: RunFolder) -> None:
+    """Raise InputError where a new run cannot go: told before the work, not after it."""
+    refuse_used_folder(folder.path)
     there = next(path for path in (folder.path, *folder.path.absolute().parents) if path.exists())
     if not (there.is_dir() and os.access(there, os.W_OK)):
         raise InputError(
@@ -130,7 +136,9 @@ def _assemble(surveyed: Survey) -> Solution | None:
         return Solution(surveyed, report)
 
 
-def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Manifest:
+def _begin(
+    surveyed: Survey, solution: Solution | None, folder: RunFolder, before: Manifest | None
+) -> Manifest:
     """Write what is known before the first step."""
     case = surveyed.case
     mesh = surveyed.water if surveyed.mesh is None else surveyed.mesh
@@ -140,7 +148,7 @@ def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Ma
         notes["trustworthy_from"] = trustworthy_from(surveyed)
         notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)
     manifest = Manifest(
-        inputs=hashes_of(_input_files(case), case.folder),
+        inputs=checksums(case.folder, _input_files(case)),
         threads=get_num_threads(),
         route=route,
         reason=reason,
@@ -152,9 +160,16 @@ def _begin(surveyed: Survey, solution: Solution | None, folder: RunFolder) -> Ma
         bodies={hull.name: Rest.of(hull) for hull in surveyed.hulls},
         notes=notes,
     )
-    write_mesh(mesh, folder.mesh)
-    write_sea(surveyed.sea, folder.sea)
+    with whole(folder.mesh) as beside:
+        write_mesh(mesh, beside)
+    with whole(folder.sea) as beside:
+        write_sea(surveyed.sea, beside)
+    if before is not None:
+        tell_what_changed(before, manifest)
+        gone_on = [*before.notes.get("gone_on", []), manifest.started]
+        manifest = replace(manifest, started=before.started, notes={**notes, "gone_on": gone_on})
     write_manifest(manifest, folder.manifest)
+    log.info(f"bemwave {__version__}, process {os.getpid()} on {platform.node()}")
     log.info(f"route {route}: {reason}")
     return manifest
 
@@ -173,8 +188,15 @@ def _asymmetry(matrix: Array) -> float:
     return float(max(np.abs(matrix[row] - matrix[:, row].T).max() for row in rows) / largest)
 
 
+@dataclass
+class _Told:
+    """The manifest of a run, once there is one."""
+
+    manifest: Manifest | None = None
+
+
 @contextmanager
-def _ending(manifest: Manifest, path: Path) -> Iterator[None]:
+def _ending(solution: Solution | None, folder: RunFolder) -> Iterator[_Told]:
     """Write how the run ended into its manifest, whatever happens inside.
 
     Raises
@@ -182,36 +204,44 @@ def _ending(manifest: Manifest, path: Path) -> Iterator[None]:
     RunError
         In place of a disk's or a file library's own errors.
     """
+    told, files = _Told(), dict[str, str]()
     status: Status = "failed"
     try:
-        yield
-        status = "finished"
+        yield told
+        files, status = _checksums(folder), "finished"
     except KeyboardInterrupt:
         status = "interrupted"
         raise
+    except MemoryError as error:
+        raise RunError(
+            f"the machine has no memory left {_where(solution)}; expected what bemwave plan "
+            "forecasts: close other programs, then go on with --resume"
+        ) from error
     except (OSError, RuntimeError) as error:  # netCDF's own errors are RuntimeErrors
         raise RunError(
-            f"{path.parent} could not be written any further ({error}); expected room and a disk "
-            "that answers: see to that, then go on with --resume"
+            f"{folder.path} could not be written any further {_where(solution)} ({error}); "
+            "expected room and a disk that answers and may be written to: see to that, then go on "
+            "with --resume; what was written is whole"
         ) from error
     finally:
-        with suppress(OSError):  # on a full disk the first error is the one to tell
-            write_manifest(manifest.with_status(status), path)
+        if told.manifest is not None:
+            ended = replace(told.manifest.with_status(status), files=files)
+            with suppress(OSError):  # on a full disk the first error is the one to tell
+                write_manifest(ended, folder.manifest)
 
 
-def _restore(solution: Solution | None, folder: RunFolder) -> Mapping[str, int] | None:
-    """Put the latest checkpoint back; returns how many instants each output had by then."""
-    checkpoint, damaged = latest_checkpoint(folder.checkpoint)
-    for path in damaged:
-        log.info(f"{path} is damaged and passed over")
-    if checkpoint is None:
-        log.info("there is no checkpoint to go on from: starting again")
-        return None
-    if solution is not None:
-        solution.stepper.restore(dict(checkpoint.arrays), int(checkpoint.facts["step"]))
-    log.info(f"going on from the checkpoint at t = {checkpoint.facts['time']:.6g} s")
-    kept: Mapping[str, int] = checkpoint.facts["kept"]
-    return kept
+def _where(solution: Solution | None) -> str:
+    """How far a run was, for messages."""
+    if solution is None:
+        return "(nothing solved, the sea alone)"
+    return f"at step {solution.stepper.count}, t = {solution.stepper.time:.6g} s"
+
+
+def _checksums(folder: RunFolder) -> dict[str, str]:
+    """SHA-256 of all that a run wrote, but for what changes after it."""
+    left_out = {folder.manifest, folder.log, folder.checks}
+    files = (path for path in folder.path.rglob("*") if path.is_file() and path not in left_out)
+    return checksums(folder.path, sorted(str(path.relative_to(folder.path)) for path in files))
 
 
 def _loop(
@@ -222,16 +252,17 @@ def _loop(
     interrupted: Callable[[], bool],
 ) -> None:
     """Visit every instant that an output wants, in order."""
-    settings, saved = surveyed.case.run, clock.monotonic()
+    settings, saved, since = surveyed.case.run, clock.monotonic(), clock.time()
     with progress("solving") as report:
         for state, wanting in _visits(solution, outputs):
+            _check_finite(state, solution)
             for output in wanting:
                 output.write(state)
-            _check_finite(state)
             report(state.time / settings.duration, _figure(state))
             if interrupted() or clock.monotonic() - saved > settings.checkpoint_every:
-                _save(solution, outputs, folder, state.time)
-                saved = clock.monotonic()
+                begun = clock.time()
+                save(solution, outputs, folder, state.time, since)
+                saved, since = clock.monotonic(), begun
             if interrupted():
                 log.info(f"interrupted at t = {state.time:.6g} s, with a checkpoint")
                 raise KeyboardInterrupt
@@ -261,12 +292,11 @@ def _visits(
             yield solution.state(time), wanting
 
 
-def _check_finite(state: SurfaceState) -> None:
+def _check_finite(state: SurfaceState, solution: Solution | None) -> None:
     if not np.isfinite(state.elevation).all():
         raise RunError(
-            f"the elevation is no longer a number at t = {state.time:.6g} s; expected it finite: "
-            "what was written before is whole; check the mesh with bemwave plan, or take a "
-            "smaller step"
+            f"the elevation is no longer a number {_where(solution)}; expected it finite: what was "
+            "written before is whole; check the mesh with bemwave plan, or take a smaller step"
         )
 
 
@@ -276,16 +306,3 @@ def _figure(state: SurfaceState) -> str:
     if len(state.elevation):
         figure += f", highest solved wave {np.abs(state.elevation).max():.3g} m"
     return figure
-
-
-def _save(
-    solution: Solution | None, outputs: dict[str, Output], folder: RunFolder, time: float
-) -> None:
-    for output in outputs.values():
-        output.flush()
-    kept = {name: output.count for name, output in outputs.items()}
-    arrays: dict[str, Array] = {} if solution is None else solution.stepper.history()
-    step = 0 if solution is None else solution.stepper.count
-    facts = {"time": time, "step": step, "kept": kept}
-    # numbered by instants, which grow also where nothing is solved
-    write_checkpoint(Checkpoint(arrays, facts), folder.checkpoint, sum(kept.values()))

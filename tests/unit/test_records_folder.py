@@ -10,9 +10,9 @@ from bemwave.records import (
     Rest,
     RunFolder,
     Verdict,
+    checksums,
     create_folder,
     default_folder,
-    hashes_of,
     latest_checkpoint,
     read_checks,
     read_manifest,
@@ -87,7 +87,7 @@ def test_no_manifest_and_a_damaged_one_are_told_apart(tmp_path):
 def test_hashes_are_those_of_sha256(tmp_path):
     (tmp_path / "abc").write_bytes(b"abc")
     # FIPS 180-2, appendix B.1
-    assert hashes_of(["abc"], tmp_path) == {
+    assert checksums(tmp_path, ["abc"]) == {
         "abc": "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad"
     }
 
@@ -145,15 +145,15 @@ def test_a_damaged_checkpoint_is_noticed_and_the_one_before_used(tmp_path):
         flipped[bit // 8] ^= 1 << (bit % 8)
         newest.write_bytes(bytes(flipped))
         back, damaged = latest_checkpoint(tmp_path)
-        assert damaged == [newest]
+        assert damaged == [f"{newest} is damaged"]
         assert back.facts["step"] == 1
     for length in (0, 10, len(whole) // 2, len(whole) - 1):
         newest.write_bytes(whole[:length])
-        assert latest_checkpoint(tmp_path)[1] == [newest]
+        assert latest_checkpoint(tmp_path)[1] == [f"{newest} is damaged"]
 
 
 def test_what_an_interrupted_write_leaves_is_not_taken_for_a_checkpoint(tmp_path):
     write_checkpoint(checkpoint(1), tmp_path, 1)
-    (tmp_path / "000000000002.ckpt.part").write_bytes(b"half")
+    (tmp_path / "000000000002.part.ckpt").write_bytes(b"half")
     back, damaged = latest_checkpoint(tmp_path)
     assert (back.facts["step"], damaged) == (1, [])
