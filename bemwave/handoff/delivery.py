@@ -79,7 +79,6 @@ class Handoff:
     Attributes
     ----------
     times : (n,) s, the instants to be written.
-    path : of NAME.nc.
 
     Raises
     ------
@@ -97,7 +96,6 @@ class Handoff:
     ) -> None:
         self._entry, self._case, self._scene, self._folder = entry, case, scene, folder
         self.times = instants(entry, scene.shortest_period)
-        self.path = folder / f"{entry.name}.nc"
         self._box = box_of(entry)
         points = read_points(entry, case) if self._box is None else box_points(self._box)
         self._sampler = self._sampler_at(points)

@@ -211,6 +211,12 @@ def complete_records(file: Any) -> int:
     return int(np.argmin(whole)) if not whole.all() else len(whole)
 
 
+def records_in(path: Path) -> int:
+    """How many complete records a file holds; 0 where it is none of records."""
+    with open_patiently(path, "r") as file:
+        return complete_records(file) if WRITTEN in file.variables else 0
+
+
 def read_times(file: Any) -> NDArray[np.float64]:
     """Times of the complete records of an open file, s."""
     return np.asarray(file["time"][: complete_records(file)], dtype=np.float64)
@@ -220,13 +226,15 @@ def why_not_whole(path: Path, count: int) -> str:
     """Read the first `count` records of a file, trying their checksums; what is wrong, or ""."""
     try:
         with open_patiently(path, "r") as file:
-            found = complete_records(file)
+            found = complete_records(file) if WRITTEN in file.variables else 0
             if found < count:
                 return f"{path} holds {found} whole records of {count}"
             for variable in file.variables.values():
-                rows = count if variable.dimensions[:1] == ("time",) else None
-                for start in range(0, rows or 1, RECORDS_PER_WRITE):
-                    variable[slice(start, min(start + RECORDS_PER_WRITE, count)) if rows else ...]
+                if variable.dimensions[:1] != ("time",):
+                    variable[...]
+                    continue
+                for start in range(0, count, RECORDS_PER_WRITE):
+                    variable[start : min(start + RECORDS_PER_WRITE, count)]
     except (OSError, RuntimeError, IndexError, KeyError, ValueError) as error:
         return f"{path} is damaged ({error})"
     return ""

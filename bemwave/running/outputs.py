@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
-from pathlib import Path
+from collections.abc import Mapping
 from typing import Protocol
 
 import numpy as np
@@ -35,10 +34,6 @@ class Output(Protocol):
     times: Array
 
     @property
-    def files(self) -> Sequence[Path]:
-        """Files of records, one an instant."""
-
-    @property
     def count(self) -> int:
         """Number of instants written so far."""
 
@@ -55,7 +50,6 @@ class HistoryOutput:
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         run = solution.survey.case.run
         self.times = np.linspace(0.0, run.duration, round(run.duration / run.record_every) + 1)
-        self.files = [folder.history]
         e = solution.flow.elements
         below = e.points[e.free : e.nodes]
         panels = e.hull_table[:, 24:27]
@@ -83,10 +77,9 @@ class LedgerOutput:
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         self.times = fine_times(solution.survey)
         self._solution = solution
-        self._energy = EnergyFile(folder.energy, self.times, keep)
+        self._energy = EnergyFile(folder.path / "energy.nc", self.times, keep)
         names = [hull.name for hull in solution.survey.hulls]
         self._bodies = BodiesFile(folder.bodies, self.times, names, keep) if names else None
-        self.files = [folder.energy, *([folder.bodies] if names else [])]
 
     @property
     def count(self) -> int:
@@ -115,7 +108,6 @@ class GaugesOutput:
     ) -> None:
         gauges = survey.case.gauge
         self.times = fine_times(survey)
-        self.files = [folder.gauges]
         xy = np.array([gauge.position for gauge in gauges], dtype=np.float64)
         self._dry = dry_places(survey, xy)
         self._incident = survey.sea.at(np.column_stack([xy, np.zeros(len(xy))]))
@@ -145,7 +137,7 @@ class HandoffOutput:
 
     def __init__(self, handoff: Handoff, solution: Solution | None) -> None:
         self._handoff, self._solution = handoff, solution
-        self.times, self.files = handoff.times, [handoff.path]
+        self.times = handoff.times
 
     @property
     def count(self) -> int:
@@ -168,7 +160,6 @@ class FramesOutput:
     def __init__(self, writer: FrameWriter, survey: Survey, solution: Solution | None) -> None:
         self._writer, self._survey, self._solution = writer, survey, solution
         self.times = writer.times
-        self.files: Sequence[Path] = ()
 
     @property
     def count(self) -> int:

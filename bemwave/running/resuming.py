@@ -13,7 +13,7 @@ from typing import Any
 from bemwave.case import Case, read_case
 from bemwave.case.faults import shown, spell
 from bemwave.errors import InputError
-from bemwave.handoff.netcdf import why_not_whole
+from bemwave.handoff.netcdf import records_in, why_not_whole
 from bemwave.records import (
     Checkpoint,
     Manifest,
@@ -141,9 +141,8 @@ def save(
         "step": 0 if solution is None else solution.stepper.count,
         "kept": kept,
         "files": {
-            str(path.relative_to(folder.path)): output.count
-            for output in outputs.values()
-            for path in output.files
+            str(path.relative_to(folder.path)): records_in(path)
+            for path in sorted(folder.path.rglob("*.nc"))
         },
         "ground": _ground(solution),
     }
