@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import numpy as np
@@ -89,6 +90,31 @@ def water_surface(
     made = run_job("water", job, f"meshing the water surface at {spacing:g} m", seconds=600.0)
     mesh = SurfaceMesh.of_one_part(made["points"], made["triangles"], WATER)
     return fitted_water(mesh, waterlines, "the mesher's water surface")
+
+
+def expected_triangles(
+    outline: Outline, spacing: float, hulls: Sequence[Hull], fine_spacing: float
+) -> int:
+    """How many triangles `water_surface` will make, to about an eighth where gmsh makes them.
+
+    Of equilateral triangles, their edges growing from convex waterlines with edges of
+    `fine_spacing`; finer water that several waterlines share is counted with each.
+    """
+    loops = [polygon for hull in hulls for polygon in hull.polygons()]
+    if not loops:
+        if isinstance(outline, Circle):
+            return 6 * outline.rings(spacing) ** 2
+        return 2 * math.prod(outline.counts(spacing))
+    fine, reach = fine_spacing, (spacing - fine_spacing) / GROWTH
+    # integrals over the distance r of 1/size^2 - 1/spacing^2, and of r times that
+    strip = (1.0 / fine - 1.0 / spacing) / GROWTH - reach / spacing**2
+    fan = (math.log(spacing / fine) + fine / spacing - 1.0) / GROWTH**2
+    fan -= 0.5 * (reach / spacing) ** 2
+    sides = np.concatenate([np.roll(loop, -1, axis=0) - loop for loop in loops])
+    around = float(np.hypot(*sides.T).sum())
+    area = outline.area - sum(signed_area(loop) for loop in loops)
+    inverse = area / spacing**2 + around * strip + 2.0 * math.pi * len(loops) * fan
+    return round(4.0 / math.sqrt(3.0) * inverse)
 
 
 def fitted_water(mesh: SurfaceMesh, waterlines: Sequence[FloatArray], source: str) -> SurfaceMesh:

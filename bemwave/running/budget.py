@@ -11,9 +11,9 @@ import numpy as np
 from bemwave.errors import InputError
 from bemwave.flow.elements import split
 from bemwave.flow.images import make_images
+from bemwave.running.route import MOST_TRIANGLES
 from bemwave.running.survey import Survey
 
-MOST_TRIANGLES = 20_000  # dense matrices of more do not fit 24 GB
 GIGABYTE = 1e9
 
 

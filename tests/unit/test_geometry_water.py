@@ -19,7 +19,7 @@ from bemwave.geometry.outline import SIDES, Circle, Rectangle
 from bemwave.geometry.remesh import edge_lengths, quality
 from bemwave.geometry.surface_mesh import SurfaceMesh, joined
 from bemwave.geometry.topology import boundary_edges, boundary_loops
-from bemwave.geometry.water_surface import fitted_water, water_surface
+from bemwave.geometry.water_surface import expected_triangles, fitted_water, water_surface
 
 BASIN = Rectangle(-20.0, 20.0, -12.0, 12.0)
 
@@ -44,6 +44,11 @@ def ring_pontoon():
 
 
 # structured sheets
+
+
+@pytest.mark.parametrize("outline", [BASIN, Circle(3.0, -2.0, 12.0)])
+def test_as_many_triangles_as_expected(outline):
+    assert expected_triangles(outline, 1.3, [], 1.3) == len(water_surface(outline, 1.3).triangles)
 
 
 def test_rectangle_is_translation_invariant():
@@ -134,6 +139,13 @@ def test_edges_grow_from_fine_to_coarse(needs_gmsh):
     assert length[far < 1.6].mean() == pytest.approx(0.45, rel=0.2)
     assert length[far > 18].mean() == pytest.approx(3.0, rel=0.15)
     assert np.all(length < 1.4 * np.minimum(3.0, 0.4 + 0.2 * far))
+
+
+@pytest.mark.parametrize(("spacing", "fine"), [(2.0, 0.4), (1.5, 0.6), (1.0, 0.5)])
+@pytest.mark.parametrize("hulls", [[ship()], [ship(), pile()]])
+def test_about_as_many_triangles_as_expected_round_hulls(needs_gmsh, hulls, spacing, fine):
+    made = len(water_surface(BASIN, spacing, hulls, fine).triangles)
+    assert expected_triangles(BASIN, spacing, hulls, fine) == pytest.approx(made, rel=0.125)
 
 
 def test_the_same_input_gives_the_same_mesh(needs_gmsh):
