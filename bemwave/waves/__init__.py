@@ -1,5 +1,6 @@
 """Incident waves in closed form: dispersion, seas as sums of components, crests. No mesh."""
 
+from bemwave.waves.above_band import sea_above_band
 from bemwave.waves.at_points import SeaAtPoints, depth_factors
 from bemwave.waves.crest import (
     CrestRule,
@@ -48,6 +49,7 @@ __all__ = [
     "pierson_moskowitz",
     "pressure_under_crest",
     "read_sea",
+    "sea_above_band",
     "spectral_moment",
     "spreading_density",
     "spreading_quantile",

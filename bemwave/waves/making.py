@@ -125,7 +125,7 @@ def make_sea(
             f"a wave's `band` was given as {list(band)}; expected [low, high], 0 <= low < high"
         )
     water = (depth, density, gravity)
-    headings = _headings_about(math.radians(heading), spreading)
+    headings = headings_about(math.radians(heading), spreading)
     draw = partial(
         draw_components,
         components=components,
@@ -141,7 +141,7 @@ def make_sea(
         turn = math.radians(phase)
         return Sea.of([2 * math.pi / period], math.radians(heading), height / 2, turn, *water)
     shape = spectrum if kind == "group" else kind
-    source = _spectrum(shape, height, period, peakedness, depth, gravity)
+    source = spectrum_of(shape, height, period, peakedness, depth, gravity)
     sea = _sea_of_draw(draw(source, headings, band=band or DEFAULT_BAND), water)
     return _focused(sea, height, focus) if kind == "group" else _rescaled(sea, height)
 
@@ -153,7 +153,7 @@ def _positive(name: str, value: float | None) -> float:
     return value
 
 
-def _headings_about(mean: float, spreading: float | None) -> Headings:
+def headings_about(mean: float, spreading: float | None) -> Headings:
     """Inverse distribution of the headings (rad), the same at every frequency."""
 
     def headings(frequency: Array, fraction: Array) -> Array:
@@ -164,9 +164,10 @@ def _headings_about(mean: float, spreading: float | None) -> Headings:
     return headings
 
 
-def _spectrum(
+def spectrum_of(
     shape: str, height: float, period: float, peakedness: float, depth: float, gravity: float
 ) -> Spectrum:
+    """Spectrum of a shape, one of `SPECTRA`: m, s, m, m/s^2."""
     if shape not in SPECTRA:
         raise InputError(
             f"the spectrum of a wave group was given as {shape!r}; expected one of "

@@ -143,6 +143,13 @@ class Sea:
             phase=self.phase + 2 * position * self.wavenumber * along,
         )
 
+    def looped(self, length: float) -> Sea:
+        """Sea whose frequencies are the nearest multiples of 2 pi/length: it repeats after that."""
+        step = 2.0 * math.pi / length
+        frequency = step * np.maximum(np.round(self.frequency / step), 1.0)
+        water = (self.depth, self.density, self.gravity)
+        return Sea.of(frequency, self.heading, self.amplitude, self.phase, *water, self.share)
+
     def keep(self, chosen: NDArray[np.bool_]) -> Sea:
         """Sea of the chosen components alone, amplitudes as they are."""
         return replace(

@@ -35,7 +35,7 @@ Array = NDArray[np.float64]
 Headings = Callable[[Array, Array], Array]  # (frequency, fraction of the energy) -> rad
 
 DEFAULT_BAND = (0.5, 4.0)
-_GOLDEN = (math.sqrt(5) - 1) / 2
+GOLDEN = (math.sqrt(5) - 1) / 2
 _START_INDEX = -(2**62)  # whose first draw is the start of the headings; no stratum comes near
 
 
@@ -112,7 +112,7 @@ def draw_components(
     InputError
         If the band holds no stratum or no energy.
     """
-    first, edges = _strata(spectrum.peak, components, band)
+    first, edges = strata(spectrum.peak, components, band)
     energy = spectrum.energy(edges)
     share = float(energy.sum() / spectrum.total)
     if not share > 0:
@@ -123,7 +123,7 @@ def draw_components(
     jitter, turn, rayleigh, _ = fractions_by_index(seed, first, len(energy), stream).T
     start = fractions_by_index(seed, _START_INDEX, 1, stream)[0, 0]
     frequency = edges[:-1] + jitter * np.diff(edges)
-    along = np.mod(start + _GOLDEN * (first + np.arange(len(energy))), 1.0)
+    along = np.mod(start + GOLDEN * (first + np.arange(len(energy))), 1.0)
     if random_amplitudes:
         energy = energy * -np.log1p(-rayleigh)
     some = energy > 0
@@ -132,7 +132,7 @@ def draw_components(
     return Components(frequency, headings(frequency, along[some]), energy, phase, share)
 
 
-def _strata(peak: float, components: int, band: tuple[float, float]) -> tuple[int, Array]:
+def strata(peak: float, components: int, band: tuple[float, float]) -> tuple[int, Array]:
     """Index of the first stratum whose centre lies in the band, and the edges of all of them."""
     low, high = DEFAULT_BAND
     width = (high - low) / components
