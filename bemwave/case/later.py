@@ -62,11 +62,5 @@ def _handoff_not_yet(case: Case) -> Iterator[tuple[str, str]]:
 def _frames_not_yet(case: Case) -> Iterator[tuple[str, str]]:
     if case.frames is None:
         return
-    for name in case.frames.formats:
-        if name not in ("vtk", "ply"):
-            yield f'[frames] format "{name}"', 'write "vtk" or "ply"'
     if case.frames.waterline == "skirt" and case.frames.region is None:
         yield '[frames] waterline = "skirt" without a region', 'give a region, or write "cut"'
-    for switch in ("horizontal_displacement", "shading", "displacement_maps", "loop"):
-        if getattr(case.frames, switch):
-            yield f"[frames] {switch}", "take it out"

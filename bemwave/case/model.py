@@ -229,7 +229,9 @@ class Case(Table):
         run, surface = info.data.get("run"), info.data.get("surface")
         if frames is None or run is None or surface is None:
             return frames
-        return _filled(frames, {"end": run.duration, "spacing": surface.spacing})
+        waterline = "cut" if frames.region is None else "skirt"
+        defaults = {"end": run.duration, "spacing": surface.spacing, "waterline": waterline}
+        return _filled(frames, defaults)
 
     @model_validator(mode="after")
     def _check(self) -> Self:

@@ -124,7 +124,10 @@ class Handoff(Table):
 
 
 class Frames(Table):
-    """The surface as meshes for a renderer; `end` and `spacing` are filled in from the case."""
+    """The surface as meshes for a renderer.
+
+    Filled in from the case: `end`, `spacing`, and `waterline`, "skirt" with a region.
+    """
 
     fps: Positive = 24.0
     start: NotNegative = 0.0
@@ -137,8 +140,18 @@ class Frames(Table):
     ] = ("vtk",)
     region: Region | None = None
     spacing: Positive = 0.0
+    detail: Flag = True
     horizontal_displacement: Flag = False
     shading: Flag = False
     waterline: Literal["skirt", "cut"] = "cut"
     loop: NotNegative = 0.0
     displacement_maps: Flag = False
+
+    @model_validator(mode="after")
+    def _check(self) -> Self:
+        cut = self.waterline == "cut" and "waterline" in self.model_fields_set
+        if self.displacement_maps and (self.region is None or cut):
+            given = "no region" if self.region is None else 'waterline = "cut"'
+            text = f'got true with {given}, expected a region of squares: waterline = "skirt"'
+            refuse([Fault(("displacement_maps",), text)])
+        return self

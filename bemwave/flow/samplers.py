@@ -89,6 +89,10 @@ class SurfaceSampler:
         """(n,) vertical velocity of the surface [m/s]."""
         return np.asarray(self._at.value @ state.surface_flux)
 
+    def elevation_acceleration(self, state: SurfaceState) -> Array:
+        """(n,) vertical acceleration of the surface [m/s^2]."""
+        return np.asarray(self._at.value @ state.surface_flux_rate)
+
     def velocity(self, state: SurfaceState) -> Array:
         """(n, 3) at z = 0 [m/s]."""
         at = self._at

@@ -1,17 +1,26 @@
 """Frames: the water surface and the bodies as meshes for a renderer."""
 
-from bemwave.frames.surface import MovingSurface, Sheet, WaterFrame, grid_sheet, solver_sheet
-from bemwave.frames.writer import DrawnBody, FrameWriter, frame_times, refuse_formats, sheet_of
+from bemwave.frames.bodies import drawn_mesh
+from bemwave.frames.crests import Crests, SolvedShift
+from bemwave.frames.sheet import Sheet, cut_sheet, grid_sheet, solver_sheet
+from bemwave.frames.surface import MovingSurface, WaterFrame
+from bemwave.frames.usd import Guide
+from bemwave.frames.writer import DrawnBody, FrameWriter, frame_times, need_libraries, sheet_of
 
 __all__ = [
+    "Crests",
     "DrawnBody",
     "FrameWriter",
+    "Guide",
     "MovingSurface",
     "Sheet",
+    "SolvedShift",
     "WaterFrame",
+    "cut_sheet",
+    "drawn_mesh",
     "frame_times",
     "grid_sheet",
-    "refuse_formats",
+    "need_libraries",
     "sheet_of",
     "solver_sheet",
 ]

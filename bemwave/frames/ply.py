@@ -7,14 +7,18 @@ from pathlib import Path
 
 import numpy as np
 
-from bemwave.frames.surface import Array, Bools
+from bemwave.frames.sheet import Array, Bools
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 _TYPES = {"f4": "float", "u1": "uchar"}
 
 
 def write_ply(
-    path: Path, mesh: SurfaceMesh, normals: Array, data: Mapping[str, Array | Bools]
+    path: Path,
+    mesh: SurfaceMesh,
+    normals: Array,
+    data: Mapping[str, Array | Bools],
+    note: str = "",
 ) -> None:
     """Write vertices with normals and further values, float32 (masks: uchar), and triangles.
 
@@ -39,6 +43,7 @@ def write_ply(
         "ply",
         "format binary_little_endian 1.0",
         "comment metres, z up, still water at z = 0",
+        *([f"comment {note}"] if note else []),
         f"element vertex {len(vertices)}",
         *(f"property {_TYPES[kind]} {name}" for name, kind in kinds.items()),
         f"element face {len(faces)}",

@@ -7,12 +7,16 @@ from pathlib import Path
 
 import numpy as np
 
-from bemwave.frames.surface import Array, Bools
+from bemwave.frames.sheet import Array, Bools
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 
 def write_vtp(
-    path: Path, mesh: SurfaceMesh, normals: Array, data: Mapping[str, Array | Bools]
+    path: Path,
+    mesh: SurfaceMesh,
+    normals: Array,
+    data: Mapping[str, Array | Bools],
+    note: str = "",
 ) -> None:
     """Write points, triangles, "Normals" and further values at the points, float32."""
     import pyvista
@@ -23,6 +27,8 @@ def write_vtp(
     for name, values in data.items():
         kind = np.uint8 if values.dtype == np.bool_ else np.float32
         drawn.point_data[name] = values.astype(kind)
+    if note:
+        drawn.field_data["note"] = [note]
     with pyvista.vtk_verbosity("off"):
         drawn.save(path)
 

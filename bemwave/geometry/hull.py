@@ -42,6 +42,8 @@ class Hull:
         Body axes to earth axes. Body axes are level, x forward, y to port, z = 0 at still water.
     notes : tuple of str
         What was merged, left out, cut, remeshed.
+    whole : SurfaceMesh, optional
+        The whole body, topsides too, as its file has it: body axes, normals out of the hull.
     """
 
     name: str
@@ -52,6 +54,7 @@ class Hull:
     centre_of_mass: FloatArray
     place: Pose
     notes: tuple[str, ...] = ()
+    whole: SurfaceMesh | None = None
 
     @property
     def heading(self) -> float:
@@ -79,6 +82,7 @@ def place_hull(
     heading: float = 0.0,
     centre_of_mass: Sequence[float] | None = None,
     notes: Sequence[str] = (),
+    whole: SurfaceMesh | None = None,
 ) -> Hull:
     """Put a wetted mesh (body axes, normals out of the water) on earth.
 
@@ -95,6 +99,8 @@ def place_hull(
         Rad from +x.
     centre_of_mass : sequence of 3 floats, optional
         Body axes, m; default above or below the centre of buoyancy on z = 0.
+    whole : SurfaceMesh, optional
+        See `Hull`.
 
     Raises
     ------
@@ -130,6 +136,7 @@ def place_hull(
         centre_of_mass=np.array(centre, dtype=np.float64),
         place=place,
         notes=tuple(notes),
+        whole=whole,
     )
 
 
@@ -214,6 +221,7 @@ def prepare_hull(
         heading=heading,
         centre_of_mass=centre_of_mass,
         notes=[*floating.notes, *notes],
+        whole=floating.mesh,
     )
 
 

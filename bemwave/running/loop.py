@@ -36,6 +36,7 @@ from bemwave.records import (
 )
 from bemwave.records.manifest import Status
 from bemwave.running.forecast import forecasts, trustworthy_from
+from bemwave.running.frames_output import note_on, shares
 from bemwave.running.interrupts import heard
 from bemwave.running.outputs import Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
@@ -144,6 +145,8 @@ def _begin(
     mesh = surveyed.water if surveyed.mesh is None else surveyed.mesh
     route, reason = surveyed.route
     notes = {"case_folder": str(case.folder.resolve()), **forecasts(surveyed)}
+    if case.frames is not None:
+        notes |= {"frames": note_on(surveyed), **shares(surveyed)}
     if solution is not None:
         notes["trustworthy_from"] = trustworthy_from(surveyed)
         notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)

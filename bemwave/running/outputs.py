@@ -9,17 +9,14 @@ from typing import Protocol
 import numpy as np
 import numpy.typing as npt
 
-from bemwave.bodies.modes import displacement
 from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import SurfaceState
-from bemwave.frames import FrameWriter
-from bemwave.frames.writer import DrawnBody, sheet_of
 from bemwave.geometry.inside import inside
-from bemwave.geometry.pose import Pose
 from bemwave.handoff import Handoff, Scene
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
 from bemwave.records.energy import EnergyFile
 from bemwave.running.driving import start_up
+from bemwave.running.frames_output import FramesOutput
 from bemwave.running.solution import Solution
 from bemwave.running.survey import Survey
 
@@ -154,31 +151,6 @@ class HandoffOutput:
         self._handoff.flush()
 
 
-class FramesOutput:
-    """The frames, told where the bodies have gone."""
-
-    def __init__(self, writer: FrameWriter, survey: Survey, solution: Solution | None) -> None:
-        self._writer, self._survey, self._solution = writer, survey, solution
-        self.times = writer.times
-
-    @property
-    def count(self) -> int:
-        """See `Output`."""
-        return self._writer.count
-
-    def write(self, state: SurfaceState) -> None:
-        """See `Output`."""
-        places: dict[str, Pose] = {}
-        if self._solution is not None:
-            motion = self._solution.motions(state.time)[0]
-            hulls = self._survey.hulls
-            places = {h.name: displacement(h, row) for h, row in zip(hulls, motion, strict=True)}
-        self._writer.write(state, places)
-
-    def flush(self) -> None:
-        """Frames are whole files already."""
-
-
 def outputs_of(
     survey: Survey, solution: Solution | None, folder: RunFolder, kept: Mapping[str, int] | None
 ) -> dict[str, Output]:
@@ -210,20 +182,10 @@ def outputs_of(
         handoff = Handoff(entry, case, scene, folder.handoff, keep(name))
         outputs[name] = HandoffOutput(handoff, solution)
     if case.frames is not None:
-        sheet = sheet_of(
-            case.frames, survey.water, survey.hulls, lambda xy: survey.outside(xy) == 0.0
+        outputs["frames"] = FramesOutput(
+            survey, solution, flow, folder.frames, keep("frames") or 0
         )
-        moving = {hull.name: _moves(survey, k) for k, hull in enumerate(survey.hulls)}
-        drawn = [DrawnBody(h.name, h.mesh.flipped(), moving[h.name]) for h in survey.hulls]
-        writer = FrameWriter(
-            case.frames, sheet, survey.sea, flow, drawn, folder.frames, keep("frames") or 0
-        )
-        outputs["frames"] = FramesOutput(writer, survey, solution)
     return outputs
-
-
-def _moves(survey: Survey, number: int) -> bool:
-    return survey.case.body[number].attitude != "fixed"
 
 
 def fine_times(survey: Survey) -> Array:

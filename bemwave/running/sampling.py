@@ -10,7 +10,7 @@ from numba import get_num_threads
 
 from bemwave.errors import InputError
 from bemwave.flow.images import make_images
-from bemwave.frames.writer import frame_times
+from bemwave.frames.writer import frame_times, need_libraries
 from bemwave.handoff import box_of
 from bemwave.handoff.box import Box
 from bemwave.handoff.delivery import instants
@@ -43,6 +43,8 @@ class Sampled:
 def refuse_unfit(survey: Survey) -> None:
     """Raise InputError for what does not fit in memory, and for points that cannot be read."""
     refuse_too_large(survey)
+    if survey.case.frames is not None:
+        need_libraries(survey.case.frames)
     asked = list(sampled(survey))
     for one in asked:
         if one.points > MOST_POINTS:

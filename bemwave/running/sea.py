@@ -5,18 +5,25 @@ from __future__ import annotations
 import math
 
 import numpy as np
+import numpy.typing as npt
 
 from bemwave.case import Case
 from bemwave.errors import InputError
 from bemwave.flow.images import Mirror
-from bemwave.waves import Sea, make_sea, wavenumber_of_frequency
+from bemwave.waves import Sea, make_sea, sea_above_band, wavenumber_of_frequency
 
 # Fewer panels than this in its length, and a wave is not scattered but only incident.
 PANELS_PER_WAVELENGTH = 6.0
 
 
+SHORTEST_DRAWN = 2.5  # squares of the frames in the shortest wave added to them
+SHORTEST_GRAVITY_WAVE = 0.1  # m; below, surface tension matters (common practice, no source)
+
+
 def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
     """The sum of the case's waves and, in front of walls, of their reflections.
+
+    With [frames] loop their frequencies are snapped, so that all of it repeats.
 
     Raises
     ------
@@ -35,6 +42,43 @@ def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
             gravity=water.gravity,
             stream=number,
         )
+    return _reflected(_looped(sea, case), mirrors)
+
+
+def added_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
+    """What frames finer than the panels get besides: more of each spectrum above its band.
+
+    None without [frames] region, with detail = false, or with a spacing no finer than the solver's.
+    """
+    water, frames = case.water, case.frames
+    added = Sea.still(water.depth, water.density, water.gravity)
+    if frames is None or frames.region is None or not frames.detail:
+        return added
+    if frames.spacing >= case.surface.spacing:
+        return added
+    shortest = max(SHORTEST_DRAWN * frames.spacing, SHORTEST_GRAVITY_WAVE)
+    up_to = 2.0 * math.pi / period_of_length(shortest, water.depth, water.gravity)
+    left_out = {"kind", "phase", "random_amplitudes", "spectrum", "focus", "file"}
+    for number, wave in enumerate(case.waves):
+        if wave.kind in ("jonswap", "pierson-moskowitz", "tma"):
+            added = added + sea_above_band(
+                wave.kind,
+                up_to,
+                **wave.model_dump(exclude_unset=True, exclude=left_out),
+                depth=water.depth,
+                density=water.density,
+                gravity=water.gravity,
+                stream=number,
+            )
+    return _reflected(_looped(added, case), mirrors)
+
+
+def _looped(sea: Sea, case: Case) -> Sea:
+    loop = 0.0 if case.frames is None else case.frames.loop
+    return sea.looped(loop) if loop > 0.0 and sea.count else sea
+
+
+def _reflected(sea: Sea, mirrors: tuple[Mirror, ...]) -> Sea:
     for axis in ("x", "y"):
         walls = [m.position for m in mirrors if m.axis == axis]
         if len(walls) == 1:
@@ -58,10 +102,18 @@ def scattered_sea(sea: Sea, spacing: float) -> tuple[Sea, float]:
     """The components long enough for panels of a spacing [m], and the energy share of the rest."""
     if not sea.count:
         return sea, 0.0
-    shortest = PANELS_PER_WAVELENGTH * spacing
-    long_enough = 2.0 * math.pi / sea.wavenumber >= shortest
+    enough = _long_enough(sea, spacing)
     energy = sea.amplitude**2
-    return sea.keep(long_enough), float(energy[~long_enough].sum() / energy.sum())
+    return sea.keep(enough), float(energy[~enough].sum() / energy.sum())
+
+
+def unscattered_sea(sea: Sea, spacing: float) -> Sea:
+    """The other components: too short for panels of a spacing [m]."""
+    return sea.keep(~_long_enough(sea, spacing))
+
+
+def _long_enough(sea: Sea, spacing: float) -> npt.NDArray[np.bool_]:
+    return np.asarray(2.0 * math.pi / sea.wavenumber >= PANELS_PER_WAVELENGTH * spacing)
 
 
 def period_of_length(length: float, depth: float, gravity: float) -> float:

@@ -28,6 +28,9 @@ class SurfaceOfASea:
     def elevation_rate(self, state):
         return self._at.elevation_rate(state.time)
 
+    def elevation_acceleration(self, state):
+        return self._at.acceleration(state.time)[..., 2]
+
     def velocity(self, state):
         return self._at.velocity(state.time)
 

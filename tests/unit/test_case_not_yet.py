@@ -25,11 +25,7 @@ LATER: dict[str, dict[str, Any]] = {
     'layout = "lattice"': {"handoff": [{"box": BOX, "layout": "lattice"}]},
     "average": {"handoff": [{"box": BOX, "average": True}]},
     "balance": {"handoff": [{"box": BOX, "balance": True}]},
-    'format "usd"': {"frames": {"formats": ["ply", "usd"]}},
-    "horizontal_displacement": {"frames": {"horizontal_displacement": True}},
-    "shading": {"frames": {"shading": True}},
-    "displacement_maps": {"frames": {"displacement_maps": True}},
-    "loop": {"frames": {"loop": 10.0}},
+    'waterline = "skirt" without a region': {"frames": {"waterline": "skirt"}},
 }
 
 

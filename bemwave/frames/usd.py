@@ -1,0 +1,307 @@
+"""OpenUSD: one file with a time sample for each frame, written as a stream.
+
+While a run goes on each frame is a small layer of its own in surface.parts/, and surface.usdc is
+a stage that plays those written so far as value clips: it opens whatever happens to the run. With
+the last frame their samples are moved into surface.usdc itself, which then needs nothing beside
+it. What is held in memory is one frame.
+"""
+
+from __future__ import annotations
+
+import os
+import shutil
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from bemwave.errors import MissingLibraryError
+from bemwave.frames.sheet import Array, Bools, Sheet
+from bemwave.geometry.pose import Pose
+from bemwave.geometry.surface_mesh import SurfaceMesh
+
+SAVED_AT_ONCE = 8  # frames moved into the one file between two of its saves
+
+
+@dataclass(frozen=True)
+class Guide:
+    """Lines that show where something is and are not rendered: polylines (k, 3), m."""
+
+    name: str
+    lines: Sequence[Array]
+
+
+def need_usd() -> None:
+    """Raise MissingLibraryError if OpenUSD files cannot be written."""
+    try:
+        import pxr  # noqa: F401
+    except ImportError as error:
+        raise MissingLibraryError(
+            '[frames] format "usd" needs the package usd-core; install it with: '
+            'pip install "bemwave[pictures]"'
+        ) from error
+
+
+class UsdFile:
+    """surface.usdc: /sea/water, /sea/bodies/NAME, /sea/guides/NAME; metres, z up.
+
+    Parameters
+    ----------
+    folder : Path
+    sheet : Sheet
+    bodies : mapping of names to SurfaceMesh in the axes that their poses move.
+    guides : sequence of Guide
+    fps : float
+    numbers : sequence of int
+        Time codes of all the frames, one after the other.
+    note : str
+    keep : int
+        Frames of an interrupted run to keep.
+    """
+
+    def __init__(
+        self,
+        folder: Path,
+        sheet: Sheet,
+        bodies: Mapping[str, SurfaceMesh],
+        guides: Sequence[Guide],
+        fps: float,
+        numbers: Sequence[int],
+        note: str,
+        keep: int,
+    ) -> None:
+        self._path, self._parts = folder / "surface.usdc", folder / "surface.parts"
+        self._numbers = numbers
+        whole = self._path.exists() and not self._parts.exists()
+        self._done = whole and keep > 0
+        self._sheet, self._bodies, self._guides = sheet, bodies, guides
+        self._fps, self._note = fps, note
+        self._names = dict(zip(bodies, _valid(list(bodies)), strict=True))
+        if not self._done:
+            self._parts.mkdir(exist_ok=True)
+
+    def write(
+        self,
+        frame: int,
+        points: Array,
+        normals: Array,
+        velocity: Array,
+        primvars: Mapping[str, Array],
+        places: Mapping[str, Pose],
+    ) -> None:
+        """Write the frame of this number, 0 the first; those before it stand.
+
+        Parameters
+        ----------
+        points, normals, velocity : (n, 3) m, unit, m/s.
+        primvars : (n,) by name.
+        places : of every body.
+        """
+        if self._done:  # all of it stands from before an interruption
+            return
+        from pxr import Gf, Sdf, Usd, UsdGeom
+
+        code = float(self._numbers[frame])
+        beside = self._parts / f"part.{self._numbers[frame]}.usdc"
+        beside.unlink(missing_ok=True)
+        stage = Usd.Stage.CreateNew(str(beside))
+        water = UsdGeom.Mesh(stage.OverridePrim("/sea/water"))
+        water.CreatePointsAttr().Set(_vectors(points), code)
+        water.CreateNormalsAttr().Set(_vectors(normals), code)
+        water.CreateVelocitiesAttr().Set(_vectors(velocity), code)
+        corners = np.array([points.min(axis=0), points.max(axis=0)])
+        water.CreateExtentAttr().Set(_vectors(corners), code)
+        for name, values in primvars.items():
+            attribute = water.GetPrim().CreateAttribute(f"primvars:{name}", _types().FloatArray)
+            attribute.Set(_numbers(values), code)
+        for name, place in places.items():
+            prim = stage.OverridePrim(f"/sea/bodies/{self._names[name]}")
+            matrix = np.eye(4)
+            matrix[:3, :3], matrix[3, :3] = place.rotation.T, place.shift
+            attribute = prim.CreateAttribute("xformOp:transform", Sdf.ValueTypeNames.Matrix4d)
+            attribute.Set(Gf.Matrix4d(matrix.tolist()), code)
+        stage.GetRootLayer().Save()
+        os.replace(beside, self._part(frame))
+        last = frame == len(self._numbers) - 1
+        if last:
+            self._join(list(primvars))
+        else:
+            self._play(frame + 1, list(primvars))
+
+    def _part(self, frame: int) -> Path:
+        return self._parts / f"frame.{self._numbers[frame]}.usdc"
+
+    def _play(self, count: int, primvars: list[str]) -> None:
+        """Make surface.usdc play the first `count` parts."""
+        from pxr import Usd
+
+        beside = self._path.with_stem("surface.part")
+        stage = self._stage(beside, self._numbers[count - 1], primvars)
+        clips = Usd.ClipsAPI(stage.GetPrimAtPath("/sea"))
+        names = [f"./{self._parts.name}/{self._part(k).name}" for k in range(count)]
+        codes = [float(number) for number in self._numbers[:count]]
+        clips.SetClipPrimPath("/sea")
+        clips.SetClipAssetPaths(_assets(names))
+        clips.SetClipActive([(code, k) for k, code in enumerate(codes)])
+        clips.SetClipTimes([(code, code) for code in codes])
+        clips.SetClipManifestAssetPath(_assets(names)[0])
+        stage.GetRootLayer().Save()
+        os.replace(beside, self._path)
+
+    def _join(self, primvars: list[str]) -> None:
+        """Move the samples of all parts into surface.usdc and take the parts away."""
+        from pxr import Sdf
+
+        beside = self._path.with_stem("surface.part")
+        stage = self._stage(beside, self._numbers[-1], primvars)
+        whole = stage.GetRootLayer()
+        whole.Save()
+        for frame in range(len(self._numbers)):
+            part = Sdf.Layer.OpenAsAnonymous(str(self._part(frame)))
+            _copy_samples(part, whole)
+            if frame % SAVED_AT_ONCE == SAVED_AT_ONCE - 1:
+                whole.Save()
+        whole.Save()
+        del whole, stage
+        os.replace(beside, self._path)
+        shutil.rmtree(self._parts)
+        self._done = True
+
+    def _stage(self, path: Path, last: int, primvars: list[str]) -> Any:
+        """A new stage at `path` with all that does not change."""
+        from pxr import Usd, UsdGeom
+
+        path.unlink(missing_ok=True)
+        stage = Usd.Stage.CreateNew(str(path))
+        UsdGeom.SetStageUpAxis(stage, UsdGeom.Tokens.z)
+        UsdGeom.SetStageMetersPerUnit(stage, UsdGeom.LinearUnits.meters)
+        stage.SetTimeCodesPerSecond(self._fps)
+        stage.SetFramesPerSecond(self._fps)
+        stage.SetStartTimeCode(self._numbers[0])
+        stage.SetEndTimeCode(last)
+        stage.GetRootLayer().documentation = self._note
+        sea = UsdGeom.Xform.Define(stage, "/sea")
+        Usd.ModelAPI(sea).SetKind("component")
+        stage.SetDefaultPrim(sea.GetPrim())
+        self._define_water(stage, primvars)
+        UsdGeom.Scope.Define(stage, "/sea/bodies")
+        for name, mesh in self._bodies.items():
+            _define_body(stage, f"/sea/bodies/{self._names[name]}", mesh, name)
+        UsdGeom.Scope.Define(stage, "/sea/guides")
+        words = _valid([guide.name for guide in self._guides])
+        for word, guide in zip(words, self._guides, strict=True):
+            _define_guide(stage, f"/sea/guides/{word}", guide)
+        return stage
+
+    def _define_water(self, stage: Any, primvars: list[str]) -> None:
+        from pxr import UsdGeom
+
+        water = UsdGeom.Mesh.Define(stage, "/sea/water")
+        _set_triangles(water, self._sheet.mesh)
+        water.CreatePointsAttr()
+        water.CreateNormalsAttr()
+        water.SetNormalsInterpolation(UsdGeom.Tokens.vertex)
+        water.CreateVelocitiesAttr()
+        water.CreateExtentAttr()
+        plan = self._sheet.mesh.points[:, :2]
+        low, size = plan.min(axis=0), np.ptp(plan, axis=0)
+        _primvar(water, "st", _types().TexCoord2fArray).Set(_vectors((plan - low) / size))
+        _primvar(water, "inside", _types().FloatArray).Set(_numbers(self._sheet.under_hull))
+        for name in primvars:
+            _primvar(water, name, _types().FloatArray)
+
+
+def _define_body(stage: Any, path: str, mesh: SurfaceMesh, name: str) -> None:
+    from pxr import UsdGeom
+
+    body = UsdGeom.Mesh.Define(stage, path)
+    body.GetPrim().SetDisplayName(name)
+    _set_triangles(body, mesh)
+    body.CreatePointsAttr().Set(_vectors(mesh.points))
+    body.CreateExtentAttr().Set(_vectors(np.array([mesh.points.min(0), mesh.points.max(0)])))
+    body.AddTransformOp()
+
+
+def _define_guide(stage: Any, path: str, guide: Guide) -> None:
+    from pxr import UsdGeom
+
+    lines = UsdGeom.BasisCurves.Define(stage, path)
+    lines.GetPrim().SetDisplayName(guide.name)
+    lines.CreatePurposeAttr(UsdGeom.Tokens.guide)
+    lines.CreateTypeAttr(UsdGeom.Tokens.linear)
+    lines.CreateCurveVertexCountsAttr([len(line) for line in guide.lines])
+    points = np.concatenate(guide.lines)
+    lines.CreatePointsAttr(_vectors(points))
+    lines.CreateWidthsAttr([0.02])
+    lines.SetWidthsInterpolation(UsdGeom.Tokens.constant)
+    lines.CreateExtentAttr(_vectors(np.array([points.min(0) - 0.01, points.max(0) + 0.01])))
+
+
+def _set_triangles(prim: Any, mesh: SurfaceMesh) -> None:
+    from pxr import UsdGeom, Vt
+
+    counts = np.full(len(mesh.triangles), 3, dtype=np.int32)
+    corners = mesh.triangles.ravel().astype(np.int32)
+    prim.CreateFaceVertexCountsAttr(Vt.IntArray.FromNumpy(counts))
+    prim.CreateFaceVertexIndicesAttr(Vt.IntArray.FromNumpy(corners))
+    prim.CreateSubdivisionSchemeAttr(UsdGeom.Tokens.none)
+    prim.CreateOrientationAttr(UsdGeom.Tokens.rightHanded)
+    prim.CreateDoubleSidedAttr(True)
+
+
+def _primvar(prim: Any, name: str, kind: Any) -> Any:
+    from pxr import UsdGeom
+
+    return UsdGeom.PrimvarsAPI(prim).CreatePrimvar(name, kind, UsdGeom.Tokens.vertex)
+
+
+def _copy_samples(part: Any, whole: Any) -> None:
+    """Copy every time sample of a layer into another that has the same attributes."""
+
+    def visit(path: Any) -> None:
+        if path.IsPropertyPath():
+            for code in part.ListTimeSamplesForPath(path):
+                whole.SetTimeSample(path, code, part.QueryTimeSample(path, code))
+
+    part.Traverse(part.pseudoRoot.path, visit)
+
+
+def _valid(names: list[str]) -> list[str]:
+    """Names that prims can have, each once."""
+    from pxr import Tf
+
+    result: list[str] = []
+    for name in names:
+        word = base = Tf.MakeValidIdentifier(name)
+        number = 2
+        while word in result:
+            word, number = f"{base}_{number}", number + 1
+        result.append(word)
+    return result
+
+
+def _types() -> Any:
+    from pxr import Sdf
+
+    return Sdf.ValueTypeNames
+
+
+def _assets(names: Sequence[str]) -> Any:
+    from pxr import Sdf
+
+    return Sdf.AssetPathArray([Sdf.AssetPath(name) for name in names])
+
+
+def _vectors(rows: Array) -> Any:
+    from pxr import Vt
+
+    kind = Vt.Vec3fArray if rows.shape[1] == 3 else Vt.Vec2fArray
+    return kind.FromNumpy(np.ascontiguousarray(rows, dtype=np.float32))
+
+
+def _numbers(values: Array | Bools) -> Any:
+    from pxr import Vt
+
+    return Vt.FloatArray.FromNumpy(np.ascontiguousarray(values, dtype=np.float32))
