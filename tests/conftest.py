@@ -1,6 +1,7 @@
 """What tests of every kind share."""
 
 import os
+import shutil
 
 import pytest
 
@@ -20,3 +21,17 @@ def needs_gmsh(gmsh_missing):
         pytest.fail(gmsh_missing)
     if gmsh_missing:
         pytest.skip(gmsh_missing)
+
+
+@pytest.fixture(scope="session")
+def needs_browser():
+    """For tests of the page in a browser: skipped without Chromium, a failure in CI."""
+    missing = [name for name in ("chromium", "chromedriver") if shutil.which(name) is None]
+    told = (
+        f"{' and '.join(missing)} not found; on Debian and Ubuntu: "
+        "apt-get install -y --no-install-recommends chromium chromium-driver"
+    )
+    if missing and os.environ.get("CI"):
+        pytest.fail(told)
+    if missing:
+        pytest.skip(told)
