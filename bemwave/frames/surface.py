@@ -117,6 +117,7 @@ class MovingSurface:
         rows = np.zeros((5 if self._crests is None else 7, len(self.sheet.mesh.points)))
         for waves, shade in self._seas:
             rows += shade * waves.at(state.time)
+        shift, rate = rows[5:].T, rows[1:3].T.copy()  # the sea's alone
         if self._solved:
             rows[:5, self._solved_rows] += np.concatenate(
                 [_solved_rows(part, state) for part in self._solved], axis=1
@@ -125,7 +126,7 @@ class MovingSurface:
         points, velocity = self.sheet.mesh.points.copy(), water_velocity * [0.0, 0.0, 1.0]
         points[:, 2] = elevation
         if self._crests is not None:
-            shift, rate = self._crests.at(state, rows[5:7].T, rows[1:3].T)
+            shift, rate = self._crests.at(state, shift, rate)
             points[:, :2] += shift
             velocity[:, :2] = rate
         mesh = self.sheet.mesh.with_points(points)

@@ -274,7 +274,7 @@ def _valid(names: list[str]) -> list[str]:
 
     result: list[str] = []
     for name in names:
-        word = base = Tf.MakeValidIdentifier(name)
+        word = base = Tf.MakeValidIdentifier("_" + name if name[0].isdigit() else name)
         number = 2
         while word in result:
             word, number = f"{base}_{number}", number + 1
