@@ -1,4 +1,4 @@
-"""Detail that panels cannot carry: its spectrum, its motion, shelter behind hulls, seas that loop."""
+"""Detail that panels cannot carry: its spectrum and motion, shelter behind hulls, looping seas."""
 
 from pathlib import Path
 
