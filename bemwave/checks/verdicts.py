@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator
 
 import numpy as np
-from scipy.integrate import cumulative_simpson
 
 from bemwave.checks.dispersion import dispersion_verdict
 from bemwave.handoff.closure import closure_figure
@@ -40,14 +39,10 @@ def _energy(run: Run) -> Iterator[Verdict]:
     path = run.folder.energy
     if not path.exists():
         return
-    times, energy, power_in, absorbed = read_energy(path)
-    if len(times) < 3 or not energy.any():
+    ledger = read_energy(path)
+    if len(ledger.times) < 3 or not ledger.energy.any():
         return
-    came_in = cumulative_simpson(power_in, x=times, initial=0.0)
-    taken = cumulative_simpson(absorbed, x=times, initial=0.0)
-    missing = energy - energy[0] - came_in + taken
-    scale = max(np.abs(energy).max(), np.abs(came_in).max())
-    figure = float(np.abs(missing).max() / scale)
+    figure = float(np.abs(ledger.missing).max())
     yield judged("energy", figure, 0.02, f"conservation of energy; limit {PRACTICE}")
 
 

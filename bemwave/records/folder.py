@@ -79,6 +79,16 @@ class RunFolder:
         return self.path / "checks.json"
 
     @property
+    def page(self) -> Path:
+        """The page for people."""
+        return self.path / "report.html"
+
+    @property
+    def figures(self) -> Path:
+        """Folder of the page's figures."""
+        return self.path / "report"
+
+    @property
     def log(self) -> Path:
         """What was said while it ran."""
         return self.path / "log.txt"

@@ -8,8 +8,8 @@ from typing import Any
 
 import numpy as np
 import numpy.typing as npt
-from scipy.integrate import cumulative_simpson
 
+from bemwave.records.energy import Ledger
 from bemwave.records.series import MODES
 from bemwave.report.colours import light
 from bemwave.report.figures import Figure, drawn
@@ -28,23 +28,18 @@ _FORCE_NAMES = {
 }
 
 
-def ledger_figure(
-    times: Array, energy: Array, power_in: Array, absorbed: Array, folder: Path | None
-) -> Figure:
+def ledger_figure(ledger: Ledger, folder: Path | None) -> Figure:
     """Energy of the solved waves: put in, still there, taken by the absorber, missing."""
-    came_in = cumulative_simpson(power_in, x=times, initial=0.0) + energy[0]
-    taken = cumulative_simpson(absorbed, x=times, initial=0.0)
-    missing = came_in - energy - taken
-    largest = max(np.abs(came_in).max(), energy.max()) or 1.0
-    scale, unit = _scale(largest, "J")
+    times, missing = ledger.times, 100.0 * ledger.missing
+    scale, unit = _scale(float(max(ledger.came_in.max(), ledger.energy.max())), "J")
 
     def draw(sheet: Any) -> None:
         upper, lower = sheet.subplots(2, 1, sharex=True, height_ratios=(3, 1))
-        upper.plot(times, came_in / scale, color=light("line2"), label="put in")
-        upper.plot(times, energy / scale, color=light("line1"), label="in the water")
-        upper.plot(times, taken / scale, color=light("line3"), label="absorbed")
+        upper.plot(times, ledger.came_in / scale, color=light("line2"), label="put in")
+        upper.plot(times, ledger.energy / scale, color=light("line1"), label="in the water")
+        upper.plot(times, ledger.taken / scale, color=light("line3"), label="absorbed")
         upper.set(ylabel=f"energy, {unit}")
-        lower.plot(times, 100.0 * missing / largest, color=light("ink"))
+        lower.plot(times, missing, color=light("ink"))
         lower.set(xlabel="time, s", ylabel="missing, %")
         sheet.legend(loc="outside upper left", ncols=3)
 
@@ -52,7 +47,7 @@ def ledger_figure(
         "energy",
         "Energy of the solved waves: what bodies, walls and patches put in is either still in the "
         "water or in the absorber. What is missing is shown below, in per cent of the largest.",
-        f"At most {100 * np.abs(missing).max() / largest:.3g} % is missing.",
+        f"At most {np.abs(missing).max():.2g} % is missing.",
         draw,
         folder,
         3.3,

@@ -51,7 +51,7 @@ def write_report(path: str | os.PathLike[str], times: Sequence[float] = ()) -> P
     PosixPath('examples/tender_by_platform-run/report.html')
     """
     run = open_run(Path(path))
-    folder = run.folder.path / "report"
+    folder = run.folder.figures
     material = Material(run, folder, tuple(times))
     for time in times:
         if not 0.0 <= time <= material.reached:
@@ -62,9 +62,8 @@ def write_report(path: str | os.PathLike[str], times: Sequence[float] = ()) -> P
     folder.mkdir(exist_ok=True)
     for old in folder.glob("*.png"):
         old.unlink()
-    page = run.folder.path / "report.html"
-    write_whole(page, _page(material).encode("utf-8"))
-    return page
+    write_whole(run.folder.page, _page(material).encode("utf-8"))
+    return run.folder.page
 
 
 def _page(material: Material) -> str:

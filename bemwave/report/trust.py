@@ -104,13 +104,13 @@ def _notes(material: Material) -> Iterator[str]:
 
 
 def _ledger(material: Material) -> Figure | None:
-    path = material.run.folder.path / "energy.nc"
+    path = material.run.folder.energy
     if not path.exists():
         return None
-    times, energy, power_in, absorbed = read_energy(path)
-    if len(times) < 3 or not energy.any():
+    ledger = read_energy(path)
+    if len(ledger.times) < 3 or not ledger.energy.any():
         return None
-    return ledger_figure(times, energy, power_in, absorbed, material.folder)
+    return ledger_figure(ledger, material.folder)
 
 
 def _dispersion(material: Material) -> Figure | str:

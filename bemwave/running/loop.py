@@ -5,9 +5,10 @@ from __future__ import annotations
 import os
 import platform
 import time as clock
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from dataclasses import dataclass, replace
+from functools import partial
 from pathlib import Path
 
 import numpy as np
@@ -38,7 +39,7 @@ from bemwave.records.manifest import Status
 from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.frames_output import note_on, shares
 from bemwave.running.interrupts import heard
-from bemwave.running.outputs import Output, outputs_of
+from bemwave.running.outputs import LedgerOutput, Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
 from bemwave.running.resuming import refuse_changed, restore, save, tell_what_changed
 from bemwave.running.sampling import refuse_unfit
@@ -242,7 +243,7 @@ def _where(solution: Solution | None) -> str:
 
 def _checksums(folder: RunFolder) -> dict[str, str]:
     """SHA-256 of all that a run wrote, but for what changes after it."""
-    left_out = {folder.manifest, folder.log, folder.checks}
+    left_out = {folder.manifest, folder.log, folder.checks, folder.page, *folder.figures.glob("*")}
     files = (path for path in folder.path.rglob("*") if path.is_file() and path not in left_out)
     return checksums(folder.path, sorted(str(path.relative_to(folder.path)) for path in files))
 
@@ -261,7 +262,7 @@ def _loop(
             _check_finite(state, solution)
             for output in wanting:
                 output.write(state)
-            report(state.time / settings.duration, _figure(state))
+            report(state.time / settings.duration, partial(_figure, state, outputs))
             if interrupted() or clock.monotonic() - saved > settings.checkpoint_every:
                 begun = clock.time()
                 save(solution, outputs, folder, state.time, since)
@@ -303,9 +304,9 @@ def _check_finite(state: SurfaceState, solution: Solution | None) -> None:
         )
 
 
-def _figure(state: SurfaceState) -> str:
-    """What to show beside the bar."""
-    figure = f"t = {state.time:.1f} s"
-    if len(state.elevation):
-        figure += f", highest solved wave {np.abs(state.elevation).max():.3g} m"
+def _figure(state: SurfaceState, outputs: Mapping[str, Output]) -> str:
+    """What to show beside the bar: how far it is, and whether energy is kept until now."""
+    figure, ledger = f"t = {state.time:.1f} s", outputs.get("ledger")
+    if isinstance(ledger, LedgerOutput) and ledger.count:
+        figure += f", {ledger.figure}"
     return figure

@@ -14,7 +14,7 @@ from bemwave.flow.state import SurfaceState
 from bemwave.geometry.inside import inside
 from bemwave.handoff import Handoff, Scene
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
-from bemwave.records.energy import EnergyFile
+from bemwave.records.energy import EnergyFile, Ledger, read_energy
 from bemwave.running.driving import start_up
 from bemwave.running.frames_output import FramesOutput
 from bemwave.running.solution import Solution
@@ -74,7 +74,10 @@ class LedgerOutput:
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         self.times = fine_times(solution.survey)
         self._solution = solution
-        self._energy = EnergyFile(folder.path / "energy.nc", self.times, keep)
+        self._energy = EnergyFile(folder.energy, self.times, keep)
+        kept = read_energy(folder.energy)
+        columns = (kept.times, kept.energy, kept.power_in, kept.power_absorbed)
+        self._rows = list(zip(*columns, strict=True))
         names = [hull.name for hull in solution.survey.hulls]
         self._bodies = BodiesFile(folder.bodies, self.times, names, keep) if names else None
 
@@ -83,9 +86,17 @@ class LedgerOutput:
         """See `Output`."""
         return self._energy.count
 
+    @property
+    def figure(self) -> str:
+        """The energy as it stands, for whoever waits."""
+        ledger = Ledger(*np.array(self._rows).T)
+        missing = 100.0 * float(np.abs(ledger.missing).max())
+        return f"energy {ledger.energy[-1]:.3g} J, {missing:.2g} % missing"
+
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
-        self._energy.append(state.time, *self._solution.energy(state))
+        self._rows.append((state.time, *self._solution.energy(state)))
+        self._energy.append(*self._rows[-1])
         if self._bodies is not None:
             motion, velocity = self._solution.motions(state.time)
             self._bodies.append(state.time, motion, velocity, self._solution.loads(state.time))
@@ -182,9 +193,7 @@ def outputs_of(
         handoff = Handoff(entry, case, scene, folder.handoff, keep(name))
         outputs[name] = HandoffOutput(handoff, solution)
     if case.frames is not None:
-        outputs["frames"] = FramesOutput(
-            survey, solution, flow, folder.frames, keep("frames") or 0
-        )
+        outputs["frames"] = FramesOutput(survey, solution, flow, folder.frames, keep("frames") or 0)
     return outputs
 
 

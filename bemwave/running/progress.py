@@ -6,11 +6,15 @@ Lines go to Python's logger "bemwave"; while a run is on they are kept in its lo
 from __future__ import annotations
 
 import logging
+import math
 import sys
-from collections.abc import Iterator
+import time as clock
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Protocol
+
+SECONDS_PER_FIGURE = 0.5
 
 log = logging.getLogger("bemwave")
 log.setLevel(logging.INFO)
@@ -19,8 +23,8 @@ log.setLevel(logging.INFO)
 class Report(Protocol):
     """Takes the share of a stage that is done."""
 
-    def __call__(self, share: float, figure: str = "") -> None:
-        """`share` 0 to 1; `figure` a short text shown beside it."""
+    def __call__(self, share: float, figure: Callable[[], str] = str) -> None:
+        """`share` 0 to 1; `figure` gives a short text to show beside it, asked for now and then."""
 
 
 @contextmanager
@@ -43,7 +47,7 @@ def progress(stage: str) -> Iterator[Report]:
         with _bar(stage) as report:
             yield report
     else:
-        yield lambda share, figure="": None
+        yield lambda share, figure=str: None
 
 
 @contextmanager
@@ -61,7 +65,13 @@ def _bar(stage: str) -> Iterator[Report]:
     with Progress(*columns, console=Console(stderr=True)) as bars:
         task = bars.add_task(stage, total=1.0, figure="")
 
-        def report(share: float, figure: str = "") -> None:
-            bars.update(task, completed=share, figure=figure)
+        told = -math.inf
+
+        def report(share: float, figure: Callable[[], str] = str) -> None:
+            nonlocal told
+            bars.update(task, completed=share)
+            if share >= 1.0 or clock.monotonic() - told > SECONDS_PER_FIGURE:
+                bars.update(task, figure=figure())
+                told = clock.monotonic()
 
         yield report

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import logging
+import re
 from pathlib import Path
 
 import numpy as np
@@ -10,6 +11,7 @@ import pytest
 
 from bemwave.case import Case
 from bemwave.flow.state import SurfaceState
+from bemwave.records import read_checks
 from bemwave.running import loop, run, steps
 from bemwave.running.progress import kept_in, log, progress
 
@@ -88,13 +90,26 @@ def test_progress_is_a_bar_on_a_terminal_and_silent_elsewhere(
     monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> None:
     with progress("solving") as report:
-        report(0.5, "t = 1.0 s")
+        report(0.5, lambda: "t = 1.0 s")
     assert capsys.readouterr().err == ""
     monkeypatch.setattr("sys.stderr.isatty", lambda: True)
     with progress("solving") as report:
-        report(0.5, "t = 1.0 s")
-        report(1.0, "t = 2.0 s")
+        report(0.5, lambda: "t = 1.0 s")
+        report(1.0, lambda: "t = 2.0 s")
     shown = capsys.readouterr().err
     assert "solving" in shown
     assert "100 %" in shown
     assert "t = 2.0 s" in shown
+
+
+def test_the_bar_tells_the_energy_that_the_check_finds(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.setattr("sys.stderr.isatty", lambda: True)
+    monkeypatch.setenv("COLUMNS", "120")
+    finished = run(TANK, tmp_path / "run")
+    energy = next(v for v in read_checks(finished.folder.checks) if v.name == "energy")
+    assert energy.figure is not None
+    told = re.findall(r"energy ([0-9.e+-]+) J, ([0-9.e+-]+) % missing", capsys.readouterr().err)
+    assert float(told[-1][1]) == pytest.approx(100.0 * energy.figure, rel=0.05)
+    assert float(told[-1][0]) > 0.0
