@@ -34,13 +34,14 @@ def draw(survey: Survey, path: Path) -> None:
             axes.fill(*loop.T, label=label, color=f"C{number}", zorder=3)
     _places(axes, survey)
     _headings(axes, survey)
-    axes.set(xlabel="x, m", ylabel="y, m", title=survey.case.title)
+    axes.set(xlabel="x, m", ylabel="y, m")
+    axes.set_title(survey.case.title, parse_math=False, wrap=True)  # dollar signs are dollar signs
     axes.legend(loc="center left", bbox_to_anchor=(1.01, 0.5), frameon=False)
     figure.savefig(path, dpi=120, format="png", bbox_inches="tight")
 
 
 def _places(axes: Any, survey: Survey) -> None:
-    """Gauges by number and boxes by outline, named in the legend."""
+    """Gauges by number, boxes and the region of the frames by outline, named in the legend."""
     for number, gauge in enumerate(survey.case.gauge, 1):
         label = f"{number}: gauge {gauge.name}"
         axes.plot(*gauge.position, "k.", label=label, markersize=4, zorder=4)
@@ -54,21 +55,29 @@ def _places(axes: Any, survey: Survey) -> None:
             corners = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [-1, -1]]) * half
             label = f"hand-off {entry.name}"
             axes.plot(*box.to_earth(corners).T, "--", color="k", label=label, zorder=4)
+    frames = survey.case.frames
+    if frames is not None and frames.region is not None:
+        corners = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [-1, -1]]) / 2
+        region = corners * frames.region.size + frames.region.centre
+        axes.plot(*region.T, ":", color="C2", linewidth=2.0, label="frames", zorder=4)
 
 
 def _headings(axes: Any, survey: Survey) -> None:
     """An arrow for each entry of waves, where they come from: in the absorber if there is one."""
     surface = survey.case.surface
     reach = 0.5 * max(surface.extent)
-    start = 1.0 if survey.layer is None else 1.5
-    for wave in survey.case.waves:
+    start = 1.0 if survey.layer is None else 1.9
+    for number, wave in enumerate(survey.case.waves, 1):
         along = np.array([math.cos(math.radians(a)) for a in (wave.heading, wave.heading - 90.0)])
         tail = np.array(surface.centre) - start * reach * along
         axes.annotate(
-            "",
-            tail + 0.35 * reach * along,
+            f"waves {number}",
+            tail + 0.6 * reach * along,
             tail,
             arrowprops={"arrowstyle": "-|>", "color": "C3", "linewidth": 2.0},
+            color="C3",
+            ha="center",
+            va="center",
             zorder=5,
         )
 

@@ -7,6 +7,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from matplotlib.figure import Figure
 
 from bemwave import cli
 from bemwave.case import Case, read_case
@@ -116,3 +117,36 @@ def test_a_hand_off_during_the_start_up_is_told() -> None:
     assert "hand-off handoff1 starts at 2 s, during the start-up" in found
     found = plan(case(hump=[], waves=waves, body=[ball], handoff=[{**box, "start": 4.0}]))
     assert "during the start-up" not in found
+
+
+def test_the_picture_has_everything_to_scale_and_a_title_as_it_is(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    drawn: list[Figure] = []
+    save = Figure.savefig
+    monkeypatch.setattr(
+        Figure, "savefig", lambda self, *a, **k: (drawn.append(self), save(self, *a, **k))[1]
+    )
+    asked = case(
+        title="costs $5 and $x^{",
+        waves=[{"kind": "regular", "height": 0.1, "period": 2.0, "heading": 30.0}],
+        gauge=[{"name": "near", "position": [1.0, 2.0]}],
+        handoff=[{"box": {"size": [4.0, 3.0], "bottom": -2.0, "top": 1.0, "angle": 20.0}}],
+        frames={"region": {"size": [6.0, 6.0]}},
+    )
+    plan(asked, picture=tmp_path / "plan.png")
+    assert (tmp_path / "plan.png").read_bytes().startswith(b"\x89PNG")
+    (axes,) = drawn[0].axes
+    assert axes.get_aspect() == 1.0
+    assert axes.get_title() == asked.title
+    assert (axes.get_xlabel(), axes.get_ylabel()) == ("x, m", "y, m")
+    legend = axes.get_legend()
+    assert legend is not None
+    assert [text.get_text() for text in legend.get_texts()] == [
+        "absorber",
+        "useful water",
+        "1: gauge near",
+        "hand-off handoff1",
+        "frames",
+    ]
+    assert "waves 1" in [text.get_text() for text in axes.texts]
