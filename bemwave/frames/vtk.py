@@ -8,6 +8,7 @@ from pathlib import Path
 import numpy as np
 
 from bemwave.frames.sheet import Array, Bools
+from bemwave.geometry.pyvista_files import save
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 
@@ -29,8 +30,7 @@ def write_vtp(
         drawn.point_data[name] = values.astype(kind)
     if note:
         drawn.field_data["note"] = [note]
-    with pyvista.vtk_verbosity("off"):
-        drawn.save(path)
+    save(drawn, path)
 
 
 def pvd_text(files: Sequence[tuple[float, str]]) -> str:

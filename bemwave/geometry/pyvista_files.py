@@ -1,8 +1,9 @@
-"""VTP through pyvista; no window is opened. Called by `files` alone."""
+"""VTP through pyvista; no window is opened."""
 
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -39,5 +40,16 @@ def write_vtp(mesh: SurfaceMesh, path: Path) -> None:
     data = pv.PolyData.from_regular_faces(mesh.points.copy(), mesh.triangles)
     data.cell_data["part"] = mesh.part.astype(np.int32)
     data.field_data["part_names"] = list(mesh.part_names)
-    with pv.vtk_verbosity("off"):
-        data.save(path)
+    save(data, path)
+
+
+def save(data: Any, path: Path) -> None:
+    """Write a pyvista.PolyData; OSError where there is no room (VTK's own way out is a crash)."""
+    from vtkmodules.vtkIOXML import vtkXMLPolyDataWriter
+
+    writer = vtkXMLPolyDataWriter()
+    writer.SetInputData(data)
+    writer.SetDataModeToBinary()
+    writer.WriteToOutputStringOn()
+    writer.Write()
+    path.write_text(writer.GetOutputString(), encoding="utf-8")

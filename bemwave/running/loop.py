@@ -7,7 +7,7 @@ import platform
 import time as clock
 from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager, suppress
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import partial
 from pathlib import Path
 
@@ -20,7 +20,7 @@ from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.errors import InputError, RunError
 from bemwave.flow.state import SurfaceState
-from bemwave.geometry.files import write_mesh
+from bemwave.geometry.pyvista_files import write_vtp
 from bemwave.records import (
     Manifest,
     Rest,
@@ -36,6 +36,7 @@ from bemwave.records import (
     write_manifest,
 )
 from bemwave.records.manifest import Status
+from bemwave.running.faults import refuse_no_numbers, where
 from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.frames_output import note_on, shares
 from bemwave.running.interrupts import heard
@@ -104,19 +105,20 @@ def solve(surveyed: Survey, folder: RunFolder, before: Manifest | None = None) -
     started = clock.monotonic()
     refuse_unfit(surveyed)
     solution = _assemble(surveyed)
-    if before is None:
-        create_folder(folder.path, surveyed.case.text)
-    with alone_in(folder), kept_in(folder.log), heard() as interrupted:
+    with _told(solution, folder):
         if before is None:
-            refuse_used_folder(folder.path)  # another may have begun there meanwhile
-        with _ending(solution, folder) as told:
-            told.manifest = _begin(surveyed, solution, folder, before)
-            log.info(f"set up in {clock.monotonic() - started:.1f} s")
-            kept = None if before is None else restore(solution, folder)
-            outputs = outputs_of(surveyed, solution, folder, kept)
-            _loop(surveyed, solution, outputs, folder, interrupted)
-            log.info(f"solved after {clock.monotonic() - started:.1f} s")
-            write_checks(judge(Run(folder.path)), folder.checks)
+            create_folder(folder.path, surveyed.case.text)
+        with alone_in(folder), kept_in(folder.log), heard() as interrupted:
+            if before is None:
+                refuse_used_folder(folder.path)  # another may have begun there meanwhile
+            manifest = _begin(surveyed, solution, folder, before)
+            with _ending(manifest, folder):
+                log.info(f"set up in {clock.monotonic() - started:.1f} s")
+                kept = None if before is None else restore(solution, folder)
+                outputs = outputs_of(surveyed, solution, folder, kept)
+                _loop(surveyed, solution, outputs, folder, interrupted)
+                log.info(f"solved after {clock.monotonic() - started:.1f} s")
+                write_checks(judge(Run(folder.path)), folder.checks)
     return Run(folder.path)
 
 
@@ -165,7 +167,7 @@ def _begin(
         notes=notes,
     )
     with whole(folder.mesh) as beside:
-        write_mesh(mesh, beside)
+        write_vtp(mesh, beside)
     with whole(folder.sea) as beside:
         write_sea(surveyed.sea, beside)
     if before is not None:
@@ -192,53 +194,38 @@ def _asymmetry(matrix: Array) -> float:
     return float(max(np.abs(matrix[row] - matrix[:, row].T).max() for row in rows) / largest)
 
 
-@dataclass
-class _Told:
-    """The manifest of a run, once there is one."""
-
-    manifest: Manifest | None = None
-
-
 @contextmanager
-def _ending(solution: Solution | None, folder: RunFolder) -> Iterator[_Told]:
-    """Write how the run ended into its manifest, whatever happens inside.
-
-    Raises
-    ------
-    RunError
-        In place of a disk's or a file library's own errors.
-    """
-    told, files = _Told(), dict[str, str]()
-    status: Status = "failed"
+def _told(solution: Solution | None, folder: RunFolder) -> Iterator[None]:
+    """Raise RunError in place of a disk's, a file library's or the memory's own errors."""
     try:
-        yield told
-        files, status = _checksums(folder), "finished"
-    except KeyboardInterrupt:
-        status = "interrupted"
-        raise
+        yield
     except MemoryError as error:
         raise RunError(
-            f"the machine has no memory left {_where(solution)}; expected what bemwave plan "
+            f"the machine has no memory left {where(solution)}; expected what bemwave plan "
             "forecasts: close other programs, then go on with --resume"
         ) from error
     except (OSError, RuntimeError) as error:  # netCDF's own errors are RuntimeErrors
         raise RunError(
-            f"{folder.path} could not be written any further {_where(solution)} ({error}); "
+            f"{folder.path} could not be written any further {where(solution)} ({error}); "
             "expected room and a disk that answers and may be written to: see to that, then go on "
             "with --resume; what was written is whole"
         ) from error
+
+
+@contextmanager
+def _ending(manifest: Manifest, folder: RunFolder) -> Iterator[None]:
+    """Write how the run ended into its manifest, whatever happens inside."""
+    status: Status = "failed"
+    files: dict[str, str] = {}
+    try:
+        yield
+        files, status = _checksums(folder), "finished"
+    except KeyboardInterrupt:
+        status = "interrupted"
+        raise
     finally:
-        if told.manifest is not None:
-            ended = replace(told.manifest.with_status(status), files=files)
-            with suppress(OSError):  # on a full disk the first error is the one to tell
-                write_manifest(ended, folder.manifest)
-
-
-def _where(solution: Solution | None) -> str:
-    """How far a run was, for messages."""
-    if solution is None:
-        return "(nothing solved, the sea alone)"
-    return f"at step {solution.stepper.count}, t = {solution.stepper.time:.6g} s"
+        with suppress(OSError):  # on a full disk the first error is the one to tell
+            write_manifest(replace(manifest.with_status(status), files=files), folder.manifest)
 
 
 def _checksums(folder: RunFolder) -> dict[str, str]:
@@ -257,9 +244,9 @@ def _loop(
 ) -> None:
     """Visit every instant that an output wants, in order."""
     settings, saved, since = surveyed.case.run, clock.monotonic(), clock.time()
-    with progress("solving") as report:
+    with progress("solving") as report, _flushed(outputs):
         for state, wanting in _visits(solution, outputs):
-            _check_finite(state, solution)
+            refuse_no_numbers(state, solution)
             for output in wanting:
                 output.write(state)
             report(state.time / settings.duration, partial(_figure, state, outputs))
@@ -270,8 +257,19 @@ def _loop(
             if interrupted():
                 log.info(f"interrupted at t = {state.time:.6g} s, with a checkpoint")
                 raise KeyboardInterrupt
+
+
+@contextmanager
+def _flushed(outputs: dict[str, Output]) -> Iterator[None]:
+    """Put on the disk what was given, at the end, and what was sound before a field went wrong."""
+    try:
+        yield
+    except RunError:
         for output in outputs.values():
             output.flush()
+        raise
+    for output in outputs.values():
+        output.flush()
 
 
 def _visits(
@@ -294,14 +292,6 @@ def _visits(
         else:
             solution.advance_to(time)
             yield solution.state(time), wanting
-
-
-def _check_finite(state: SurfaceState, solution: Solution | None) -> None:
-    if not np.isfinite(state.elevation).all():
-        raise RunError(
-            f"the elevation is no longer a number {_where(solution)}; expected it finite: what was "
-            "written before is whole; check the mesh with bemwave plan, or take a smaller step"
-        )
 
 
 def _figure(state: SurfaceState, outputs: Mapping[str, Output]) -> str:

@@ -16,6 +16,7 @@ from bemwave.handoff import Handoff, Scene
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
 from bemwave.records.energy import EnergyFile, Ledger, read_energy
 from bemwave.running.driving import start_up
+from bemwave.running.faults import GrowthGuard
 from bemwave.running.frames_output import FramesOutput
 from bemwave.running.solution import Solution
 from bemwave.running.survey import Survey
@@ -78,6 +79,9 @@ class LedgerOutput:
         kept = read_energy(folder.energy)
         columns = (kept.times, kept.energy, kept.power_in, kept.power_absorbed)
         self._rows = list(zip(*columns, strict=True))
+        self._guard = GrowthGuard(solution)
+        for time, energy, power_in, _ in self._rows:
+            self._guard.check(time, energy, power_in)
         names = [hull.name for hull in solution.survey.hulls]
         self._bodies = BodiesFile(folder.bodies, self.times, names, keep) if names else None
 
@@ -95,7 +99,9 @@ class LedgerOutput:
 
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
-        self._rows.append((state.time, *self._solution.energy(state)))
+        energy, power_in, absorbed = self._solution.energy(state)
+        self._guard.check(state.time, energy, power_in)
+        self._rows.append((state.time, energy, power_in, absorbed))
         self._energy.append(*self._rows[-1])
         if self._bodies is not None:
             motion, velocity = self._solution.motions(state.time)

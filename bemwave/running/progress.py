@@ -31,6 +31,8 @@ class Report(Protocol):
 def kept_in(path: Path) -> Iterator[None]:
     """Add every line of the log to a file too, each with the time of day."""
     keeper = logging.FileHandler(path, encoding="utf-8")
+    # a full disk is told by the files that matter, not in the middle of a line
+    keeper.handleError = lambda record: None  # type: ignore[method-assign]
     keeper.setFormatter(logging.Formatter("%(asctime)s  %(message)s"))
     log.addHandler(keeper)
     try:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import filecmp
 import os
 import re
 import subprocess
@@ -14,7 +13,6 @@ from pathlib import Path
 from typing import Any
 
 import netCDF4
-import numpy as np
 import pytest
 
 from bemwave.case import Case, read_case
@@ -28,93 +26,7 @@ from bemwave.records import (
     write_manifest,
 )
 from bemwave.running import loop, run
-
-TANK = """\
-[water]
-depth = 1.0
-[surface]
-size = [4.0, 1.5]
-spacing = 0.4
-edges = { x_min = "wall", x_max = "absorb", y_min = "wall", y_max = "wall" }
-absorber = 2.0
-[[wavemaker]]
-side = "x_min"
-kind = "flap"
-stroke = 0.02
-period = 1.6
-[run]
-duration = 4.0
-record_every = 0.1
-[[gauge]]
-position = [0.0, 0.0]
-[[handoff]]
-name = "box"
-box = { size = [1.5, 0.6], bottom = -0.4, top = 0.2 }
-start = 2.0
-every = 0.1
-volume_at_start = true
-[frames]
-formats = ["ply", "vtk"]
-start = 2.0
-fps = 5
-"""
-
-SPHERE = """\
-[water]
-depth = "deep"
-[[waves]]
-kind = "regular"
-height = 0.1
-period = 1.8
-[surface]
-size = [4.0, 3.0]
-spacing = 0.7
-absorber = 2.8
-[[body]]
-name = "ball"
-form = "sphere"
-radius = 0.4
-centre_depth = 1.0
-panel_size = 0.4
-attitude = "forced"
-forced = { mode = "heave", amplitude = 0.05, period = 1.8 }
-[run]
-duration = 4.0
-record_every = 0.1
-[[gauge]]
-position = [0.5, 0.0]
-[[handoff]]
-name = "box"
-box = { size = [3.0, 2.0], bottom = -0.5, top = 0.2 }
-start = 3.0
-every = 0.1
-crest = "wheeler"
-field = "parts"
-"""
-
-SEA_ALONE = """\
-[water]
-depth = 5.0
-[[waves]]
-kind = "jonswap"
-height = 0.1
-period = 2.0
-components = 50
-[surface]
-size = [8.0, 4.0]
-spacing = 0.5
-[run]
-duration = 4.0
-[[gauge]]
-position = [0.0, 0.0]
-[[handoff]]
-name = "box"
-box = { size = [2.0, 2.0], bottom = -1.0, top = 0.5 }
-spacing = 0.5
-every = 0.1
-"""
-
-CASES = {"tank": TANK, "sphere": SPHERE, "sea alone": SEA_ALONE}
+from tests.restart.cases import CASES, SEA_ALONE, TANK, assert_same, write_case
 
 
 @pytest.fixture(scope="module")
@@ -125,8 +37,7 @@ def whole(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str], tuple[Cas
     def of(name: str) -> tuple[Case, Path]:
         if name not in made:
             home = tmp_path_factory.mktemp("whole")
-            (home / "case.toml").write_text(CASES[name])
-            case = read_case(home / "case.toml")
+            case = read_case(write_case(name, home))
             run(case, home / "run")
             made[name] = case, home / "run"
         return made[name]
@@ -149,9 +60,9 @@ def interrupt_after(visits: int, monkeypatch: pytest.MonkeyPatch) -> None:
         left[0] -= 1
         check(*arguments)
 
-    check = loop._check_finite
+    check = loop.refuse_no_numbers
     monkeypatch.setattr(loop, "heard", heard)
-    monkeypatch.setattr(loop, "_check_finite", count)
+    monkeypatch.setattr(loop, "refuse_no_numbers", count)
 
 
 def interrupted(case: Case, out: Path, monkeypatch: pytest.MonkeyPatch, *visits: int) -> None:
@@ -160,30 +71,6 @@ def interrupted(case: Case, out: Path, monkeypatch: pytest.MonkeyPatch, *visits:
         with pytest.raises(KeyboardInterrupt):
             run(case, out, resume=number > 0)
         monkeypatch.undo()
-
-
-def arrays_of(path: Path) -> dict[str, np.ndarray]:
-    with netCDF4.Dataset(path) as file:
-        file.set_auto_mask(False)
-        arrays = {name: np.asarray(file[name][:]) for name in file.variables}
-    # text comes as objects, whose bytes are addresses
-    return {name: a.astype(str) if a.dtype == object else a for name, a in arrays.items()}
-
-
-def assert_same(one: Path, other: Path) -> None:
-    """All arrays bit for bit, all other files byte for byte; not log and manifest."""
-    files = {p.relative_to(one) for p in one.rglob("*") if p.is_file()}
-    files = {p for p in files if p.parts[0] not in ("checkpoint", "log.txt", "manifest.json")}
-    assert {Path("checks.json"), Path("sea.nc")} <= files
-    for file in sorted(files):
-        if file.suffix == ".nc":
-            first, second = arrays_of(one / file), arrays_of(other / file)
-            assert first.keys() == second.keys()
-            for name, array in first.items():
-                assert array.shape == second[name].shape, (file, name)
-                assert array.tobytes() == second[name].tobytes(), (file, name)
-        else:
-            assert filecmp.cmp(one / file, other / file, shallow=False), file
 
 
 @pytest.mark.parametrize("name", CASES)
@@ -268,7 +155,7 @@ def test_a_full_disk_ends_the_run_resumably(
         raise OSError(28, "No space left on device")
 
     with monkeypatch.context() as patch:
-        patch.setattr(loop, "_check_finite", full)
+        patch.setattr(loop, "refuse_no_numbers", full)
         with pytest.raises(RunError, match=r"No space left on device.*--resume"):
             run(case, out, resume=True)
     assert read_manifest(out / "manifest.json").status == "failed"
@@ -284,7 +171,7 @@ def test_a_field_that_is_no_longer_a_number_ends_the_run(
     latest = max((tmp_path / "run" / "checkpoint").iterdir())
     kept = latest_checkpoint(latest.parent)[0]
     assert kept is not None
-    spoiled = {name: array * np.nan for name, array in kept.arrays.items()}
+    spoiled = {name: array * float("nan") for name, array in kept.arrays.items()}
     write_checkpoint(Checkpoint(spoiled, kept.facts), latest.parent, 10**6)
     with pytest.raises(RunError, match=r"no longer a number at step \d+, t = "):
         run(case, tmp_path / "run", resume=True)
