@@ -21,7 +21,7 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff import Flow, HandoffSampler, Scene, free_points
 from bemwave.handoff.fields import SurfaceMaps, on_surface
 from bemwave.handoff.netcdf import read_times, reading
-from bemwave.records.folder import RunFolder
+from bemwave.records.folder import RunFolder, checksums
 from bemwave.records.history import History, cubic_in_time
 from bemwave.records.manifest import Manifest, read_manifest
 from bemwave.records.series import in_radians
@@ -66,21 +66,44 @@ class Run:
         self._samplers: dict[bytes, HandoffSampler] = {}
         self._surfaces: dict[bytes, _Surface] = {}
 
+    def refuse_changed_files(self) -> None:
+        """Raise InputError if any file of a finished run is not as the run left it."""
+        for name in self.manifest.files:
+            self._whole(self.folder.path / name)
+
+    def _whole(self, path: Path) -> Path:
+        """The path itself, if a finished run left that file as it is now."""
+        name = str(path.relative_to(self.folder.path))
+        expected = self.manifest.files.get(name)
+        if expected is None:
+            return path
+        if not path.is_file():
+            raise InputError(
+                f"{path} is missing; expected all that the run wrote: copy the whole folder again, "
+                "or run the case again"
+            )
+        if checksums(self.folder.path, [name])[name] != expected:
+            raise InputError(
+                f"{path} is damaged or was changed after the run; expected it as the run left it "
+                f"(SHA-256 {expected[:12]}...): copy it again, or run the case again"
+            )
+        return path
+
     @cached_property
     def case(self) -> Case:
         """The case as it was run."""
-        return read_case(self.folder.case)
+        return read_case(self._whole(self.folder.case))
 
     @cached_property
     def mesh(self) -> SurfaceMesh:
         """The panels; the water's part is called "water", a hull's as its body."""
-        mesh = read_mesh(self.folder.mesh)
+        mesh = read_mesh(self._whole(self.folder.mesh))
         return SurfaceMesh(mesh.points, mesh.triangles, mesh.part, self.manifest.part_names)
 
     @cached_property
     def sea(self) -> Sea:
         """The incident waves."""
-        return read_sea(self.folder.sea)
+        return read_sea(self._whole(self.folder.sea))
 
     @cached_property
     def history(self) -> History | None:

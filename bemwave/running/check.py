@@ -12,7 +12,7 @@ import numpy as np
 from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.checks.verdicts import PRACTICE, judged
-from bemwave.records import Run, RunFolder, Verdict, open_run, write_checks
+from bemwave.records import Run, RunFolder, Verdict, open_run, refuse_links, write_checks
 from bemwave.running.loop import solve
 from bemwave.running.sea import scattered_sea
 from bemwave.running.survey import survey
@@ -32,9 +32,11 @@ def check(path: str | os.PathLike[str], *, convergence: bool = False) -> list[Ve
     Raises
     ------
     InputError
-        If there is no run, or it cannot be solved again.
+        If there is no run, a file of it was changed since, or it cannot be solved again.
     """
     run = open_run(Path(path))
+    refuse_links(run.folder)
+    run.refuse_changed_files()
     verdicts = judge(run)
     if convergence:
         verdicts.append(_convergence(run))

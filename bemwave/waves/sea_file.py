@@ -10,6 +10,7 @@ from pathlib import Path
 
 import numpy as np
 
+from bemwave import __version__
 from bemwave.errors import InputError
 from bemwave.waves.sea import Sea, degrees_of
 
@@ -35,11 +36,12 @@ def write_sea(sea: Sea, path: str | Path) -> None:
 
     with Dataset(path, "w", format="NETCDF4") as file:
         file.Conventions = "CF-1.11"
+        file.bemwave_version = __version__
         file.title = "Incident sea as a sum of plane waves"
         file.createDimension("component", sea.count)
         for name, (units, text) in (_COMPONENT_VARIABLES | _SCALARS).items():
             dimensions = ("component",) if name in _COMPONENT_VARIABLES else ()
-            variable = file.createVariable(name, "f8", dimensions)
+            variable = file.createVariable(name, "f8", dimensions, fletcher32=bool(dimensions))
             variable.units, variable.long_name = units, text
             value = getattr(sea, name)
             variable[:] = degrees_of(value) if name in _ANGLES else value
@@ -59,7 +61,7 @@ def read_sea(path: str | Path) -> Sea:
         with Dataset(path) as file:
             file.set_auto_mask(False)
             values = {name: file[name][...] for name in (*_COMPONENT_VARIABLES, *_SCALARS)}
-    except (OSError, IndexError) as fault:
+    except (OSError, RuntimeError, IndexError) as fault:
         raise InputError(
             f"the sea file {path} cannot be read ({fault}); expected one that a run has written"
         ) from fault

@@ -7,13 +7,18 @@ import os
 import subprocess
 import sys
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from pathlib import Path
+from typing import Any
 
 import netCDF4
 import numpy as np
+import pytest
 
 from bemwave import cli
+from bemwave.case import Case
+from bemwave.running import loop, run
 
 TANK = """\
 [water]
@@ -196,3 +201,31 @@ def wait_for(log: Path, words: str, running: subprocess.Popen[str]) -> float:
             break
         time.sleep(0.005)
     return time.monotonic()
+
+
+def interrupt_after(visits: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Have the next run hear Ctrl-C after a number of instants."""
+    left = [visits]
+
+    @contextmanager
+    def heard() -> Iterator[Callable[[], bool]]:
+        def came() -> bool:
+            return left[0] == 0
+
+        yield came
+
+    def count(*arguments: Any) -> None:
+        left[0] -= 1
+        check(*arguments)
+
+    check = loop.refuse_no_numbers
+    monkeypatch.setattr(loop, "heard", heard)
+    monkeypatch.setattr(loop, "refuse_no_numbers", count)
+
+
+def interrupted(case: Case, out: Path, monkeypatch: pytest.MonkeyPatch, *visits: int) -> None:
+    for number, stop in enumerate(visits):
+        interrupt_after(stop, monkeypatch)
+        with pytest.raises(KeyboardInterrupt):
+            run(case, out, resume=number > 0)
+        monkeypatch.undo()

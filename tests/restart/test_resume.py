@@ -6,11 +6,9 @@ import os
 import re
 import subprocess
 import sys
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
-from typing import Any
 
 import netCDF4
 import pytest
@@ -26,7 +24,7 @@ from bemwave.records import (
     write_manifest,
 )
 from bemwave.running import loop, run
-from tests.restart.cases import CASES, SEA_ALONE, TANK, assert_same, write_case
+from tests.restart.cases import CASES, SEA_ALONE, TANK, assert_same, interrupted, write_case
 
 
 @pytest.fixture(scope="module")
@@ -43,34 +41,6 @@ def whole(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str], tuple[Cas
         return made[name]
 
     return of
-
-
-def interrupt_after(visits: int, monkeypatch: pytest.MonkeyPatch) -> None:
-    """Have the next run hear Ctrl-C after a number of instants."""
-    left = [visits]
-
-    @contextmanager
-    def heard() -> Iterator[Callable[[], bool]]:
-        def came() -> bool:
-            return left[0] == 0
-
-        yield came
-
-    def count(*arguments: Any) -> None:
-        left[0] -= 1
-        check(*arguments)
-
-    check = loop.refuse_no_numbers
-    monkeypatch.setattr(loop, "heard", heard)
-    monkeypatch.setattr(loop, "refuse_no_numbers", count)
-
-
-def interrupted(case: Case, out: Path, monkeypatch: pytest.MonkeyPatch, *visits: int) -> None:
-    for number, stop in enumerate(visits):
-        interrupt_after(stop, monkeypatch)
-        with pytest.raises(KeyboardInterrupt):
-            run(case, out, resume=number > 0)
-        monkeypatch.undo()
 
 
 @pytest.mark.parametrize("name", CASES)
