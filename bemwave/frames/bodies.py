@@ -14,10 +14,11 @@ SIDES = 0.5  # of the draught: how high the sides of a form are drawn
 def drawn_mesh(hull: Hull) -> SurfaceMesh:
     """A hull in its own axes, normals out of it.
 
-    From a mesh file it is drawn as the file has it. A form has no topsides of its own: it gets
-    upright sides and a flat deck, for the picture alone.
+    From a mesh file it is drawn as the file has it. A form, and a file that ends at the waterline,
+    has no topsides: it gets upright sides and a flat deck, for the picture alone.
     """
-    if hull.whole is not None:
+    least = 0.01 * hull.hydrostatics.draught
+    if hull.whole is not None and hull.whole.points[:, 2].max() > least:
         return hull.whole.renamed(hull.name)
     own = hull.mesh.flipped()
     wetted = own.with_points(hull.place.back(own.points))

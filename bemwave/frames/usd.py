@@ -8,6 +8,7 @@ it. What is held in memory is one frame.
 
 from __future__ import annotations
 
+import math
 import os
 import shutil
 from collections.abc import Mapping, Sequence
@@ -16,12 +17,14 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from scipy import sparse
 
 from bemwave.errors import MissingLibraryError
 from bemwave.frames.sheet import Array, Bools, Sheet
 from bemwave.geometry.pose import Pose
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
+CREASE = 40.0  # degrees
 SAVED_AT_ONCE = 8  # frames moved into the one file between two of its saves
 
 
@@ -221,7 +224,23 @@ def _define_body(stage: Any, path: str, mesh: SurfaceMesh, name: str) -> None:
     _set_triangles(body, mesh)
     body.CreatePointsAttr().Set(_vectors(mesh.points))
     body.CreateExtentAttr().Set(_vectors(np.array([mesh.points.min(0), mesh.points.max(0)])))
+    body.CreateNormalsAttr().Set(_vectors(_creased_normals(mesh)))
+    body.SetNormalsInterpolation(UsdGeom.Tokens.faceVarying)
     body.AddTransformOp()
+
+
+def _creased_normals(mesh: SurfaceMesh) -> Array:
+    """At every corner of every triangle, (3 m, 3): smooth, but for edges sharper than CREASE."""
+    count = len(mesh.triangles)
+    triangle, vertex = np.repeat(np.arange(count), 3), mesh.triangles.ravel()
+    shape = (len(mesh.points), count)
+    about = sparse.csr_matrix((np.ones(3 * count), (vertex, triangle)), shape=shape)
+    pairs = about[vertex].tocoo()  # a corner and each triangle that meets its vertex
+    alike = np.sum(mesh.normals[triangle[pairs.row]] * mesh.normals[pairs.col], axis=1)
+    smooth = alike > math.cos(math.radians(CREASE))
+    sums = np.zeros((3 * count, 3))
+    np.add.at(sums, pairs.row[smooth], mesh.area_vectors[pairs.col[smooth]])
+    return np.asarray(sums / np.maximum(np.linalg.norm(sums, axis=1, keepdims=True), 1e-300))
 
 
 def _define_guide(stage: Any, path: str, guide: Guide) -> None:

@@ -143,6 +143,10 @@ def test_bodies_are_rigid_and_stand_where_their_motions_take_them(stage):
         moved = np.column_stack([points, np.ones(len(points))]) @ np.array(matrix)
         want = gone(k / FPS)["tender"](PLACE(BLOCK.points))
         np.testing.assert_allclose(moved[:, :3], want, atol=1e-6)
+    # a box has edges: each corner of a triangle has that triangle's own normal
+    normals = np.asarray(body.GetNormalsAttr().Get())
+    np.testing.assert_allclose(normals, np.repeat(BLOCK.normals, 3, axis=0), atol=1e-6)
+    assert body.GetNormalsInterpolation() == "faceVarying"
     for name in ("bow_1", "bow_1_2"):
         guide = UsdGeom.Imageable(stage.GetPrimAtPath(f"/sea/guides/{name}"))
         assert guide.ComputePurpose() == "guide"
