@@ -8,10 +8,11 @@ import numpy as np
 
 from bemwave.case.output import Handoff
 from bemwave.handoff import closure_figure
-from bemwave.report.content import Block, Figures, Material, Section, Table, number, percent
+from bemwave.report.content import Block, Figures, Material, Section, Table
 from bemwave.report.curves import balance_figure, delivery_figure
 from bemwave.report.figures import Figure
 from bemwave.report.series import Delivery
+from bemwave.report.words import number, percent
 
 QUESTION = "What does my box get?"
 

@@ -25,12 +25,12 @@ def _notes(material: Material) -> Iterator[str]:
         "viscous damping."
     )
     yield f"Pressures: {PRESSURE_NOTE}."
-    frames = material.run.case.frames
-    if frames is not None:
-        yield (
-            "Frames for a renderer may carry displaced crests and detail finer than what was "
-            "solved: both are for pictures only, never for loads or clearance."
-        )
+    yield (
+        "Frames for a renderer may carry displaced crests and detail finer than what was solved: "
+        "both are for pictures only, never for loads or clearance."
+    )
+    if "frames" in material.run.manifest.notes:
+        yield f"The frames of this run: {material.run.manifest.notes['frames']}."
     yield (
         "The moving sea on this page is for looking: drawn on a coarse grid, heights exaggerated. "
         "Read figures from the tables, or from the run's files."

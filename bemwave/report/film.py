@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -58,6 +58,13 @@ class Film:
     def peak(self) -> float:
         """Largest size of the elevation, m; never 0, so that it can be a scale."""
         return float(np.nanmax(np.abs(self.total), initial=0.0)) or 1.0
+
+    def after(self, time: float) -> Film:
+        """The frames from a time on."""
+        kept = self.times >= time
+        return replace(
+            self, times=self.times[kept], total=self.total[kept], incident=self.incident[kept]
+        )
 
     def filled(self, field: Array) -> Array:
         """A field (..., ny, nx) with the nearest water's values where there is no water."""

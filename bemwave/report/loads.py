@@ -7,10 +7,11 @@ from collections.abc import Iterator
 import numpy as np
 
 from bemwave.records.series import MODES
-from bemwave.report.content import Block, Figures, Material, Section, Table, number
+from bemwave.report.content import Block, Figures, Material, Section, Table
 from bemwave.report.curves import load_figures, motion_figures
 from bemwave.report.figures import Figure
 from bemwave.report.series import Bodies
+from bemwave.report.words import number
 
 QUESTION = "What are the loads?"
 

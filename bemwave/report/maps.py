@@ -14,6 +14,7 @@ from bemwave.records import Run
 from bemwave.report.colours import HEIGHT, SIGNED, WATER, colour_map, light
 from bemwave.report.figures import WIDTH, Figure, drawn
 from bemwave.report.film import Film
+from bemwave.report.words import number
 
 Array = npt.NDArray[np.float64]
 
@@ -22,16 +23,16 @@ def elevation_maps(
     run: Run, film: Film, times: Sequence[float], limit: float, folder: Path | None
 ) -> Iterator[Figure]:
     """The surface at the frames nearest to given times, all on one scale."""
-    for number, time in enumerate(times, 1):
+    for place, time in enumerate(times, 1):
         k = int(np.argmin(np.abs(film.times - time)))
         field, at = film.total[k], film.times[k]
         yield _map(
             run,
             film,
             field,
-            f"elevation-{number}",
+            f"elevation-{place}",
             f"The surface at t = {at:.2f} s.",
-            f"Elevations from {_least(field):.2f} to {_most(field):.2f} m.",
+            f"Elevations from {number(_least(field), 2)} to {number(_most(field), 2)} m.",
             "elevation, m",
             {"cmap": colour_map(WATER), "vmin": -limit, "vmax": limit},
             folder,
@@ -48,7 +49,7 @@ def scattered_map(run: Run, film: Film, folder: Path | None) -> Figure:
         field,
         "scattered",
         f"Of it, what bodies and walls add to the incident sea, at t = {film.times[-1]:.2f} s.",
-        f"Up to {reach:.2f} m.",
+        f"Up to {number(reach, 2)} m.",
         "elevation without the incident waves, m",
         {"cmap": colour_map(SIGNED), "vmin": -reach, "vmax": reach},
         folder,
@@ -67,7 +68,7 @@ def height_map(run: Run, film: Film, since: float, folder: Path | None) -> Figur
         "height",
         f"Height of the waves, four standard deviations from t = {since:.1f} s on: where it is "
         "rough and where there is shelter. Boxes are dashed, gauges numbered in the case's order.",
-        f"Heights from {_least(field):.2f} to {_most(field):.2f} m.",
+        f"Heights from {number(_least(field), 2)} to {number(_most(field), 2)} m.",
         "height of the waves, m",
         {"cmap": colour_map(HEIGHT), "vmin": 0.0, "vmax": _most(field) or 1.0},
         folder,
@@ -87,6 +88,8 @@ def _map(
     folder: Path | None,
     guides: bool = False,
 ) -> Figure:
+    from matplotlib.ticker import MaxNLocator
+
     def draw(sheet: Any) -> None:
         axes = sheet.add_subplot()
         shown = axes.pcolormesh(
@@ -102,7 +105,8 @@ def _map(
         axes.set(xlabel="x, m", ylabel="y, m", aspect="equal")
         axes.set(xlim=film.x[[0, -1]], ylim=film.y[[0, -1]])
         axes.grid(False)
-        bar = sheet.colorbar(shown, ax=axes, label=label, location="top", shrink=0.8, aspect=32)
+        shape = {"shrink": 0.8, "aspect": 32, "ticks": MaxNLocator(5)}
+        bar = sheet.colorbar(shown, ax=axes, label=label, location="top", **shape)
         bar.outline.set_visible(False)
 
     across, up = film.x[-1] - film.x[0], film.y[-1] - film.y[0]
@@ -127,10 +131,10 @@ def _guides(axes: Any, run: Run) -> None:
         if box is not None:
             corners = box.to_earth(half * np.asarray(box.size))
             axes.plot(*corners.T, "--", color="white", linewidth=1.2, zorder=4)
-    for number, gauge in enumerate(run.case.gauge, 1):
+    for place, gauge in enumerate(run.case.gauge, 1):
         dot = {"boxstyle": "circle", "facecolor": "white", "edgecolor": "black", "pad": 0.25}
         at = {"ha": "center", "va": "center", "fontsize": 7, "zorder": 5}
-        axes.text(*gauge.position, str(number), color="black", bbox=dot, **at)
+        axes.text(*gauge.position, str(place), color="black", bbox=dot, **at)
 
 
 def _most(field: Array) -> float:

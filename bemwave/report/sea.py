@@ -8,14 +8,15 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 import numpy.typing as npt
 
-from bemwave.report.content import Block, Figures, Material, Sea, Section, Table, number
+from bemwave.report.content import Block, Figures, Material, Sea, Section, Table
 from bemwave.report.curves import gauge_figures
 from bemwave.report.figures import Figure
 from bemwave.report.film import Film
 from bemwave.report.maps import elevation_maps, height_map, scattered_map
 from bemwave.report.water import water_json
+from bemwave.report.words import number
 
-SEEN = 0.035  # of the water's diagonal: how high a wave should look at first
+SEEN = 0.02  # of the water's diagonal: how high a wave should look at first
 
 
 def sea(material: Material) -> Section:
@@ -74,9 +75,9 @@ def _view_notes(material: Material, film: Film) -> Iterator[str]:
             "Hulls: red under still water, as solved. The grey walls above are only drawn: the "
             "solver knows no shape there."
         )
-    period = material.run.manifest.shortest_period
+    period = material.run.manifest.peak_period
     interval = float(np.diff(film.times).max()) if len(film.times) > 1 else 0.0
-    if interval > period / 6.0:
+    if interval > period / 8.0:
         yield (
             f"Records are {number(interval)} s apart, too far to follow waves of "
             f"{number(period)} s: see the frames as single pictures, and write a smaller "

@@ -6,7 +6,8 @@ import math
 from collections.abc import Iterator
 
 from bemwave.records import Run
-from bemwave.report.content import Block, Material, Section, Source, Table, number
+from bemwave.report.content import Block, Material, Section, Source, Table
+from bemwave.report.words import number
 
 QUESTION = "What was run?"
 
@@ -37,8 +38,8 @@ def _brief(run: Run) -> str:
         waves = f"a regular wave of {number(2 * float(sea.amplitude[0]))} m and {_period(run)} s"
     else:
         waves = (
-            f"{sea.count} incident waves of {number(sea.significant_height)} m significant height "
-            f"and {_period(run)} s at the peak"
+            f"a sea of {number(sea.significant_height)} m significant height and {_period(run)} s "
+            f"at the peak ({sea.count} components)"
         )
     depth = "deep water" if math.isinf(sea.depth) else f"water {sea.depth:g} m deep"
     names = ", ".join(body.name for body in case.body) or "no bodies"
@@ -65,7 +66,7 @@ def _run_rows(material: Material) -> Iterator[tuple[str, str]]:
 def _water_rows(run: Run) -> Iterator[tuple[str, str]]:
     surface, water = run.case.surface, run.case.water
     yield "depth", "deep" if math.isinf(water.depth) else f"{water.depth:g} m"
-    yield "density, gravity", f"{water.density:g} kg/m3, {water.gravity:g} m/s2"
+    yield "density, gravity", f"{water.density:g} kg/m³, {water.gravity:g} m/s²"
     sides = " x ".join(f"{side:g}" for side in surface.extent)
     round_ = surface.outline == "circle"
     yield "useful water", f"circle of {surface.extent[0]:g} m" if round_ else f"{sides} m"
@@ -76,7 +77,8 @@ def _water_rows(run: Run) -> Iterator[tuple[str, str]]:
         walls = ", ".join(f"{axis} = {place:g} m" for axis, place in run.manifest.mirrors)
         yield "edges", f"walls at {walls}; open elsewhere"
     else:
-        yield "edges", "open, with an absorber outside"
+        absorbed = "reflection" in run.manifest.notes
+        yield "edges", "open, with an absorber outside" if absorbed else "open"
     for place, wave in enumerate(run.case.waves, 1):
         given = wave.model_dump(exclude_unset=True, exclude_none=True)
         yield f"waves {place}", ", ".join(f"{key} {value}" for key, value in given.items())

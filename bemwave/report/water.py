@@ -56,14 +56,15 @@ def _body(hull: Hull, film: Film, limit: float, bodies: Bodies | None) -> dict[s
     points, lines = hull.mesh.points, hull.polygons()
     middle = (np.concatenate(lines) if lines else points[:, :2]).mean(axis=0)
     size = float(np.ptp(points[:, :2], axis=0).max())
+    # walls over still water: the solver knows no shape there, so a plain height
+    wall = max(0.08 * size, 1.5 * limit)
     return {
         "name": hull.name,
         "points": packed(points.astype("<f4")),
         "triangles": packed(hull.mesh.flipped().triangles.astype("<u4")),
         "waterlines": [np.round(line, _DIGITS).tolist() for line in lines],
-        # walls over still water: the solver knows no shape there, so a plain height
-        "wall": max(0.08 * size, 1.5 * limit),
-        "label": middle.tolist(),
+        "wall": wall,
+        "label": [*middle.tolist(), wall if lines else float(points[:, 2].max())],
         "poses": None if bodies is None else _poses(hull, bodies, film.times),
     }
 

@@ -51,6 +51,20 @@ def page(finished):
     return write_report(finished)
 
 
+@pytest.fixture(scope="session")
+def sea_alone(tmp_path_factory):
+    """The page of a run in which nothing had to be solved, on round water."""
+    case = bemwave.Case(
+        water={"depth": 10.0},
+        waves=[{"kind": "jonswap", "height": 0.5, "period": 4.0, "components": 30}],
+        surface={"size": 40.0, "spacing": 2.0, "outline": "circle"},
+        run={"duration": 8.0},
+    )
+    folder = tmp_path_factory.mktemp("sea") / "run"
+    bemwave.run(case, folder)
+    return write_report(folder)
+
+
 @pytest.fixture
 def own(finished, tmp_path):
     """A copy of the run folder that a test may change."""

@@ -46,7 +46,7 @@ def browser(needs_browser: None) -> Iterator[Driver]:
 def look(browser: Driver, page: Path) -> Open:
     """Opens the page as a reader with some wishes would see it."""
 
-    def open_page(width: int = 900, **wishes: str) -> Driver:
+    def open_page(width: int = 900, page: Path = page, **wishes: str) -> Driver:
         browser.get_log("browser")
         browser.get_log("performance")
         emulate(browser, width, **wishes)
@@ -114,6 +114,14 @@ def test_no_error_is_told_and_no_request_leaves_the_file(look: Open, page: Path)
     ]
     assert page.as_uri() in asked
     assert all(url == page.as_uri() or url.startswith(("data:", "blob:")) for url in asked)
+
+
+def test_a_sea_without_bodies_and_gauges_is_shown_too(look: Open, sea_alone: Path) -> None:
+    driver = look(page=sea_alone)
+    before = picture(driver)
+    move_slider(driver, "time", 60)
+    assert changed(before, picture(driver)) > 0.05
+    assert [e for e in driver.get_log("browser") if e["level"] == "SEVERE"] == []
 
 
 def test_its_policy_holds_in_the_browser(look: Open) -> None:

@@ -211,19 +211,13 @@ def test_the_page_of_a_run_that_has_only_begun(own: Path) -> None:
     assert "There is no record of it yet." in page.read_text(encoding="utf-8")
 
 
-def test_the_page_of_the_sea_alone(tmp_path: Path) -> None:
-    case = bemwave.Case(
-        water={"depth": 10.0},
-        waves=[{"kind": "jonswap", "height": 0.5, "period": 4.0, "components": 30}],
-        surface={"size": 40.0, "spacing": 2.0, "outline": "circle"},
-        run={"duration": 8.0},
-    )
-    bemwave.run(case, tmp_path / "run")
-    text = write_report(tmp_path / "run").read_text(encoding="utf-8")
+def test_the_page_of_the_sea_alone(sea_alone: Path) -> None:
+    text = sea_alone.read_text(encoding="utf-8")
+    assert "the incident waves are a closed form" in text
     assert "Nothing had to be solved here" in text
     assert "The case asks for no hand-off" in text
     assert "There are no bodies." in text
-    shown = array(water_of(tmp_path / "run" / "report.html")["shown"], "u1")
+    shown = array(water_of(sea_alone)["shown"], "u1")
     assert np.mean(shown) == pytest.approx(np.pi / 4, rel=0.05)  # a circle in its square
 
 

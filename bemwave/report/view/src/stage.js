@@ -38,11 +38,10 @@ export class Stage {
   fill() {
     const { water, world, scene } = this;
     this.surface = new Surface(water);
-    world.add(this.surface.mesh, makeRim(water));
+    const staffs = water.gauges.map(({ place }) => makeStaff(place, 2 * water.limit));
+    const things = [this.surface.mesh, makeRim(water)];
     this.hulls = water.bodies.map(makeHull);
-    const reach = 2 * water.limit;
-    world.add(...this.hulls, ...water.boxes.map(makeBox));
-    world.add(...water.gauges.map(({ place }) => makeStaff(place, reach)));
+    world.add(...things, ...this.hulls, ...water.boxes.map(makeBox), ...staffs);
     const sun = new DirectionalLight(0xffffff, 2.1);
     sun.position.set(-0.6, -0.4, 0.55);
     scene.add(sun, new AmbientLight(0xffffff, 1.5));
@@ -54,8 +53,8 @@ export class Stage {
     const lengths = [x[1] - x[0], y[1] - y[0]].map((side) => `${Number(side.toPrecision(3))} m`);
     labels.add(`x → ${lengths[0]}`, new Vector3((x[0] + x[1]) / 2, y[0], 0), world, "edge");
     labels.add(`y → ${lengths[1]}`, new Vector3(x[1], (y[0] + y[1]) / 2, 0), world, "edge");
-    for (const { name, label, wall } of water.bodies) {
-      labels.add(name, new Vector3(label[0], label[1], wall), world, "body");
+    for (const { name, label } of water.bodies) {
+      labels.add(name, new Vector3(...label), world, "body");
     }
     for (const { name, place } of water.gauges) {
       labels.add(name, new Vector3(place[0], place[1], 2 * water.limit), world, "gauge");
