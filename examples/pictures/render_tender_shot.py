@@ -14,6 +14,7 @@ COLOURS = {"water": (0.008, 0.035, 0.05), "tender": (0.75, 0.2, 0.04), "platform
 
 
 def main(file, picture, frame):
+    """Import the file, light it, look at it, draw it."""
     bpy.ops.wm.read_factory_settings(use_empty=True)
     bpy.ops.wm.usd_import(filepath=file)
     scene = bpy.context.scene
@@ -48,6 +49,7 @@ def main(file, picture, frame):
 
 
 def material(name):
+    """Water that mirrors, hulls that do not."""
     made = bpy.data.materials.new(name)
     made.use_nodes = True
     surface = made.node_tree.nodes["Principled BSDF"].inputs

@@ -36,7 +36,8 @@ def test_the_renderer_has_the_file_s_points_and_draws_water(tmp_path):
     water = [str(tmp_path / f"surface_{k:05d}.ply") for k in (1, 2, 3)]
     seen, picture = tmp_path / "seen.npz", tmp_path / "picture.npy"
     files = [*water, str(tmp_path / "body_block.ply")]
-    subprocess.run([PYTHON, str(SCRIPT), str(seen), str(picture), *files], check=True, timeout=900, capture_output=True)
+    command = [PYTHON, str(SCRIPT), str(seen), str(picture), *files]
+    subprocess.run(command, check=True, timeout=900, capture_output=True)
     measured = np.load(seen)
     for number, time in enumerate(frames.times):
         frame = surface.at(nothing_solved(time))

@@ -87,6 +87,16 @@ MOVED_BY_FILE = SPHERE.replace(
     'attitude = "forced"\nforced = { mode = "heave", amplitude = 0.05, period = 1.8 }',
     'attitude = "motions.csv"',
 )
+MOVED_BY_FILE += """\
+[frames]
+formats = ["usd", "obj", "glb"]
+start = 2.0
+fps = 5
+region = { size = [4.0, 3.0] }
+spacing = 0.25
+horizontal_displacement = true
+shading = true
+"""
 
 SEA_ALONE = """\
 [water]
@@ -108,6 +118,13 @@ name = "box"
 box = { size = [2.0, 2.0], bottom = -1.0, top = 0.5 }
 spacing = 0.5
 every = 0.1
+[frames]
+formats = ["usd", "ply"]
+fps = 5
+end = 3.0
+region = { size = [4.0, 3.0] }
+spacing = 0.1
+displacement_maps = true
 """
 
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
