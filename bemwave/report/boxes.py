@@ -78,7 +78,7 @@ def _facts(
     yield "levels, m", f"{number(levels[0])} to {number(levels[1])}"
     yield "closure", "-" if d.balance is None else percent(_closure(d))
     drift = None if d.balance is None else d.balance.get("level_drift")
-    mean = "-" if drift is None or not len(drift) else f"{1e3 * float(np.mean(drift)):.2g}"
+    mean = "-" if drift is None or not len(drift) else number(1e3 * float(np.mean(drift)), 2)
     yield "drift of the mean level implied, mm/s", mean
     yield "above still water", said.get("crest_rule_meaning", entry.crest)
     yield "shortest period kept, s", _figure(said.get("shortest_period_kept_s"))

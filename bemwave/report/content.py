@@ -8,10 +8,11 @@ from functools import cached_property
 from pathlib import Path
 
 import numpy as np
+import numpy.typing as npt
 
 from bemwave.records import Run
 from bemwave.report.figures import Figure
-from bemwave.report.film import Film, film_of
+from bemwave.report.film import Film, film_of, frame_times
 from bemwave.report.series import Bodies, Delivery, Gauge, bodies_of, deliveries_of, gauges_of
 
 
@@ -63,6 +64,7 @@ class Source:
     kind: str = "source"
 
 
+Array = npt.NDArray[np.float64]
 Block = Table | Figures | Notes | Sea | Source
 
 
@@ -94,8 +96,9 @@ class Material:
 
     @cached_property
     def film(self) -> Film | None:
-        """The surface over time."""
-        return film_of(self.run)
+        """The surface over time; None where there is no record yet."""
+        times = frame_times(self.run.times, self.run.manifest.peak_period)
+        return film_of(self.run, times) if len(times) else None
 
     @cached_property
     def gauges(self) -> list[Gauge]:
@@ -127,9 +130,14 @@ class Material:
         """From when figures are taken, s: the whole record where all of it is start-up."""
         return self.trusted if self.trusted < self.reached else 0.0
 
+    def shown(self, times: Array) -> npt.NDArray[np.bool_]:
+        """Which times of a series figures are taken from: all, where the series ends too early."""
+        late = times >= self.since
+        return late if late.any() else np.ones(len(times), dtype=bool)
+
     @cached_property
     def limit(self) -> float:
         """Largest size of the elevation from then on, m: the end of its colour scale."""
         assert self.film is not None
-        shown = self.film.total[self.film.times >= self.since]
-        return float(np.nanmax(np.abs(shown), initial=0.0)) or self.film.peak
+        late = self.film.total[self.shown(self.film.times)]
+        return float(np.nanmax(np.abs(late), initial=0.0)) or self.film.peak

@@ -74,11 +74,8 @@ class Film:
         return np.asarray(field[..., nearest[0], nearest[1]])
 
 
-def film_of(run: Run) -> Film | None:
-    """Sample a run; None where it has no records yet."""
-    times = frame_times(run.times, run.manifest.peak_period)
-    if not len(times):
-        return None
+def film_of(run: Run, times: Array) -> Film:
+    """Sample a run at times inside its record."""
     x, y = _grid(run)
     plan = np.stack(np.meshgrid(x, y), axis=-1)
     surface = run.case.surface

@@ -27,7 +27,7 @@ def loads(material: Material) -> Section:
     for place, name in enumerate(bodies.names):
         blocks.append(_table(material, bodies, place, name))
         blocks.append(Figures(list(_figures(material, bodies, place, name))))
-    since = bodies.times >= material.since
+    since = material.shown(bodies.times)
     size = np.abs(bodies.forces["force"][since][:, :, :3])
     _, body, mode = np.unravel_index(int(np.nanargmax(size)), size.shape)
     largest = f"{number(float(np.nanmax(size)) / 1e3)} kN"
@@ -45,7 +45,7 @@ def _figures(material: Material, bodies: Bodies, place: int, name: str) -> Itera
 
 
 def _table(material: Material, bodies: Bodies, place: int, name: str) -> Table:
-    since = bodies.times >= material.since
+    since = material.shown(bodies.times)
     force, motion = bodies.forces["force"][since, place], bodies.motion[since, place]
     rows = []
     for mode, label in enumerate(MODES):

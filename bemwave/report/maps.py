@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
@@ -19,19 +19,15 @@ from bemwave.report.words import number
 Array = npt.NDArray[np.float64]
 
 
-def elevation_maps(
-    run: Run, film: Film, times: Sequence[float], limit: float, folder: Path | None
-) -> Iterator[Figure]:
-    """The surface at the frames nearest to given times, all on one scale."""
-    for place, time in enumerate(times, 1):
-        k = int(np.argmin(np.abs(film.times - time)))
-        field, at = film.total[k], film.times[k]
+def elevation_maps(run: Run, film: Film, limit: float, folder: Path | None) -> Iterator[Figure]:
+    """The surface in every frame of a film, all on one scale."""
+    for place, (time, field) in enumerate(zip(film.times, film.total, strict=True), 1):
         yield _map(
             run,
             film,
             field,
             f"elevation-{place}",
-            f"The surface at t = {at:.2f} s.",
+            f"The surface at t = {time:.2f} s.",
             f"Elevations from {number(_least(field), 2)} to {number(_most(field), 2)} m.",
             "elevation, m",
             {"cmap": colour_map(WATER), "vmin": -limit, "vmax": limit},
@@ -56,18 +52,18 @@ def scattered_map(run: Run, film: Film, folder: Path | None) -> Figure:
     )
 
 
-def height_map(run: Run, film: Film, since: float, folder: Path | None) -> Figure:
-    """Height of the waves where they pass: four standard deviations over time, m."""
-    frames = film.total[film.times >= since]
+def height_map(run: Run, film: Film, folder: Path | None) -> Figure:
+    """Height of the waves where they pass: four standard deviations over a film's time, m."""
     field = np.full(film.wet.shape, np.nan)
-    field[film.wet] = 4.0 * frames[:, film.wet].std(axis=0)
+    field[film.wet] = 4.0 * film.total[:, film.wet].std(axis=0)
     return _map(
         run,
         film,
         field,
         "height",
-        f"Height of the waves, four standard deviations from t = {since:.1f} s on: where it is "
-        "rough and where there is shelter. Boxes are dashed, gauges numbered in the case's order.",
+        f"Height of the waves, four standard deviations from t = {film.times[0]:.1f} s on: where "
+        "it is rough and where there is shelter. Boxes are dashed; gauges have the numbers they "
+        "have in the table.",
         f"Heights from {number(_least(field), 2)} to {number(_most(field), 2)} m.",
         "height of the waves, m",
         {"cmap": colour_map(HEIGHT), "vmin": 0.0, "vmax": _most(field) or 1.0},

@@ -60,7 +60,7 @@ def write_report(path: str | os.PathLike[str], times: Sequence[float] = ()) -> P
                 f"{material.reached:g} s: ask for times between"
             )
     folder.mkdir(exist_ok=True)
-    for old in folder.glob("*.png"):
+    for old in folder.glob("elevation-*.png"):  # there may be fewer of them now
         old.unlink()
     write_whole(run.folder.page, _page(material).encode("utf-8"))
     return run.folder.page

@@ -6,12 +6,11 @@ import math
 from collections.abc import Iterator, Sequence
 
 import numpy as np
-import numpy.typing as npt
 
 from bemwave.report.content import Block, Figures, Material, Sea, Section, Table
 from bemwave.report.curves import gauge_figures
 from bemwave.report.figures import Figure
-from bemwave.report.film import Film
+from bemwave.report.film import Film, film_of
 from bemwave.report.maps import elevation_maps, height_map, scattered_map
 from bemwave.report.water import water_json
 from bemwave.report.words import number
@@ -30,21 +29,21 @@ def sea(material: Material) -> Section:
         blocks.append(_gauge_table(material))
         figures = gauge_figures(material.gauges, material.since, material.folder)
         blocks.append(Figures(list(figures)))
-    since = film.times >= material.since
-    crest = float(np.nanmax(film.total[since], initial=0.0))
-    trough = float(np.nanmin(film.total[since], initial=0.0))
+    late = film.after(material.since)
+    crest = float(np.nanmax(late.total, initial=0.0))
+    trough = float(np.nanmin(late.total, initial=0.0))
     short = f"crests to {number(crest, 2)} m"
     answer = (
-        f"From t = {number(material.since)} s on the surface stands between {number(trough, 2)} "
-        f"and {number(crest, 2)} m about still water{_heights(film, since)}."
+        f"From t = {number(float(late.times[0]))} s on the surface stands between "
+        f"{number(trough, 2)} and {number(crest, 2)} m about still water{_heights(late)}."
     )
     return Section("sea", "What does the water do?", short, answer, blocks)
 
 
-def _heights(film: Film, since: npt.NDArray[np.bool_]) -> str:
-    if since.sum() < 3 or not film.wet.any():
+def _heights(film: Film) -> str:
+    if len(film.times) < 3 or not film.wet.any():
         return ""
-    heights = 4.0 * film.total[since][:, film.wet].std(axis=0)
+    heights = 4.0 * film.total[:, film.wet].std(axis=0)
     low, high = np.percentile(heights, [5, 95])
     between = f"{number(float(low), 2)} to {number(float(high), 2)} m"
     return f"; its waves are {between} high in most places"
@@ -70,6 +69,11 @@ def _view_notes(material: Material, film: Film) -> Iterator[str]:
         f"A place every {number(max(film.spacing), 2)} m, of the run's own field. Heights, hulls "
         "too, are drawn as many times too high as the slider says."
     )
+    if film.times[0] > material.run.times[0]:
+        yield (
+            f"The page holds the last {len(film.times)} frames, from t = "
+            f"{number(float(film.times[0]))} s on."
+        )
     if material.run.hulls:
         yield (
             "Hulls: red under still water, as solved. The grey walls above are only drawn: the "
@@ -86,30 +90,26 @@ def _view_notes(material: Material, film: Film) -> Iterator[str]:
 
 
 def _maps(material: Material, film: Film) -> Iterator[Figure]:
-    run, folder = material.run, material.folder
-    yield from elevation_maps(
-        run, film, material.times or _instants(material, film), material.limit, folder
-    )
+    run, folder, late = material.run, material.folder, film.after(material.since)
+    times = np.array(material.times or _instants(late))
+    yield from elevation_maps(run, film_of(run, times), material.limit, folder)
     if run.history is not None:
         yield scattered_map(run, film, folder)
-    if (film.times >= material.since).sum() > 2:
-        yield height_map(run, film, material.since, folder)
+    if len(late.times) > 2:
+        yield height_map(run, late, folder)
 
 
-def _instants(material: Material, film: Film) -> Sequence[float]:
+def _instants(film: Film) -> Sequence[float]:
     """Two times to map: that of the highest crest, and the last."""
-    since = int(np.searchsorted(film.times, material.since - 1e-9))
-    frames = film.total[since:]
-    crests = np.nan_to_num(frames, nan=-math.inf).max(axis=(1, 2))
-    highest = float(film.times[since + int(np.argmax(crests))])
-    last = float(film.times[-1])
+    crests = np.nan_to_num(film.total, nan=-math.inf).max(axis=(1, 2))
+    highest, last = float(film.times[int(np.argmax(crests))]), float(film.times[-1])
     return [last] if highest == last else [highest, last]
 
 
 def _gauge_table(material: Material) -> Table:
     rows = []
     for position, gauge in enumerate(material.gauges, 1):
-        since = gauge.times >= material.since
+        since = material.shown(gauge.times)
         level, incident, gap = gauge.elevation[since], gauge.incident[since], gauge.gap[since]
         dry = not np.isfinite(level).any()
         figures = (

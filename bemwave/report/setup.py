@@ -57,7 +57,8 @@ def _run_rows(material: Material) -> Iterator[tuple[str, str]]:
     yield "route", f"{manifest.route} ({manifest.reason})"
     yield "reached, s", f"{number(material.reached, 4)} of {settings.duration:g}"
     yield "records", f"{len(run.times)}, every {settings.record_every:g} s"
-    yield "triangles", str(len(run.mesh.triangles)) if run.history is not None else "none needed"
+    if manifest.route == "panels" and run.history is not None:
+        yield "triangles", str(len(run.mesh.triangles))
     yield "started, ended", f"{manifest.started}, {manifest.ended or 'not yet'}"
     yield "threads", str(manifest.threads)
     yield "versions", ", ".join(f"{name} {text}" for name, text in manifest.versions.items())

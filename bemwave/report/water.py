@@ -20,7 +20,7 @@ from bemwave.report.colours import WATER, table
 from bemwave.report.film import Film
 from bemwave.report.series import Bodies
 
-LEVELS = 4096  # of the elevation, from 0 to the peak
+LEVELS = 2048  # of the elevation, from 0 to the peak
 _DIGITS = 4
 
 
