@@ -8,8 +8,8 @@ from pathlib import Path
 import numpy as np
 
 from bemwave.frames.sheet import Array, Bools
-from bemwave.geometry.pyvista_files import save
 from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.vtp_files import save
 
 
 def write_vtp(

@@ -8,7 +8,7 @@
 | .ply | meshio | no | float64 |
 | .vtu | meshio | in the name of the cell array | float64 |
 | .msh | meshio | physical groups | float64 |
-| .vtp | pyvista | field data | float64 |
+| .vtp | vtk | field data | float64 |
 """
 
 from __future__ import annotations
@@ -24,7 +24,8 @@ from typing import TypeVar
 import numpy as np
 
 from bemwave.errors import BemwaveError, InputError
-from bemwave.geometry import meshio_files, pyvista_files, text_files
+from bemwave.geometry import meshio_files, text_files, vtp_files
+from bemwave.geometry.strangers import memory_bounded, refuse_hostile
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
 _READERS: dict[str, Callable[[Path], SurfaceMesh]] = {
@@ -33,7 +34,7 @@ _READERS: dict[str, Callable[[Path], SurfaceMesh]] = {
     ".ply": meshio_files.read_ply,
     ".vtu": meshio_files.read_vtu,
     ".msh": meshio_files.read_msh,
-    ".vtp": pyvista_files.read_vtp,
+    ".vtp": vtp_files.read_vtp,
 }
 _WRITERS: dict[str, Callable[[SurfaceMesh, Path], None]] = {
     ".stl": meshio_files.write_stl,
@@ -41,7 +42,7 @@ _WRITERS: dict[str, Callable[[SurfaceMesh, Path], None]] = {
     ".ply": meshio_files.write_ply,
     ".vtu": meshio_files.write_vtu,
     ".msh": meshio_files.write_msh,
-    ".vtp": pyvista_files.write_vtp,
+    ".vtp": vtp_files.write_vtp,
 }
 FORMATS = tuple(_READERS)
 
@@ -76,7 +77,12 @@ def read_mesh(path: str | os.PathLike[str]) -> SurfaceMesh:
         raise InputError(f"{path}: there is no such mesh file; check the name and the folder")
     if path.stat().st_size == 0:
         raise InputError(f"{path} is empty; a mesh was expected")
-    with _contained(f"{path} cannot be read as {path.suffix.lower()}", "write it out again"):
+    refuse_hostile(path)
+    advice = "write it out again"
+    with (
+        memory_bounded(path),
+        _contained(f"{path} cannot be read as {path.suffix.lower()}", advice),
+    ):
         mesh = reader(path)
     if not len(mesh.triangles):
         raise InputError(f"{path} holds no triangles; a surface mesh was expected")

@@ -16,6 +16,8 @@ UNNAMED = "unnamed"  # the only part of a mesh whose file names none
 
 _FLAT = ("triangle", "quad", "polygon")
 _IGNORED = ("vertex", "line")
+_LONGEST_HEADER = 10_000  # bytes, of a PLY
+_END_OF_HEADER = re.compile(rb"(?m)^[ \t]*end_header[ \t\r]*$")
 _TABLE = "part:"  # start of the name of the cell array that carries the parts in a .vtu
 
 
@@ -39,9 +41,15 @@ def read_ply(path: Path) -> SurfaceMesh:
     import meshio
 
     with path.open("rb") as file:
-        header = file.read(10_000).split(b"end_header")[0]
+        start = file.read(_LONGEST_HEADER)
+    end = _END_OF_HEADER.search(start)
+    if end is None:  # the library would look for it for ever
+        raise InputError(
+            f"{path} has no line 'end_header' in its first {_LONGEST_HEADER} bytes: it is cut off "
+            "or damaged; write it out again"
+        )
     size = path.stat().st_size
-    for count in map(int, re.findall(rb"element \w+ (\d+)", header)):
+    for count in map(int, re.findall(rb"element\s+\w+\s+(\d+)", start[: end.start()])):
         if count > size:  # the library would count to there
             raise InputError(
                 f"{path} announces {count} elements in {size} bytes: it is cut off or damaged; "

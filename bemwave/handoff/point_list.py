@@ -10,6 +10,8 @@ import numpy as np
 from bemwave.case import Case
 from bemwave.case.output import Handoff as Entry
 from bemwave.errors import InputError
+from bemwave.geometry.strangers import refuse_hostile
+from bemwave.geometry.vtp_files import read_vtk_points
 from bemwave.handoff.box import Array, PointSet, free_points
 
 HEADER = "x,y,z"
@@ -84,11 +86,10 @@ def _from_csv(path: Path) -> Array:
 
 
 def _from_vtk(path: Path) -> Array:
-    import pyvista
-
+    refuse_hostile(path)
     try:
-        return np.array(pyvista.read(path).points, dtype=np.float64)
-    except Exception as error:  # VTK's readers raise whatever they meet
+        return read_vtk_points(path)
+    except ValueError as error:
         raise InputError(
             f"{path} could not be read ({error}); expected a VTK file with points"
         ) from error

@@ -20,7 +20,7 @@ from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.errors import InputError, RunError
 from bemwave.flow.state import SurfaceState
-from bemwave.geometry.pyvista_files import write_vtp
+from bemwave.geometry.vtp_files import write_vtp
 from bemwave.records import (
     Manifest,
     Rest,

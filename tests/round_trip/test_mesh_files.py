@@ -148,7 +148,7 @@ BAD = {
     "nonsense.obj": (b"\xff\xfe\x00nonsense", "cannot be read|no triangles"),
     "huge.ply": (ply(3, 4_000_000_000), "announces 4000000000 elements"),
     "cut.ply": (ply(30, 10), "cannot be read as .ply"),
-    "nonsense.ply": (b"nonsense", "cannot be read as .ply"),
+    "nonsense.ply": (b"nonsense", "has no line 'end_header'"),
     "nonsense.vtu": (b"<VTKFile><no", "cannot be read as .vtu"),
     "nonsense.vtp": (b"<VTKFile><no", "cannot be read|no triangles"),
     "nonsense.msh": (b"$MeshFormat\n9.9 0 8\n", "cannot be read as .msh"),
