@@ -23,6 +23,13 @@ _SAID = {
 }
 
 
+_STATUS = {
+    "running": "is still going,",
+    "interrupted": "was interrupted",
+    "failed": "stopped with an error",
+}
+
+
 def trust(material: Material) -> Section:
     """The section on trust."""
     verdicts = _verdicts(material)
@@ -67,8 +74,9 @@ def _answer(material: Material, verdicts: Sequence[Verdict]) -> tuple[str, str]:
     if material.run.manifest.status == "finished":
         return "not judged", "It has not been judged: `bemwave check` gives the verdicts."
     return "not judged yet", (
-        f"Not yet: the run is {material.run.manifest.status} at t = {number(material.reached)} s "
-        f"of {material.run.case.run.duration:g} s, and verdicts are given at its end."
+        f"Not yet: the run {_STATUS[material.run.manifest.status]} at t = "
+        f"{number(material.reached)} s of {material.run.case.run.duration:g} s, and verdicts are "
+        "given at its end."
     )
 
 

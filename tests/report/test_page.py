@@ -21,6 +21,7 @@ import bemwave
 from bemwave.cli import status_of
 from bemwave.handoff.netcdf import WRITTEN
 from bemwave.records import read_manifest, write_manifest
+from bemwave.records.manifest import Status
 from bemwave.report import write_report
 
 VOID = {"meta", "link", "input", "br", "img", "hr"}
@@ -182,7 +183,7 @@ def test_what_cannot_be_made_is_refused(own: Path, capsys: pytest.CaptureFixture
     assert not (own / "report.html").exists()
 
 
-def half_way(folder: Path, share: float) -> None:
+def half_way(folder: Path, share: float, status: Status = "interrupted") -> None:
     """Leave a run as an interruption would: later records not written, no verdicts."""
     for path in [*folder.glob("*.nc"), *folder.glob("handoff/*.nc")]:
         with netCDF4.Dataset(path, "a") as file:
@@ -190,25 +191,28 @@ def half_way(folder: Path, share: float) -> None:
                 file[WRITTEN][int(share * len(file.dimensions["time"])) :] = 0
     (folder / "checks.json").unlink()
     manifest = folder / "manifest.json"
-    write_manifest(read_manifest(manifest).with_status("interrupted"), manifest)
+    write_manifest(read_manifest(manifest).with_status(status), manifest)
 
 
 def test_the_page_of_an_interrupted_run_says_so(own: Path) -> None:
     half_way(own, 0.5)
     text = write_report(own).read_text(encoding="utf-8")
-    assert "the run is interrupted at t = 2.90 s of 6 s" in text
+    assert "the run was interrupted at t = 2.90 s of 6 s" in text
     assert "not judged yet" in text
     assert "its first instant is still to come" not in text  # half its instants are there
     assert len(water_of(own / "report.html")["times"]) >= 15
 
 
 def test_the_page_of_a_run_that_has_only_begun(own: Path) -> None:
-    half_way(own, 0.0)
+    half_way(own, 0.0, "running")
     page = write_report(own)
     reader = read(page)
     assert reader.of("canvas") == []
     assert len(reader.of("script")) == 0
-    assert "There is no record of it yet." in page.read_text(encoding="utf-8")
+    text = page.read_text(encoding="utf-8")
+    assert "There is no record of it yet." in text
+    assert "the run is still going, at t = 0 s of 6 s" in text
+    assert "its first instant is still to come" in text
 
 
 def test_the_page_of_the_sea_alone(sea_alone: Path) -> None:
