@@ -55,9 +55,10 @@ spacing = [1.0, 0.5]            # horizontal, vertical
 start = 18.0                    # when the waves round the barge have settled: see the plan
 
 [frames]                        # the water's surface as meshes for a renderer: case-run/frames/
-formats = ["vtk"]               # "vtk" for a viewer, "ply" for a renderer
+formats = ["vtk"]               # "vtk" for a viewer; "usd", "ply" or "obj" for a renderer
 fps = 10
 start = 18.0
+region = { size = [24.0, 18.0] }
 spacing = 0.5                   # may be finer than the panels: the incident waves are exact
 """
 

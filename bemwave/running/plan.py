@@ -10,9 +10,11 @@ from pathlib import Path
 import numpy as np
 
 from bemwave.case import Case
+from bemwave.frames import frame_times
 from bemwave.running.budget import GIGABYTE, budget, memory_allowed
 from bemwave.running.driving import start_up
 from bemwave.running.forecast import forecasts, trustworthy_from
+from bemwave.running.frames_output import note_on
 from bemwave.running.outputs import dry_places
 from bemwave.running.sampling import refuse_unfit, sampling_memory, sampling_seconds
 from bemwave.running.sea import PANELS_PER_WAVELENGTH, length_of_period
@@ -37,7 +39,7 @@ def plan(case: Case, *, picture: str | os.PathLike[str] | None = None) -> str:
     refuse_unfit(surveyed)
     lines = [
         (label, text)
-        for section in (_route, _water, _sea, _bodies, _panels, _times, _places, _cost)
+        for section in (_route, _water, _sea, _bodies, _panels, _times, _places, _frames, _cost)
         for label, text in section(surveyed)
     ]
     if picture is not None:
@@ -154,6 +156,14 @@ def _places(s: Survey) -> _Lines:
     for gauge, inside in zip(gauges, dry, strict=True):
         if inside:
             yield f"gauge {gauge.name}", "lies on or inside a waterline: it will read NaN"
+
+
+def _frames(s: Survey) -> _Lines:
+    entry = s.case.frames
+    if entry is not None:
+        yield "frames", f"{len(frame_times(entry))} from t = {entry.start:g} s; {note_on(s)}"
+        if s.mesh is not None and entry.start < trustworthy_from(s):
+            yield "", "they start before the solved waves can be trusted"
 
 
 def _cost(s: Survey) -> _Lines:

@@ -24,6 +24,9 @@ MOST_POINTS = 5_000_000  # of a hand-off or a frame; more is a slip of the pen
 _INFLUENCE = 1.2e-7  # s, of a triangle on velocity and pressure at a point, each image
 _COMPONENT = 2e-8  # s, of a component of the sea at a point and instant
 _BANDWIDTH = 1e10  # bytes a second
+_FIT = 1e-4  # s, of the surface's fit at a place
+_FIT_BYTES = 2600.0  # of its maps, which stay
+_FRAME = 1e-6  # s, of a vertex of one frame: the sea's transform and the writing
 
 _FIELDS = 3  # of the sea whose factors are kept at a hand-off's points
 _SEA_KEPT = 2.0**30  # bytes, at most, by `waves.SeaAtPoints`
@@ -37,7 +40,7 @@ class Sampled:
     points: int
     instants: int
     spacing: float
-    inside: bool
+    inside: bool  # points in the water, not places on its surface
 
 
 def refuse_unfit(survey: Survey) -> None:
@@ -55,7 +58,7 @@ def refuse_unfit(survey: Survey) -> None:
     sampling, allowed = sampling_memory(survey), memory_allowed(survey)
     needed = memory_of(survey)[2] + sampling
     if needed > allowed:
-        most = max(asked, key=lambda one: one.points * one.inside)
+        most = max(asked, key=lambda one: one.points * (_row(survey) if one.inside else _FIT_BYTES))
         raise InputError(
             f"{needed / GIGABYTE:.1f} GB are needed, {sampling / GIGABYTE:.1f} GB of them to "
             f"sample; expected at most {allowed / GIGABYTE:.1f} GB: {most.where} makes "
@@ -64,11 +67,14 @@ def refuse_unfit(survey: Survey) -> None:
 
 
 def sampling_memory(survey: Survey) -> float:
-    """Memory for the linear maps to all points inside the water, and for the sea there [bytes]."""
+    """Memory for the linear maps to all points and places, and for the sea in the water [bytes]."""
     needed = 0.0
     for one in sampled(survey):
-        needed += min(_FIELDS * 16.0 * survey.sea.count * one.points, _SEA_KEPT)
-        needed += one.points * _row(survey) * one.inside
+        if one.inside:
+            needed += min(_FIELDS * 16.0 * survey.sea.count * one.points, _SEA_KEPT)
+            needed += one.points * _row(survey)
+        elif survey.mesh is not None:
+            needed += one.points * _FIT_BYTES
     return needed
 
 
@@ -79,8 +85,12 @@ def sampling_seconds(survey: Survey) -> float:
     maps = _INFLUENCE * triangles * images / get_num_threads()
     seconds = 0.0
     for one in sampled(survey):
-        use = _COMPONENT * survey.sea.count + one.inside * _row(survey) / _BANDWIDTH
-        seconds += one.points * (one.inside * maps + one.instants * use)
+        if one.inside:
+            use = _COMPONENT * survey.sea.count + _row(survey) / _BANDWIDTH
+            seconds += one.points * (maps + one.instants * use)
+        else:
+            fit = 0.0 if survey.mesh is None else _FIT
+            seconds += one.points * (fit + one.instants * (_FRAME + fit * 1e-2))
     return seconds
 
 
