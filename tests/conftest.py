@@ -28,7 +28,7 @@ def needs_browser():
     """For tests of the page in a browser: skipped without Chromium, a failure in CI."""
     missing = [name for name in ("chromium", "chromedriver") if shutil.which(name) is None]
     told = (
-        f"{' and '.join(missing)} not found; on Debian and Ubuntu: "
+        f"{' and '.join(missing)} not found; on Debian: "
         "apt-get install -y --no-install-recommends chromium chromium-driver"
     )
     if missing and os.environ.get("CI"):
