@@ -7,8 +7,8 @@ wavenumbers. The sea's part is summed in closed form. The solved part's elevatio
 over the solved water, inside waterlines that of the nearest waterline point, and P is found there
 by cosine transform: exact for waves that have left the hulls, an approximation close to them.
 
-At hulls the part normal to the waterline is tapered to zero, and all of it is limited so that the
-drawn surface nowhere folds. Rates are those of what is drawn.
+It is tapered to zero at hulls, and limited so that the drawn surface nowhere folds. Rates are those
+of what is drawn.
 """
 
 from __future__ import annotations
@@ -120,7 +120,7 @@ class Crests:
     sheet : Sheet
     waterlines : sequence of (k, 2) arrays
     width : float
-        m from a waterline over which the normal part comes up.
+        m from a waterline over which it comes up.
     solved : SolvedShift, optional
         At the sheet's vertices.
     """
@@ -149,31 +149,27 @@ class Crests:
 
 
 class _Taper:
-    """Takes out what goes through waterlines near them, and inside waterlines all of that."""
+    """Brings a displacement to zero towards waterlines; inside them it is zero.
+
+    Nothing then goes through a hull. What goes along it is taken out too: cut off between two
+    vertices, it would fold the triangles that lie across the waterline.
+    """
 
     def __init__(self, sheet: Sheet, waterlines: Sequence[Array], width: float) -> None:
         plan = sheet.mesh.points[:, :2]
+        self._share = np.ones((len(plan), 1))
         near = np.zeros(len(plan), dtype=bool)
         for loop in waterlines:
             low, high = loop.min(axis=0) - width, loop.max(axis=0) + width
             near |= np.all((plan >= low) & (plan <= high), axis=1)
-        self._rows = np.flatnonzero(near)
-        if not len(self._rows):
-            return
-        away = plan[self._rows] - nearest_on(waterlines, plan[self._rows])
-        distance = np.linalg.norm(away, axis=1)
-        self._normal = away / np.maximum(distance, 1e-9)[:, None]
-        share = np.clip(distance / width, 0.0, 1.0)
-        share[sheet.under_hull[self._rows]] = 0.0
-        self._taken = 1.0 - share**2 * (3.0 - 2.0 * share)
+        if near.any():
+            away = plan[near] - nearest_on(waterlines, plan[near])
+            share = np.clip(np.linalg.norm(away, axis=1) / width, 0.0, 1.0)
+            self._share[near, 0] = share**2 * (3.0 - 2.0 * share)
+        self._share[sheet.under_hull] = 0.0
 
     def __call__(self, vectors: Array) -> Array:
-        if not len(self._rows):
-            return vectors
-        result = vectors.copy()
-        through = np.sum(vectors[self._rows] * self._normal, axis=1) * self._taken
-        result[self._rows] -= through[:, None] * self._normal
-        return result
+        return np.asarray(self._share * vectors)
 
 
 class _Limit:

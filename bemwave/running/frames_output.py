@@ -34,7 +34,7 @@ from bemwave.waves import Sea
 
 Array = npt.NDArray[np.float64]
 
-TAPER_CELLS = 4  # squares over which displacement through a waterline comes up
+TAPER_CELLS = 4  # squares from a waterline over which displacement comes up
 
 
 class FramesOutput:
