@@ -18,6 +18,7 @@ import numpy as np
 import pytest
 
 import bemwave
+from bemwave import report
 from bemwave.cli import status_of
 from bemwave.handoff.netcdf import WRITTEN
 from bemwave.records import read_manifest, write_manifest
@@ -235,3 +236,12 @@ def test_two_hundred_records_take_no_longer_than_twenty_seconds(tmp_path: Path) 
     page = write_report(tmp_path / "run")
     assert time.perf_counter() - begun < 20.0
     assert page.stat().st_size < 10e6
+
+
+def test_the_bundle_is_that_of_its_sources() -> None:
+    view = Path(report.__file__).parent / "view"
+    digest = hashlib.sha256()
+    for source in [*sorted((view / "src").iterdir()), view / "package-lock.json"]:
+        digest.update(source.read_bytes())
+    first = (view / "view.js").read_text(encoding="utf-8").splitlines()[0]
+    assert first == f"// sources {digest.hexdigest()}", "npm ci && npm run build there"

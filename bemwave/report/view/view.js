@@ -1,3 +1,4 @@
+// sources b6b9b30eb6c98ebd758762f4a87442047e9f2a0d4fc08552b2d08cf5cc068196
 (()=>{async function $i(i,t){let e=Uint8Array.from(atob(i),s=>s.charCodeAt(0)),n=new Blob([e]).stream().pipeThrough(new DecompressionStream("deflate"));return new t(await new Response(n).arrayBuffer())}async function rc(i){let t=JSON.parse(i);t.heights=await $i(t.heights,Int16Array),Cu(t.heights,t.nx),t.shown=await $i(t.shown,Uint8Array),t.colours=await $i(t.colours,Uint8Array);for(let e of t.bodies)e.points=await $i(e.points,Float32Array),e.triangles=await $i(e.triangles,Uint32Array);return t}function Cu(i,t){for(let e=0;e<i.length;e+=1)e%t&&(i[e]+=i[e-1])}/**
  * @license
  * Copyright 2010-2026 Three.js Authors
