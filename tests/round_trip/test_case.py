@@ -150,7 +150,19 @@ def cases(draw: st.DrawFn) -> dict[str, Any]:
         tables["title"] = draw(word)
     if draw(st.booleans()):
         tables["frames"] = draw(
-            st.fixed_dictionaries({}, optional={"fps": above_0, "formats": st.just(["ply"])})
+            st.fixed_dictionaries(
+                {},
+                optional={
+                    "fps": above_0,
+                    "formats": st.lists(
+                        st.sampled_from(["usd", "ply", "obj", "vtk", "glb"]), min_size=1
+                    ),
+                    "detail": st.booleans(),
+                    "shading": st.booleans(),
+                    "horizontal_displacement": st.booleans(),
+                    "loop": above_0,
+                },
+            )
         )
     return tables
 
