@@ -1,4 +1,4 @@
-"""Files from strangers: what a mesh library must never be given, and how much memory it may take."""
+"""Files from strangers: what a mesh library is never given, and how much memory it may take."""
 
 from __future__ import annotations
 
@@ -14,7 +14,7 @@ MOST_BYTES = 2_000_000_000  # of a file; a hull of a million triangles has a hun
 _XML = (".vtu", ".vtp")
 _MOST_COUNTED = 50_000_000  # points or cells; far more than can be solved
 _MOST_FOLDED = 1100  # a byte of a compressed file stands for no more (zlib)
-_MEMORY = 2_000_000_000, 60  # bytes, and for each byte of the file
+_MEMORY = 1_000_000_000, 60  # bytes, and for each byte of the file
 
 
 def refuse_hostile(path: Path) -> None:
@@ -28,8 +28,8 @@ def refuse_hostile(path: Path) -> None:
     size = path.stat().st_size
     if size > MOST_BYTES:
         raise InputError(
-            f"{path} has {size / 1e9:.1f} GB; expected a mesh of at most {MOST_BYTES / 1e9:.0f} GB: "
-            "thin it out in a mesh program first"
+            f"{path} has {size / 1e9:.1f} GB; expected a mesh of at most "
+            f"{MOST_BYTES / 1e9:.0f} GB: thin it out in a mesh program first"
         )
     if path.suffix.lower() in _XML:
         _refuse_hostile_xml(path, size)

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 import numpy.typing as npt
-from numba import njit, prange
+from numba import prange
+
+from bemwave.kernels.compiling import njit
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]

@@ -24,7 +24,9 @@ from typing import Any
 
 import numpy as np
 import numpy.typing as npt
-from numba import njit, prange
+from numba import prange
+
+from bemwave.kernels.compiling import njit
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]

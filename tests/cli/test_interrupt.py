@@ -30,6 +30,28 @@ record_every = 0.1
 """
 
 
+BUOY = """\
+[water]
+depth = 4.0
+[[waves]]
+kind = "regular"
+height = 0.05
+period = 2.0
+[surface]
+size = [8.0, 5.0]
+spacing = 0.8
+absorber = 3.0
+[[body]]
+name = "buoy"
+form = "cylinder"
+radius = 0.6
+draught = 0.8
+panel_size = 0.4
+[run]
+duration = 2000.0
+"""
+
+
 def start(*arguments: str, cwd: Path) -> subprocess.Popen[str]:
     environment = {**os.environ, "PYTHONPATH": str(Path(cli.__file__).parents[1])}
     # a shell's background jobs ignore Ctrl-C, and hand that on to what they start
@@ -70,6 +92,42 @@ def test_a_signal_leaves_a_run_that_goes_on(number: signal.Signals, tmp_path: Pa
     running.send_signal(number)
     assert running.wait(timeout=60) == 130
     running.communicate()
+
+
+@pytest.mark.usefixtures("needs_gmsh")
+@pytest.mark.parametrize(
+    "number", [signal.SIGINT, pytest.param(signal.SIGTERM, marks=pytest.mark.slow)]
+)
+def test_a_signal_right_after_the_mesher_ran(number: signal.Signals, tmp_path: Path) -> None:
+    (tmp_path / "buoy.toml").write_text(BUOY)
+    running = start("run", "buoy.toml", cwd=tmp_path)
+    wait_for(tmp_path / "buoy-run" / "log.txt", "route panels")
+    sent = time.monotonic()
+    running.send_signal(number)
+    _, complained = running.communicate(timeout=60)
+    assert time.monotonic() - sent < 5.0
+    assert running.returncode == 130
+    assert complained == "error: interrupted; go on with: bemwave run buoy.toml --resume\n"
+    assert open_run(tmp_path / "buoy-run").manifest.status == "interrupted"
+    assert list((tmp_path / "buoy-run" / "checkpoint").iterdir())
+
+
+@pytest.mark.usefixtures("needs_gmsh")
+@pytest.mark.parametrize(
+    "delay", [2.0, *(pytest.param(s, marks=pytest.mark.slow) for s in (0.5, 3))]
+)
+def test_a_signal_while_it_is_set_up_leaves_nothing(delay: float, tmp_path: Path) -> None:
+    (tmp_path / "buoy.toml").write_text(BUOY)
+    running = start("run", "buoy.toml", cwd=tmp_path)
+    time.sleep(delay)
+    sent = time.monotonic()
+    running.send_signal(signal.SIGTERM)
+    _, complained = running.communicate(timeout=60)
+    assert time.monotonic() - sent < 5.0
+    # the interpreter itself ends so while it starts, before there is a command to interrupt
+    assert running.returncode in (130, -signal.SIGTERM, -signal.SIGINT)
+    assert running.returncode != 130 or complained.startswith("error: interrupted")
+    assert "Traceback" not in complained
 
 
 def test_a_killed_run_leaves_readable_files(tmp_path: Path) -> None:
