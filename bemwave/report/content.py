@@ -86,12 +86,12 @@ class Material:
     Attributes
     ----------
     run : the run.
-    folder : where figures also go as PNG.
+    folder : where figures go as PNG.
     times : s, chosen for the elevation maps; none chosen, none here.
     """
 
     run: Run
-    folder: Path | None
+    folder: Path
     times: Sequence[float] = ()
 
     @cached_property

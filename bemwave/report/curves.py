@@ -28,7 +28,7 @@ _FORCE_NAMES = {
 }
 
 
-def ledger_figure(ledger: Ledger, folder: Path | None) -> Figure:
+def ledger_figure(ledger: Ledger, folder: Path) -> Figure:
     """Energy of the solved waves: put in, still there, taken by the absorber, missing."""
     times, missing = ledger.times, 100.0 * ledger.missing
     scale, unit = _scale(float(max(ledger.came_in.max(), ledger.energy.max())), "J")
@@ -54,13 +54,13 @@ def ledger_figure(ledger: Ledger, folder: Path | None) -> Figure:
     )
 
 
-def gauge_figures(gauges: Sequence[Gauge], since: float, folder: Path | None) -> Iterator[Figure]:
+def gauge_figures(gauges: Sequence[Gauge], since: float, folder: Path) -> Iterator[Figure]:
     """Levels at gauges, and of the incident waves alone; a few gauges under each other."""
     for start in range(0, len(gauges), GAUGES_TOGETHER):
         yield _gauges(start, gauges[start : start + GAUGES_TOGETHER], since, folder)
 
 
-def _gauges(start: int, gauges: Sequence[Gauge], since: float, folder: Path | None) -> Figure:
+def _gauges(start: int, gauges: Sequence[Gauge], since: float, folder: Path) -> Figure:
     def draw(sheet: Any) -> None:
         rows = sheet.subplots(len(gauges), 1, sharex=True, sharey=True, squeeze=False)[:, 0]
         for position, (axes, gauge) in enumerate(zip(rows, gauges, strict=True), start + 1):
@@ -83,7 +83,7 @@ def _gauges(start: int, gauges: Sequence[Gauge], since: float, folder: Path | No
 
 
 def load_figures(
-    number: int, name: str, bodies: Bodies, since: float, folder: Path | None
+    number: int, name: str, bodies: Bodies, since: float, folder: Path
 ) -> Iterator[Figure]:
     """Forces and moments on one body."""
     parts = {key: values[:, number] for key, values in bodies.forces.items() if key in _FORCE_NAMES}
@@ -105,7 +105,7 @@ def load_figures(
 
 
 def motion_figures(
-    number: int, name: str, bodies: Bodies, since: float, folder: Path | None
+    number: int, name: str, bodies: Bodies, since: float, folder: Path
 ) -> Iterator[Figure]:
     """Motions of one body, where it moves."""
     motion = bodies.motion[:, number]
@@ -130,7 +130,7 @@ def _three(
     rows: Mapping[str, Array],
     labels: Sequence[str],
     since: float,
-    folder: Path | None,
+    folder: Path,
 ) -> Figure:
     """Three rows over one time axis, each with the same lines."""
 
@@ -151,7 +151,7 @@ def _three(
     return drawn(name, caption, "The largest values are in the table.", draw, folder, 4.2)
 
 
-def balance_figure(delivery: Delivery, folder: Path | None) -> Figure:
+def balance_figure(delivery: Delivery, folder: Path) -> Figure:
     """What flows out of a box, and how its volume grows: they must add up to nothing."""
     assert delivery.balance is not None
     flux, rate = delivery.balance["net_flux"], delivery.balance["volume_rate"]
@@ -178,7 +178,7 @@ def balance_figure(delivery: Delivery, folder: Path | None) -> Figure:
     )
 
 
-def delivery_figure(delivery: Delivery, folder: Path | None) -> Figure:
+def delivery_figure(delivery: Delivery, folder: Path) -> Figure:
     """How fast the water is at a hand-off, and between which levels it stands."""
 
     def draw(sheet: Any) -> None:

@@ -117,7 +117,7 @@ def _distance_from_bodies(run: Run, film: Film) -> Array:
     return distance
 
 
-def dispersion_figure(run: Run, bands: Sequence[Measured], folder: Path | None) -> Figure:
+def dispersion_figure(run: Run, bands: Sequence[Measured], folder: Path) -> Figure:
     """Measured frequencies and wavenumbers over the curve of linear theory."""
     worst = max(abs(band.error) for band in bands)
     count = "one band" if len(bands) == 1 else f"{len(bands)} bands"

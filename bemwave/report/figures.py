@@ -54,7 +54,7 @@ def drawn(
     caption: str,
     told: str,
     draw: Callable[[Any], None],
-    folder: Path | None,
+    folder: Path,
     height: float = 2.6,
 ) -> Figure:
     """Draw a figure.
@@ -63,14 +63,14 @@ def drawn(
     ----------
     name : letters, digits, - and _.
     draw : takes a matplotlib Figure and fills it.
-    folder : where NAME.png goes; None for no file.
+    folder : where NAME.png goes.
     height : inches.
     """
-    from matplotlib import rc_context
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure as Sheet
+    from matplotlib.style import context
 
-    with rc_context(_style(name)):
+    with context(["default", _style(name)]):  # whatever the reader's own settings are
         sheet = Sheet(figsize=(WIDTH, height), layout="constrained")
         FigureCanvasAgg(sheet)
         sheet.patch.set_alpha(0.0)
@@ -80,8 +80,7 @@ def drawn(
         text = io.StringIO()
         sheet.savefig(text, format="svg", dpi=130, metadata={"Date": None, "Creator": None})
         sheet.set_layout_engine("none")  # it stays as it was just laid out
-        if folder is not None:
-            sheet.savefig(folder / f"{name}.png", dpi=150, facecolor="white")
+        sheet.savefig(folder / f"{name}.png", dpi=150, facecolor="white")
     return Figure(name, caption, told, themed(text.getvalue(), name))
 
 

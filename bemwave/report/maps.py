@@ -19,7 +19,7 @@ from bemwave.report.words import number
 Array = npt.NDArray[np.float64]
 
 
-def elevation_maps(run: Run, film: Film, limit: float, folder: Path | None) -> Iterator[Figure]:
+def elevation_maps(run: Run, film: Film, limit: float, folder: Path) -> Iterator[Figure]:
     """The surface in every frame of a film, all on one scale."""
     for place, (time, field) in enumerate(zip(film.times, film.total, strict=True), 1):
         yield _map(
@@ -35,7 +35,7 @@ def elevation_maps(run: Run, film: Film, limit: float, folder: Path | None) -> I
         )
 
 
-def scattered_map(run: Run, film: Film, folder: Path | None) -> Figure:
+def scattered_map(run: Run, film: Film, folder: Path) -> Figure:
     """What is solved: the surface at the last frame without the incident waves."""
     field = film.scattered[-1]
     reach = float(np.nanmax(np.abs(field), initial=0.0)) or 1.0
@@ -52,7 +52,7 @@ def scattered_map(run: Run, film: Film, folder: Path | None) -> Figure:
     )
 
 
-def height_map(run: Run, film: Film, folder: Path | None) -> Figure:
+def height_map(run: Run, film: Film, folder: Path) -> Figure:
     """Height of the waves where they pass: four standard deviations over a film's time, m."""
     field = np.full(film.wet.shape, np.nan)
     field[film.wet] = 4.0 * film.total[:, film.wet].std(axis=0)
@@ -81,7 +81,7 @@ def _map(
     told: str,
     label: str,
     colours: dict[str, Any],
-    folder: Path | None,
+    folder: Path,
     guides: bool = False,
 ) -> Figure:
     from matplotlib.ticker import MaxNLocator

@@ -65,7 +65,8 @@ class Delivery:
     name : of the hand-off.
     times : (n,) s.
     points, columns : counts.
-    net_flux, volume_rate, largest_face_flux, level_drift : (n,), None for a list of points.
+    balance : net_flux, volume_rate, largest_face_flux and level_drift, (n,) each; None for a
+        list of points.
     seen : (k,) times at which fields were read.
     fastest, pressure : (k,) largest speed, m/s, and dynamic pressure in size, Pa.
     lowest, highest : (k,) of the surface, m.
