@@ -1,10 +1,13 @@
-"""Maps between the gridded surface and hull panels: dense near the hull, low rank far from it.
+"""Between the gridded surface and hull panels: one linear map, and its transpose for the way back.
 
-Near the hull the surface is a fine sheet of triangles, on which the grid's potential is
-interpolated; its effect on panels is that of the samplers. Far away it is a sum over nodes, right
-to the order of the field's smoothness. A smooth window parts the two. What the hull makes on the
-surface is evaluated at nodes; far away through a few panels and nodes that stand for all
-(interpolative decomposition: Cheng et al. 2005, SIAM J. Sci. Comput. 26:1389).
+`pull` takes the surface's potential to what its harmonic extension does at hulls, tested with the
+hats of hull nodes (normal derivative) and panel by panel (potential); `push` is the transpose, by
+reciprocity what hulls do to the surface. That both are one map keeps the flow symmetric.
+
+Three zones are blended by windows. Close to the hulls the surface is a fine sheet of triangles on
+which the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over
+the nodes of a coarser grid that carries only the long waves. In the outer two a few rows stand for
+all (interpolative decomposition: Cheng et al. 2005, SIAM J. Sci. Comput. 26:1389).
 """
 
 from __future__ import annotations
@@ -19,175 +22,174 @@ from scipy.spatial import KDTree
 
 from bemwave.flow.elements import Elements, hat_curls
 from bemwave.flow.images import Images
-from bemwave.flow.sheet import Sheet
+from bemwave.flow.sheet import Complex, Sheet
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.kernels import panels as kernel
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
 
-FINER = 4  # cells of the near sheet in one of the grid
-INNER, OUTER = 8.0, 20.0  # spacings from the hull where the window starts and ends
-ACCURACY = 1e-6  # of the low-rank far parts
-SAMPLE = 3000  # far nodes they are chosen by
+FINER = 4  # cells of the fine sheet in one of the grid
+COARSER = 4  # cells of the grid in one of the coarse one
+CLOSE = 3.0, 11.0  # spacings from the hulls where the fine sheet gives way to nodes
+FAR = 10.0, 34.0  # and these to coarse nodes
+ACCURACY = 1e-6  # of the few rows that stand for all
+SAMPLE = 1200  # nodes by which they are chosen
 
 
 class Coupling:
-    """Maps of one group of hull panels.
+    """Maps between a sheet and all hull panels on it.
 
     Parameters
     ----------
     sheet : the grid.
-    e : elements without water: the group's panels.
+    e : the hulls' elements.
     images : of the half space.
     """
 
     def __init__(self, sheet: Sheet, e: Elements, images: Images) -> None:
-        self.sheet, self.e, self.images = sheet, e, images
-        distance, _ = KDTree(e.points[:, :2]).query(sheet.xy)
-        s = np.clip((distance / sheet.spacing - INNER) / (OUTER - INNER), 0.0, 1.0)
-        window = 0.5 * (1.0 + np.cos(np.pi * s))
-        self.near = np.flatnonzero(window > 0.0)
-        self.far = np.flatnonzero(window < 1.0)
-        flux, potential = self._near_maps()
-        self._flux_near = flux[:, self.near] * window[self.near]
-        self._potential_near = potential[:, self.near] * window[self.near]
-        self._far_maps(1.0 - window[self.far])
-        self._surface_maps()
-
-    def flux(self, potential: Array) -> Array:
-        """(panels, k) normal derivative of the surface's extension (nx ny, k)."""
-        count = len(self.e.hull)
-        far = self._skeleton_rows @ potential[self.far]
-        return np.asarray(
-            self._flux_near @ potential[self.near] + self._skeleton_spread[:count] @ far
+        self.sheet, self._coarse = sheet, sheet.coarser(COARSER)
+        self.nodes = e.nodes
+        self._points = _Rule(e, images)
+        plan = KDTree(e.points[:, :2])
+        distance = np.asarray(plan.query(sheet.xy)[0]) / sheet.spacing
+        close, near = _window(distance, *CLOSE), _window(distance, *FAR)
+        self.close = np.flatnonzero(close > 0.0)
+        self._close = self._fine_map() * close[self.close]
+        middle = (1.0 - close) * near
+        self.middle = np.flatnonzero(middle > 0.0)
+        away = np.asarray(plan.query(self._coarse.xy)[0]) / sheet.spacing
+        beyond = 1.0 - _window(away, *FAR)
+        self.beyond = np.flatnonzero(beyond > 0.0)
+        at_middle, at_beyond = sheet.xy[self.middle], self._coarse.xy[self.beyond]
+        chosen, self._spread = self._points.stand_ins(at_middle, at_beyond)
+        area = sheet.spacing**2
+        self._middle = self._points.rows(chosen, at_middle) * (area * middle[self.middle])
+        self._beyond = self._points.rows(chosen, at_beyond) * (
+            area * COARSER**2 * beyond[self.beyond]
         )
 
-    def potential(self, potential: Array) -> Array:
-        """(nodes below and on the waterline, k) of the surface's extension."""
-        count = len(self.e.hull)
-        far = self._skeleton_rows @ potential[self.far]
-        return np.asarray(
-            self._potential_near @ potential[self.near] + self._skeleton_spread[count:] @ far
-        )
+    def pull(self, potential: Array, spectrum: Complex) -> Array:
+        """What a surface potential (nx ny, k) of half spectrum (k, ...) does at the hulls.
 
-    def rise(self, flux: Array, potential: Array) -> Array:
-        """(nx ny, k) vertical velocity at z = 0 of hull sources and dipoles."""
-        result = np.zeros((self.sheet.size, flux.shape[1]))
-        both = np.concatenate([flux, potential])
-        result[self.close] = self._rise_close @ both
-        result[self.beyond] = self._rise_beyond @ (self._gather @ both)
-        return result
+        (nodes + panels, k): int hat d(phi)/dn over the hulls, normals into the bodies, then int phi
+        over each panel.
+        """
+        coarse = self._coarse.back(self.sheet.cropped(spectrum, self._coarse))
+        long = coarse.reshape(len(coarse), -1).T[self.beyond]
+        few = self._middle @ potential[self.middle] + self._beyond @ long
+        return np.asarray(self._close @ potential[self.close] + self._spread @ few)
 
-    def _near_maps(self) -> tuple[Array, Array]:
-        """Flux on panels and potential at nodes of the near sheet, by grid node."""
-        sheet, e = self.sheet, self.e
-        i, j = np.divmod(self.near, sheet.shape[1])
+    def push(self, load: Array, field: Array) -> Complex:
+        """The transpose of `pull`: adds to a field (nx ny, k), and returns a spectrum to add."""
+        few = self._spread.T @ load
+        field[self.close] += self._close.T @ load
+        field[self.middle] += self._middle.T @ few
+        coarse = np.zeros((load.shape[1], self._coarse.size))
+        coarse[:, self.beyond] = (self._beyond.T @ few).T
+        spectrum = self._coarse.transform(coarse.reshape(-1, *self._coarse.shape))
+        return self.sheet.padded(spectrum, self._coarse)
+
+    def _fine_map(self) -> Array:
+        """`pull` of the fine sheet, by the grid's nodes close to the hulls."""
+        sheet = self.sheet
+        i, j = np.divmod(self.close, sheet.shape[1])
         step = sheet.spacing / FINER
         nx, ny = (FINER * (int(np.ptp(n)) + 2) for n in (i, j))
         x = sheet.west + sheet.spacing * (i.min() - 1) + step * np.arange(nx + 1)
         y = sheet.south + sheet.spacing * (j.min() - 1) + step * np.arange(ny + 1)
         plan = np.stack([g.ravel() for g in np.meshgrid(x, y, indexing="ij")], axis=1)
         triangles = grid_triangles(nx, ny)[:, ::-1]
+        owned = np.zeros(sheet.size, dtype=bool)
+        owned[self.close] = True
+        # cells far from every hull carry nothing
+        stencil = sheet.interpolation(plan)
+        used = np.asarray(stencil @ owned.astype(float)) > 0.0
+        triangles = triangles[used[triangles].any(axis=1)]
         fine = np.column_stack([plan, np.zeros(len(plan))])
-        table = kernel.pack(fine[triangles])
-        curls = hat_curls(fine[triangles], table)
-        around = self.images.of_surface_dipoles()
-        maps = (around.signs, around.shifts, around.weights)
-        hat = _hat_projection(nx + 1, ny + 1) @ sheet.interpolation(plan)
-        points = np.einsum("qj,mjc->mqc", kernel.THREE[:, :3], e.points[e.hull]).reshape(-1, 3)
-        normals = np.repeat(e.hull_table[:, 9:12], 3, axis=0) / 3.0
-        flux = np.zeros((len(e.hull), sheet.size))
-        for start in range(0, len(points), 192):
-            part = np.ascontiguousarray(points[start : start + 192])
-            _, pull = kernel.velocity_at(part, table, triangles, curls, len(fine), *maps)
-            along = np.einsum("pcn,pc->pn", pull, normals[start : start + 192])
-            summed = along.reshape(-1, 3, len(fine)).sum(axis=1)
-            flux[start // 3 : start // 3 + len(summed)] = (hat.T @ summed.T).T
-        _, below = kernel.potential_at(
-            np.ascontiguousarray(e.points[: e.below]), table, triangles, len(fine), *maps
-        )
-        potential = np.vstack(
-            [(hat.T @ below.T).T, sheet.interpolation(e.points[e.below :, :2]).toarray()]
-        )
-        return flux, potential
+        to_fine = sparse.csr_matrix(_hat_projection(nx + 1, ny + 1) @ stencil[:, self.close])
+        rows = self._points.of_triangles(fine, triangles)
+        return np.ascontiguousarray((to_fine.T @ rows.T).T)
 
-    def _far_maps(self, weight: Array) -> None:
-        """Flux on panels and potential at nodes of far grid nodes, through a few of them."""
-        sheet, e = self.sheet, self.e
-        nodes = sheet.xy[self.far]
-        weight = weight * sheet.spacing**2
-        panels, below = e.hull_table[:, 24:27], e.points[: e.below]
-        scale = float(np.abs(e.points).max())
-        sample = np.random.default_rng(1).choice(len(nodes), min(SAMPLE, len(nodes)), False)
 
-        def rows(numbers: Ints, at: Array) -> Array:
-            result = np.empty((len(numbers), len(at)))
-            is_panel = numbers < len(panels)
-            which = numbers[is_panel]
-            normals = e.hull_table[which, 9:12]
-            result[is_panel] = _surface_pull(panels[which], at, normals, self.images)
-            which = numbers[~is_panel] - len(panels)
-            result[~is_panel] = _surface_potential(below[which], at, self.images) / scale
-            return result
+class _Rule:
+    """Points of a rule on hull panels, and their weights for hats and for panels."""
 
-        every = np.arange(len(panels) + len(below))
-        tried = rows(every, nodes[sample]) * weight[sample]
-        rank, order, spread = _stand_ins(tried.T)
-        full = spread.T
-        self._skeleton_rows = rows(order[:rank], nodes) * weight
-        on_line = np.zeros((len(e.points) - e.below, rank))
-        self._skeleton_spread = np.vstack(
-            [full[: len(panels)], scale * full[len(panels) :], on_line]
-        )
-
-    def _surface_maps(self) -> None:
-        """Vertical velocity at nodes of unit sources and dipoles of the hull."""
-        sheet, e = self.sheet, self.e
-        close = np.zeros(sheet.size, dtype=bool)
-        close[self.near] = True
-        self.close, self.beyond = np.flatnonzero(close), np.flatnonzero(~close)
-        self._rise_close = self._rise(self.close, np.arange(len(e.hull) + e.below))
-        sample = np.random.default_rng(2).choice(
-            self.beyond, min(SAMPLE, len(self.beyond)), replace=False
-        )
-        tried = self._rise(sample, np.arange(len(e.hull) + e.below))
-        tried *= (1.0 + np.linalg.norm(sheet.xy[sample] - e.points[:, :2].mean(axis=0), axis=1))[
-            :, None
-        ] ** 3
-        rank, order, self._gather = _stand_ins(tried)
-        self._rise_beyond = self._rise(self.beyond, order[:rank])
-
-    def _rise(self, nodes: Ints, columns: Ints) -> Array:
-        """Chosen columns: panels' sources first, then nodes' dipoles."""
-        e, images = self.e, self.images
+    def __init__(self, e: Elements, images: Images) -> None:
         count = len(e.hull)
-        used = np.zeros(count, dtype=bool)
-        used[columns[columns < count]] = True
-        used |= np.isin(e.hull, columns[columns >= count] - count).any(axis=1)
-        panels = np.flatnonzero(used)
-        table, corners = e.hull_table[panels], e.hull[panels]
-        curls = hat_curls(e.points[corners], table)
-        maps = (images.signs, images.shifts, images.weights)
-        result = np.empty((len(nodes), len(columns)))
-        source = np.full(count, -1)
-        source[panels] = np.arange(len(panels))
-        is_panel = columns < count
-        for start in range(0, len(nodes), 512):
-            part = nodes[start : start + 512]
-            at = np.column_stack([self.sheet.xy[part], np.zeros(len(part))])
-            single, double = kernel.velocity_at(at, table, corners, curls, len(e.points), *maps)
-            block = result[start : start + 512]
-            block[:, is_panel] = single[:, 2, source[columns[is_panel]]]
-            block[:, ~is_panel] = double[:, 2, columns[~is_panel] - count]
+        around = images.of_surface_dipoles()
+        self._around = (around.signs, around.shifts, around.weights)
+        self.at = np.einsum("qj,mjc->mqc", kernel.THREE[:, :3], e.points[e.hull]).reshape(-1, 3)
+        self.normal = np.repeat(e.hull_table[:, 9:12], 3, axis=0)
+        area = np.repeat(e.hull_table[:, 28] / 3.0, 3)
+        share = np.tile(kernel.THREE[:, :3], (count, 1)) * area[:, None]
+        owner = np.repeat(e.hull, 3, axis=0)
+        number = np.arange(3 * count)
+        shape = (len(e.points), 3 * count)
+        self.by_hat = sparse.csr_matrix(
+            (share.ravel(), (owner.ravel(), np.repeat(number, 3))), shape=shape
+        )[: e.nodes]
+        self.by_panel = sparse.csr_matrix((area, (number // 3, number)), shape=(count, 3 * count))
+
+    def of_triangles(self, nodes: Array, triangles: Ints) -> Array:
+        """(nodes + panels, n) `pull` of hats on triangles of the surface."""
+        table = kernel.pack(nodes[triangles])
+        curls = hat_curls(nodes[triangles], table)
+        result = np.zeros((self.by_hat.shape[0] + self.by_panel.shape[0], len(nodes)))
+        for start in range(0, len(self.at), 192):
+            part = slice(start, start + 192)
+            at = np.ascontiguousarray(self.at[part])
+            velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *self._around)[1]
+            slope = np.einsum("pcn,pc->pn", velocity, self.normal[part])
+            level = kernel.potential_at(at, table, triangles, len(nodes), *self._around)[1]
+            self._add(result, part, slope, level)
         return result
 
+    def rows(self, chosen: Ints, at: Array) -> Array:
+        """(chosen, n) rows of `pull` of dipoles at places (n, 2) of the surface, per area."""
+        hats = self.by_hat.shape[0]
+        weights = sparse.vstack([self.by_hat, self.by_panel]).tocsr()[chosen]
+        used = np.unique(weights.indices)
+        slope, level = _surface_dipoles(self.at[used], self.normal[used], at, self._around)
+        weights = weights[:, used]
+        is_hat = (chosen < hats)[:, None]
+        return np.where(is_hat, np.asarray(weights @ slope), np.asarray(weights @ level))
 
-def _stand_ins(tried: Array) -> tuple[int, Ints, Array]:
-    """How many columns stand for all, their numbers first, and all of them as sums of these."""
-    found: Any = interpolative.interp_decomp(tried, ACCURACY, rand=False)
-    rank, order, spread = found
-    return rank, order, np.asarray(interpolative.reconstruct_interp_matrix(order, spread))
+    def stand_ins(self, *places: Array) -> tuple[Ints, Array]:
+        """Rows that stand for all at places of the surface, and all as sums of these."""
+        draw = np.random.default_rng(1)
+        sample = np.vstack(
+            [at[draw.choice(len(at), min(SAMPLE, len(at)), replace=False)] for at in places]
+        )
+        count = self.by_hat.shape[0] + self.by_panel.shape[0]
+        tried = self.rows(np.arange(count), sample)
+        scale = np.linalg.norm(tried, axis=1)
+        touched = np.flatnonzero(scale)  # hats inside waterplanes have no part in hulls
+        tried, scale = tried[touched], scale[touched]
+        # nearby nodes would drown those far off, and slopes potentials
+        size = np.linalg.norm(tried / scale[:, None], axis=0)
+        found: Any = interpolative.interp_decomp(
+            (tried / scale[:, None] / size).T, ACCURACY, rand=False
+        )
+        rank, order, coefficients = found
+        sums = np.asarray(interpolative.reconstruct_interp_matrix(order, coefficients)).T
+        chosen = np.asarray(order[:rank])
+        spread = np.zeros((count, rank))
+        spread[touched] = scale[:, None] * sums / scale[chosen]
+        return touched[chosen], spread
+
+    def _add(self, result: Array, part: slice, slope: Array, level: Array) -> None:
+        hats = self.by_hat.shape[0]
+        result[:hats] += np.asarray(self.by_hat[:, part] @ slope)
+        first = part.start // 3
+        panels = self.by_panel[first : first + len(level) // 3, part]
+        result[hats + first : hats + first + len(level) // 3] += np.asarray(panels @ level)
+
+
+def _window(distance: Array, start: float, end: float) -> Array:
+    """1 up to `start`, 0 from `end` on, with three continuous derivatives."""
+    s = np.clip((distance - start) / (end - start), 0.0, 1.0)
+    return np.asarray(1.0 - s**4 * (35.0 - 84.0 * s + 70.0 * s**2 - 20.0 * s**3))
 
 
 def _hat_projection(nx: int, ny: int) -> sparse.csr_matrix:
@@ -202,30 +204,18 @@ def _hat_projection(nx: int, ny: int) -> sparse.csr_matrix:
     return sparse.csr_matrix(sparse.identity(nx * ny) - bend / 12.0)
 
 
-def _surface_potential(points: Array, nodes: Array, images: Images) -> Array:
-    """(p, n) - dG/dz' of unit dipoles at nodes (n, 2) of z = 0, at points (p, 3)."""
-    result = np.zeros((len(points), len(nodes)))
-    around = images.of_surface_dipoles()
-    for sign, shift, weight in zip(around.signs, around.shifts, around.weights, strict=True):
-        at = sign * (points - shift)
-        r2 = (
-            (at[:, 0, None] - nodes[:, 0]) ** 2
-            + (at[:, 1, None] - nodes[:, 1]) ** 2
-            + at[:, 2, None] ** 2
-        )
-        result -= weight / kernel.FOUR_PI * at[:, 2, None] * r2**-1.5
-    return result
-
-
-def _surface_pull(points: Array, nodes: Array, normals: Array, images: Images) -> Array:
-    """(p, n) derivative of `_surface_potential` along normals (p, 3)."""
-    result = np.zeros((len(points), len(nodes)))
-    around = images.of_surface_dipoles()
-    for sign, shift, weight in zip(around.signs, around.shifts, around.weights, strict=True):
+def _surface_dipoles(
+    points: Array, normals: Array, nodes: Array, around: tuple[Array, Array, Array]
+) -> tuple[Array, Array]:
+    """(p, n) slope along normals and potential of -dG/dz' at nodes (n, 2) of z = 0."""
+    slope, level = np.zeros((2, len(points), len(nodes)))
+    for sign, shift, weight in zip(*around, strict=True):
         at, n = sign * (points - shift), sign * normals
         dx, dy = at[:, 0, None] - nodes[:, 0], at[:, 1, None] - nodes[:, 1]
         z = at[:, 2, None]
         r2 = dx**2 + dy**2 + z**2
+        pole = -weight / kernel.FOUR_PI * r2**-1.5
         along = dx * n[:, 0, None] + dy * n[:, 1, None] + z * n[:, 2, None]
-        result -= weight / kernel.FOUR_PI * (n[:, 2, None] - 3.0 * z * along / r2) * r2**-1.5
-    return result
+        level += pole * z
+        slope += pole * (n[:, 2, None] - 3.0 * z * along / r2)
+    return slope, level

@@ -1,12 +1,22 @@
-"""Route "grid": open water by FFT, hulls by symmetric Galerkin on the half-space kernel.
+"""Route "grid": open water by FFT, hulls by symmetric Galerkin panels on the half-space kernel.
 
-The potential in the water is phi_s + phi_b. phi_s is the harmonic extension of the surface's
-potential, continued through waterplanes, so its vertical velocity is IFFT[k tanh(kh) phi^]: no
-numerical dispersion. phi_b vanishes on z = 0 and takes up what phi_s leaves of the hulls' flux,
+The surface's potential f lives on a uniform grid, continued through waterplanes. Its harmonic
+extension phi_s has the vertical velocity A f = IFFT[k tanh(kh) f^]: no numerical dispersion. It is
+taken off again where hulls are: with u the potential of the closed surface of hulls and waterplanes
+(hats, normals into the bodies), the field is that of the double layers of f and u and the single
+layer of the hull's given flux q, and its energy
 
-    D phi_b = (M/2 - K)' (q - d(phi_s)/dn),
+    E = 1/2 <f, A f> - u' G f + 1/2 u' D u + q' N' u - q' P f
 
-the same hull operators as on route "panels" with no water in them, factored once.
+with D, N as on route "panels", G f the flux of phi_s out of the bodies tested with hats, and P f
+its potential over panels. On the waterline u is f; elsewhere it is where E is stationary, and then
+nothing is left of f inside the bodies. The flow map is the derivative of E after f, tested on the
+water alone:
+
+    M d(eta)/dt = X' (A f - G' u + ...),    f = X phi,    M = X' (1 - waterplanes) X
+
+X being the continuation of the nodes' values. S = X' E'' X is symmetric and M positive definite, so
+no mode of the water can grow, whatever hulls there are; where E is positive no wave is imaginary.
 """
 
 from __future__ import annotations
@@ -15,16 +25,17 @@ from collections.abc import Sequence
 
 import numpy as np
 import numpy.typing as npt
-from scipy import linalg
+from scipy import linalg, sparse
 
 from bemwave.flow.coupling import Coupling
-from bemwave.flow.elements import Elements
+from bemwave.flow.elements import Elements, solver_of
 from bemwave.flow.images import make_images
 from bemwave.flow.panels import forms
-from bemwave.flow.sheet import Sheet
-from bemwave.flow.waterplane import Continuation, Waterline, inside_nodes
-from bemwave.geometry.hull import Hull
-from bemwave.geometry.surface_mesh import IntArray, joined
+from bemwave.flow.sheet import Complex, Sheet
+from bemwave.flow.waterplane import Continuation
+from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.waterplane import WATERPLANE
+from bemwave.kernels.panels import SEVEN
 
 Array = npt.NDArray[np.float64]
 
@@ -32,152 +43,195 @@ Array = npt.NDArray[np.float64]
 class GridFlow:
     """The flow map of a grid with hulls in it.
 
+    Fields are (nx ny, k), continued through waterplanes; what is given for them comes so, and so
+    they are returned.
+
     Parameters
     ----------
     sheet : the grid, absorber included; its depth is the water's.
-    hulls : bodies at rest; none of their waterplanes under three spacings wide.
+    bodies : the closed surfaces of hulls and waterplanes (`geometry.waterplane.closed_bodies`);
+        None where there are none.
+    waterlines : for each body that pierces the surface its waterlines, (k, 2) [m].
 
     Attributes
     ----------
-    elements : the hulls' panels, nodes renumbered: below the surface, then on waterlines.
-    inside : (nx ny,) nodes of the grid inside waterplanes.
-    given_points, given_normals : (m + p, 3) where fluxes are given: the middles of the m panels,
-        then p points of waterlines, which the continuation through waterplanes needs.
+    elements : of the closed surfaces: `water` the waterplanes, `hull` the hulls.
     """
 
-    def __init__(self, sheet: Sheet, hulls: Sequence[Hull]) -> None:
+    def __init__(
+        self,
+        sheet: Sheet,
+        bodies: SurfaceMesh | None = None,
+        waterlines: Sequence[Sequence[Array]] = (),
+    ) -> None:
         self.sheet = sheet
-        self.elements, lines = hull_elements(hulls)
-        on_line = [np.column_stack([li.points, np.zeros(len(li.points))]) for li in lines]
-        self.given_points = np.vstack([self.elements.hull_table[:, 24:27], *on_line])
-        normals = [line.normals for line in lines]
-        self.given_normals = np.vstack([self.elements.hull_table[:, 9:12], *normals])
-        span = sheet.spacing * max(sheet.shape)
-        images = make_images(sheet.depth, True, (), span)
-        self.inside = np.zeros(sheet.size, dtype=bool)
-        within = [
-            inside_nodes(sheet, hull.polygons(), line)
-            for hull, line in zip(hulls, lines, strict=True)
-            if hull.waterlines
-        ]
-        for nodes in within:
-            self.inside |= nodes
-        standing = [line for hull, line in zip(hulls, lines, strict=True) if hull.waterlines]
-        self._continuations = [
-            Continuation(sheet, nodes, line, self.inside)
-            for nodes, line in zip(within, standing, strict=True)
-        ]
-        if hulls:
-            energy, given = forms(self.elements, images)
-            factor = linalg.cho_factor(energy, lower=True)
-            self._hull_response = -linalg.cho_solve(factor, given)
-            self._coupling = Coupling(sheet, self.elements, images)
+        self.elements = body_elements(bodies)
+        self.continuation = Continuation(sheet, waterlines)
+        self._area = sheet.spacing**2
+        if bodies is not None:
+            self._coupling = _Bodies(sheet, self.elements)
+        self.mass = sparse.csr_matrix(self._area * sparse.identity(sheet.size, format="csr"))
+        if waterlines:
+            self.mass = sparse.csr_matrix(self.mass - self._coupling.dry_mass)
+            self._make_mass(self.continuation)
 
-    def continued(self, potential: Array, hull_flux: Array) -> Array:
-        """A copy of a potential (nx ny, k), through waterplanes by the hull's condition."""
-        result = potential.copy()
-        for continuation in self._continuations:
-            continuation.potential(result, hull_flux)
-        return result
+    def _make_mass(self, continuation: Continuation) -> None:
+        """Factor M where it is not a multiple of one."""
+        ruled = np.unique(continuation.map.indices)
+        dry = self._coupling.dry_mass
+        touched = np.union1d(ruled, np.unique(dry.indices))
+        rows = np.union1d(touched, np.flatnonzero(continuation.inside))
+        self._near = np.setdiff1d(touched, np.flatnonzero(continuation.inside))
+        spread = sparse.identity(self.sheet.size, format="csr")[rows][:, self._near]
+        inside = sparse.csr_matrix(continuation.map[:, self._near])
+        at = np.searchsorted(rows, np.flatnonzero(continuation.inside))
+        place = sparse.csr_matrix(
+            (np.ones(len(at)), (at, np.arange(len(at)))), shape=(len(rows), len(at))
+        )
+        spread = spread + place @ inside
+        local = spread.T @ (self.mass[rows][:, rows] @ spread)
+        self._solve_near = solver_of(sparse.csc_matrix(local))
 
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
         """Vertical velocity of the surface, (nx ny, k) [m/s]."""
-        potential = self.continued(potential, hull_flux)
-        own = self._back(self.sheet.rise * self._transform(potential))
-        return own + self.made_by_hulls(potential, hull_flux, own)
-
-    def made_by_hulls(self, potential: Array, hull_flux: Array, own: Array) -> Array:
-        """What hulls add to the surface's own flux, of a continued potential; (nx ny, k)."""
-        if not len(self.elements.hull):
-            return np.zeros_like(own)
-        left = hull_flux[: len(self.elements.hull)] - self._coupling.flux(potential)
-        total = own + self._coupling.rise(left, self._hull_response @ left)
-        for continuation in self._continuations:
-            continuation.smooth(total)
-        return np.asarray(total - own)
+        return self.vertical_velocity(potential, hull_flux, self.sheet.rise)
 
     def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
-        """Potential at hull nodes, below the surface and on waterlines, (nodes, k) [m^2/s]."""
-        potential = self.continued(potential, hull_flux)
-        result = self._coupling.potential(potential)
-        left = hull_flux[: len(self.elements.hull)] - self._coupling.flux(potential)
-        result[: self.elements.below] += self._hull_response @ left
-        return result
+        """Potential at all nodes of hulls and waterplanes, (nodes, k) [m^2/s]."""
+        if not self.elements.nodes:
+            return np.zeros((0, potential.shape[1]))
+        spectrum = self._transform(potential)
+        own = self._back(self.sheet.rise * spectrum)
+        return self._coupling.potential(potential, spectrum, own, hull_flux)[0]
+
+    def vertical_velocity(self, potential: Array, hull_flux: Array, rise: Array) -> Array:
+        """As `surface_flux`, with a symbol of the grid's own waves in place of k tanh(kh)."""
+        spectrum = self._transform(potential)
+        if not self.elements.nodes:
+            return self._back(rise * spectrum)
+        own = self._back(self.sheet.rise * spectrum)
+        load, lid, beyond = self._coupling.load(potential, spectrum, own, hull_flux)
+        made = beyond - self.sheet.rise * self._transform(lid)
+        result = self._back(self._area * rise * spectrum + made) + load
+        self.continuation.gather(result)
+        result /= self._area
+        if self.continuation.inside.any():
+            result[self._near] = self._solve_near(self._area * result[self._near])
+        return self.continuation(result)
+
+    def continued(self, field: Array) -> Array:
+        """A field given on the water, (nx ny,) or (nx ny, k), continued through waterplanes."""
+        return self.continuation(field)
 
     def march(self, gravity: float, step: float) -> GridMarch:
-        """The exact propagation of free waves over steps of a length [s]."""
+        """The steps of free waves in time."""
         return GridMarch(self, gravity, step)
 
-    def _transform(self, fields: Array) -> npt.NDArray[np.complex128]:
+    def _transform(self, fields: Array) -> Complex:
         return self.sheet.transform(fields.T.reshape(-1, *self.sheet.shape))
 
-    def _back(self, spectra: npt.NDArray[np.complex128]) -> Array:
+    def _back(self, spectra: Complex) -> Array:
         return np.ascontiguousarray(self.sheet.back(spectra).reshape(len(spectra), -1).T)
 
 
-class GridMarch:
-    """Mean surface flux over a step of free waves, exact, with the hulls' as forcing.
+class _Bodies:
+    """All that closed bodies add to the energy of the grid's own waves."""
 
-    The same form of a step as on route "panels" (see `stepping.stepper`): there the flux is
-    A_dt phi + f, here IFFT[A_dt phi^ + (A_dt/A) f^] with f what the hulls make, so that A_dt is
-    2 (1 - cos w dt)/(g dt^2) and A_dt/A = (sin(x)/x)^2, x = w dt/2.
+    def __init__(self, sheet: Sheet, e: Elements) -> None:
+        images = make_images(sheet.depth, True, (), sheet.spacing * max(sheet.shape))
+        energy, given = forms(e, images)
+        self._count, free = e.nodes, e.free
+        line = np.unique(e.hull)
+        self._line = line[line < free]
+        self._found = np.setdiff1d(np.arange(e.nodes), self._line)
+        factor = linalg.cho_factor(energy[np.ix_(self._found, self._found)], lower=True)
+        self._energy_line, self._given_line = energy[self._line], given[self._line]
+        across = energy[np.ix_(self._found, self._line)]
+        self._by_flux = linalg.cho_solve(factor, np.eye(len(self._found)))
+        self._by_line = -self._by_flux @ across
+        self._by_given = -self._by_flux @ given[self._found]
+        self._coupling = Coupling(sheet, e, images)
+        self._on_line = sheet.interpolation(e.points[self._line, :2])
+        self._from_line = sparse.csr_matrix(self._on_line.T)
+        at, weight, hats = _lid_rule(e)
+        places = sheet.interpolation(at)
+        weighted = sparse.csr_matrix(places.T @ sparse.diags(weight))
+        self._lid = sparse.csr_matrix(weighted @ hats)
+        self._lid_test = sparse.csr_matrix(self._lid.T)
+        self.dry_mass = sparse.csr_matrix(weighted @ places)
+
+    def potential(
+        self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
+    ) -> tuple[Array, Array]:
+        """u (nodes, k), and G f of a continued field, its spectrum and its A f."""
+        pulled = -self._coupling.pull(field, spectrum)[: self._count]
+        free = self._lid_test.shape[0]
+        pulled[:free] += self._lid_test @ own
+        u = np.empty_like(pulled)
+        u[self._line] = self._on_line @ field
+        u[self._found] = self._by_flux @ pulled[self._found] + self._by_line @ u[self._line]
+        u[self._found] += self._by_given @ hull_flux
+        return u, pulled
+
+    def load(
+        self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
+    ) -> tuple[Array, Array, Complex]:
+        """What bodies add to A f: on nodes, as a field that A is still to be taken of, in waves."""
+        u, pulled = self.potential(field, spectrum, own, hull_flux)
+        left = self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
+        load = self._from_line @ left
+        beyond = self._coupling.push(np.concatenate([u, -hull_flux]), load)
+        return load, self._lid @ u[: self._lid.shape[1]], beyond
+
+
+class GridMarch:
+    """The surface flux of a step that is exact in time for free waves.
+
+    As on route "panels" a step is leapfrog on A_dt = 2 (1 - cos w dt)/(g dt^2), here for the grid's
+    own waves only; what hulls add is of the second order, (w dt)^2/12.
     """
 
     def __init__(self, flow: GridFlow, gravity: float, step: float) -> None:
         self._flow = flow
-        rise = flow.sheet.rise
-        half_turn = 0.5 * step * np.sqrt(gravity * rise)
-        self._smooth = np.sinc(half_turn / np.pi) ** 2
-        self._mean_rise = rise * self._smooth
+        half_turn = 0.5 * step * np.sqrt(gravity * flow.sheet.rise)
+        self._rise = flow.sheet.rise * np.sinc(half_turn / np.pi) ** 2
 
     def flux(self, potential: Array, hull_flux: Array) -> Array:
         """(nx ny, k) from the potential at the step's middle and the given flux, smoothed."""
-        flow = self._flow
-        potential = flow.continued(potential, hull_flux)
-        spectrum = flow._transform(potential)
-        own = flow._back(flow.sheet.rise * spectrum)
-        made = flow.made_by_hulls(potential, hull_flux, own)
-        return flow._back(self._mean_rise * spectrum + self._smooth * flow._transform(made))
+        return self._flow.vertical_velocity(potential, hull_flux, self._rise)
 
 
-def hull_elements(hulls: Sequence[Hull]) -> tuple[Elements, list[Waterline]]:
-    """The hulls' panels as elements without water, and their waterlines."""
-    empty = np.zeros((0, 3), dtype=np.int64)
-    none = np.zeros(0, dtype=np.int64)
-    if not hulls:
-        return Elements(np.zeros((0, 3)), empty, empty, 0, 0, 0, none, none), []
-    mesh = joined([hull.mesh for hull in hulls])
-    on_line = mesh.points[:, 2] == 0.0
-    order = np.concatenate([np.flatnonzero(~on_line), np.flatnonzero(on_line)])
+def body_elements(bodies: SurfaceMesh | None) -> Elements:
+    """The closed surfaces of hulls and waterplanes as elements.
+
+    `free` are the nodes on z = 0 inside and on waterlines, `below` all others.
+    """
+    if bodies is None:
+        empty, none = np.zeros((0, 3), dtype=np.int64), np.zeros(0, dtype=np.int64)
+        return Elements(np.zeros((0, 3)), empty, empty, 0, 0, 0, none, none)
+    is_lid = bodies.part == bodies.part_names.index(WATERPLANE)
+    on_lid = np.unique(bodies.triangles[is_lid])
+    below = np.setdiff1d(np.arange(len(bodies.points)), on_lid)
+    order = np.concatenate([on_lid, below])
     number = np.empty(len(order), dtype=np.int64)
     number[order] = np.arange(len(order))
-    below = int((~on_line).sum())
-    elements = Elements(
-        points=mesh.points[order],
-        water=empty,
-        hull=number[mesh.triangles],
-        free=0,
-        below=below,
-        pinned=len(order) - below,
+    return Elements(
+        points=bodies.points[order],
+        water=number[bodies.triangles[is_lid]].reshape(-1, 3),
+        hull=number[bodies.triangles[~is_lid]],
+        free=len(on_lid),
+        below=len(below),
+        pinned=0,
         order=order,
-        hull_triangles=np.arange(len(mesh.triangles)),
+        hull_triangles=np.flatnonzero(~is_lid),
     )
-    first = 0
-    lines: list[Waterline] = []
-    for hull in hulls:
-        panels = first + np.arange(len(hull.mesh.triangles))
-        row = len(elements.hull) + sum(len(line.rows) for line in lines)
-        lines.append(_waterline(elements, panels, row))
-        first += len(panels)
-    return elements, lines
 
 
-def _waterline(e: Elements, panels: IntArray, row: int) -> Waterline:
-    """Middles of the panel edges on z = 0, with the normals of their facets."""
-    corners = e.hull[panels]
-    on_line = corners >= e.below
-    edge = np.flatnonzero(on_line.sum(axis=1) == 2)
-    share = on_line[edge][:, :, None] / 2.0
-    points = (e.points[corners[edge]] * share).sum(axis=1)[:, :2]
-    normals = e.hull_table[panels[edge], 9:12]
-    return Waterline(points, normals, row + np.arange(len(edge)))
+def _lid_rule(e: Elements) -> tuple[Array, Array, sparse.csr_matrix]:
+    """Points on waterplanes (p, 2), their weights [m^2], and values of hats there (p, free)."""
+    at = np.einsum("qj,mjc->mqc", SEVEN[:, :3], e.points[e.water][:, :, :2]).reshape(-1, 2)
+    weight = (e.water_table[:, 28, None] * SEVEN[:, 3]).ravel()
+    owner = np.repeat(np.arange(len(at)), 3)
+    corners = np.repeat(e.water, len(SEVEN), axis=0).ravel()
+    values = np.tile(SEVEN[:, :3], (len(e.water), 1)).ravel()
+    return at, weight, sparse.csr_matrix((values, (owner, corners)), shape=(len(at), e.free))

@@ -48,17 +48,17 @@ class Sheet:
 
     @cached_property
     def wavenumbers(self) -> tuple[Array, Array, Array]:
-        """kx (nx, 1), ky (1, ny/2 + 1) and |k| of the half spectrum [1/m]; Nyquist rows zero.
+        """kx (nx, 1), ky (1, ny/2 + 1) and |k| of the half spectrum [1/m].
 
-        A wave of exactly two nodes has no direction: its k is taken as zero, so that it stays out
-        of all derivatives.
+        A wave of exactly two nodes has no direction: its kx or ky is zero, so that it stays out of
+        derivatives; but it has a length, and with |k| = 0 it would answer to any forcing like a
+        wave of no frequency.
         """
         nx, ny = self.shape
         kx = 2.0 * math.pi * fft.fftfreq(nx, self.spacing)[:, None]
         ky = 2.0 * math.pi * fft.rfftfreq(ny, self.spacing)[None, :]
-        kx[nx // 2], ky[:, -1] = 0.0, 0.0
         k = np.hypot(kx, ky)
-        k[nx // 2], k[:, -1] = 0.0, 0.0
+        kx[nx // 2], ky[:, -1] = 0.0, 0.0
         return kx, ky, k
 
     @cached_property
@@ -76,6 +76,28 @@ class Sheet:
     def back(self, spectrum: Complex) -> Array:
         """Half spectrum to (..., nx, ny)."""
         return np.asarray(fft.irfft2(spectrum, s=self.shape, workers=-1))
+
+    def coarser(self, factor: int) -> Sheet:
+        """The sheet of every `factor`-th node."""
+        nx, ny = self.shape
+        shape = (nx // factor, ny // factor)
+        return Sheet(self.west, self.south, self.spacing * factor, shape, self.depth)
+
+    def cropped(self, spectrum: Complex, coarse: Sheet) -> Complex:
+        """The long waves of a half spectrum, as that of the field on a coarser sheet's nodes."""
+        (nx, ny), m = coarse.shape, coarse.shape[0] // 2
+        kept = np.zeros((*spectrum.shape[:-2], nx, ny // 2 + 1), dtype=spectrum.dtype)
+        kept[..., :m, :-1] = spectrum[..., :m, : ny // 2]
+        kept[..., m + 1 :, :-1] = spectrum[..., -m + 1 :, : ny // 2]
+        return kept * (coarse.size / self.size)
+
+    def padded(self, spectrum: Complex, coarse: Sheet) -> Complex:
+        """The transpose of `cropped` between fields: a coarser sheet's, spread over this one's."""
+        ny, m = coarse.shape[1], coarse.shape[0] // 2
+        wide = np.zeros((*spectrum.shape[:-2], self.shape[0], self.shape[1] // 2 + 1), complex)
+        wide[..., :m, : ny // 2] = spectrum[..., :m, :-1]
+        wide[..., -m + 1 :, : ny // 2] = spectrum[..., m + 1 :, :-1]
+        return wide
 
     def interpolation(self, xy: Array) -> sparse.csr_matrix:
         """(p, nx ny) from nodes to places (p, 2): Lagrange polynomials of fifth degree."""

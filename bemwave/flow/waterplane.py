@@ -1,19 +1,18 @@
 """Where hulls stand there is no free surface: fields on the grid are continued through it.
 
-Inside waterlines the grid's fields have no meaning of their own; they are continued from outside
-so smoothly that their harmonic extension is right in the water. The potential is continued by
-least squares with the hull's own condition at the waterline, n.grad phi = given flux, and as small
-a biharmonic as that leaves; other fields by the biharmonic alone.
+Inside waterlines the grid's fields have no meaning of their own. They are slaves of the nodes
+outside, near the waterline by parabolas through these, further in as smoothly as a biharmonic
+allows. What they are there does not matter to the flow, which is that of the water alone; that
+they are smooth does, for the grid resolves no more than that.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy import linalg
+from scipy import linalg, sparse
 from scipy.spatial import KDTree
 
 from bemwave.flow.sheet import Sheet
@@ -24,11 +23,8 @@ Bools = npt.NDArray[np.bool_]
 
 MARGIN = 0.03  # of a spacing: nodes nearer to a waterline than this count as inside
 REACH = 4.3  # spacings outside a waterline of the nodes that a continuation is made from
-RING = 1.5  # spacings inside a waterline of the nodes that local polynomials reach
-NEAR = 24  # nodes outside that a polynomial is fitted to
-POINTS = 8  # of the waterline, where it meets the hull's condition
-WEIGHT = 3.0  # of the condition, spacing x slope, against values at nodes
-DEGREE = 3
+RING = 2.0  # spacings inside a waterline of the nodes that parabolas reach
+NEAR = 20  # nodes outside that a parabola is fitted to
 
 _BIHARMONIC = (
     [(0, 0, 20.0)]
@@ -38,113 +34,123 @@ _BIHARMONIC = (
 )
 
 
-@dataclass(frozen=True)
-class Waterline:
-    """Points of a body's waterline, the hull's normal there, and where its given flux stands.
-
-    points : (p, 2) m; normals : (p, 3) out of the water; rows : (p,) of the given fluxes.
-    """
-
-    points: Array
-    normals: Array
-    rows: Ints
-
-
 class Continuation:
-    """Continues fields of one body's waterplane, as small dense matrices.
+    """Continues fields through all waterplanes: a sparse map from nodes outside to those inside.
 
     Parameters
     ----------
     sheet : the grid.
-    inside : (nx ny,) nodes of this waterplane.
-    waterline : of this body.
-    others : (nx ny,) nodes inside any waterplane.
+    waterplanes : for each body its waterlines, closed lines (k, 2) [m].
+
+    Attributes
+    ----------
+    inside : (nx ny,) nodes that have no water of their own.
     """
 
-    def __init__(self, sheet: Sheet, inside: Bools, waterline: Waterline, others: Bools) -> None:
-        distance, _ = KDTree(waterline.points).query(sheet.xy)
-        distance = np.asarray(distance) / sheet.spacing
-        self.inside = np.flatnonzero(inside)
-        self.outside = np.flatnonzero((distance < REACH) & ~others)
-        self.rows = waterline.rows
-        number = np.full(sheet.size, -1)
-        number[self.inside] = np.arange(len(self.inside))
-        number[self.outside] = len(self.inside) + np.arange(len(self.outside))
-        smooth = _biharmonic_rows(sheet, self.inside, number, len(self.outside))
-        n = len(self.inside)
-        self._plain = -np.asarray(linalg.lstsq(smooth[:, :n], smooth[:, n:])[0])
-        ring = distance[self.inside] < RING
-        by_values, by_flux = self._polynomials(sheet, self.inside[ring], waterline)
-        core = smooth[~ring]
-        into = -np.asarray(linalg.pinv(core[:, :n][:, ~ring]))
-        self._from_outside = np.empty((n, len(self.outside)))
-        self._from_flux = np.empty((n, len(waterline.points)))
-        self._from_outside[ring], self._from_flux[ring] = by_values, by_flux
-        on_ring = core[:, :n][:, ring]
-        self._from_outside[~ring] = into @ (core[:, n:] + on_ring @ by_values)
-        self._from_flux[~ring] = into @ (on_ring @ by_flux)
+    def __init__(self, sheet: Sheet, waterplanes: Sequence[Sequence[Array]]) -> None:
+        lines = [_dense_line(polygons, sheet.spacing) for polygons in waterplanes]
+        within = [
+            _inside(sheet, polygons, line)
+            for polygons, line in zip(waterplanes, lines, strict=True)
+        ]
+        self.inside = np.zeros(sheet.size, dtype=bool)
+        for nodes in within:
+            self.inside |= nodes
+        self._nodes = np.flatnonzero(self.inside)
+        rows = [
+            _rows(sheet, nodes, line, self.inside)
+            for nodes, line in zip(within, lines, strict=True)
+        ]
+        full = sparse.csr_matrix((sheet.size, sheet.size))
+        for row in rows:
+            full = full + row
+        self.map = sparse.csr_matrix(full[self._nodes])
+        self._back = sparse.csr_matrix(self.map.T)
 
-    def smooth(self, field: Array) -> None:
-        """Continue a field (nx ny, k) in place by its biharmonic alone."""
-        field[self.inside] = self._plain @ field[self.outside]
+    def __call__(self, field: Array) -> Array:
+        """A copy of a field (nx ny, k), continued."""
+        result = field.copy()
+        result[self._nodes] = self.map @ field
+        return result
 
-    def potential(self, field: Array, flux: Array) -> None:
-        """Continue a potential (nx ny, k) in place, with the given fluxes (places, k)."""
-        field[self.inside] = (
-            self._from_outside @ field[self.outside] + self._from_flux @ flux[self.rows]
-        )
-
-    def _polynomials(self, sheet: Sheet, nodes: Ints, waterline: Waterline) -> tuple[Array, Array]:
-        """Values at nodes of the ring from nodes outside, and from fluxes of the waterline."""
-        places, outside = sheet.xy[nodes], sheet.xy[self.outside]
-        far, near = KDTree(outside).query(places, k=NEAR)
-        _, points = KDTree(waterline.points).query(places, k=POINTS)
-        at = (outside[near] - places[:, None]) / sheet.spacing
-        foot = (waterline.points[points] - places[:, None]) / sheet.spacing
-        normal = waterline.normals[points]
-        values = _monomials(at, 0, 0)
-        slopes = normal[..., 0, None] * _monomials(foot, 1, 0)
-        slopes += normal[..., 1, None] * _monomials(foot, 0, 1)
-        nearest = np.asarray(far)[:, :1]
-        weight = np.exp(-0.5 * ((np.asarray(far) - nearest) / sheet.spacing) ** 2)
-        rows = np.concatenate([values * weight[..., None], WEIGHT * slopes], axis=1)
-        fit = np.linalg.pinv(rows)[:, 0]
-        by_values = np.zeros((len(nodes), len(outside)))
-        by_flux = np.zeros((len(nodes), len(waterline.points)))
-        index = np.arange(len(nodes))[:, None]
-        by_values[index, near] = fit[:, :NEAR] * weight
-        by_flux[index, points] = fit[:, NEAR:] * WEIGHT * sheet.spacing
-        return by_values, by_flux
+    def gather(self, load: Array) -> None:
+        """Give loads (nx ny, k) inside to the nodes outside that rule there, in place."""
+        ruled = load[self._nodes]
+        load[self._nodes] = 0.0
+        load += self._back @ ruled
 
 
-def inside_nodes(sheet: Sheet, polygons: Sequence[Array], waterline: Waterline) -> Bools:
-    """Nodes inside waterline polygons, or nearer to them than MARGIN."""
+def _dense_line(polygons: Sequence[Array], spacing: float) -> Array:
+    """Points of waterlines, at most a tenth of a spacing apart."""
+    points = []
+    for polygon in polygons:
+        along = np.roll(polygon, -1, axis=0) - polygon
+        count = int(np.ceil(10.0 * np.hypot(*along.T).max() / spacing)) + 1
+        share = np.arange(count)[:, None, None] / count
+        points.append((polygon + share * along).reshape(-1, 2))
+    return np.concatenate(points)
+
+
+def _inside(sheet: Sheet, polygons: Sequence[Array], line: Array) -> Bools:
+    """Nodes inside a waterplane, or nearer to its waterline than MARGIN."""
     from matplotlib.path import Path
 
-    within = np.zeros(sheet.size, dtype=bool)
+    close = np.flatnonzero(
+        (np.abs(sheet.xy - 0.5 * (line.min(axis=0) + line.max(axis=0)))
+         <= 0.5 * np.ptp(line, axis=0) + sheet.spacing).all(axis=1)
+    )  # fmt: skip
+    places = sheet.xy[close]
+    within = np.zeros(len(close), dtype=bool)
     for polygon in polygons:
-        within ^= Path(polygon).contains_points(sheet.xy)
-    distance, _ = KDTree(waterline.points).query(sheet.xy)
-    return np.asarray(within | (distance < MARGIN * sheet.spacing))
+        within ^= Path(polygon).contains_points(places)
+    within |= np.asarray(KDTree(line).query(places)[0]) < MARGIN * sheet.spacing
+    result = np.zeros(sheet.size, dtype=bool)
+    result[close[within]] = True
+    return result
 
 
-def _biharmonic_rows(sheet: Sheet, inside: Ints, number: Ints, outside: int) -> Array:
-    """One row a node inside: the 13-point biharmonic, in the numbering of the continuation."""
-    rows = np.zeros((len(inside), len(inside) + outside))
-    i, j = np.divmod(inside, sheet.shape[1])
+def _rows(sheet: Sheet, inside: Bools, line: Array, others: Bools) -> sparse.csr_matrix:
+    """(nx ny, nx ny) with rows at the nodes of one waterplane."""
+    distance = np.full(sheet.size, np.inf)
+    low, high = line.min(axis=0), line.max(axis=0)
+    reach = (REACH + 1.0) * sheet.spacing
+    box = np.flatnonzero(((sheet.xy > low - reach) & (sheet.xy < high + reach)).all(axis=1))
+    distance[box] = np.asarray(KDTree(line).query(sheet.xy[box])[0]) / sheet.spacing
+    nodes = np.flatnonzero(inside)
+    outside = np.flatnonzero((distance < REACH) & ~others)
+    number = np.full(sheet.size, -1)
+    number[nodes] = np.arange(len(nodes))
+    number[outside] = len(nodes) + np.arange(len(outside))
+    ring = distance[nodes] < RING
+    values = np.zeros((len(nodes), len(outside)))
+    values[ring] = _parabolas(sheet, nodes[ring], outside)
+    core = _biharmonic(sheet, nodes[~ring], number, len(nodes) + len(outside))
+    into, given = core[:, : len(nodes)], core[:, len(nodes) :]
+    values[~ring] = -linalg.lstsq(into[:, ~ring], given + into[:, ring] @ values[ring])[0]
+    shape = (sheet.size, sheet.size)
+    return sparse.csr_matrix(
+        (values.ravel(), (np.repeat(nodes, len(outside)), np.tile(outside, len(nodes)))), shape
+    )
+
+
+def _parabolas(sheet: Sheet, nodes: Ints, outside: Ints) -> Array:
+    """(nodes, outside) weights of the parabolas fitted to the nearest nodes outside."""
+    far, near = KDTree(sheet.xy[outside]).query(sheet.xy[nodes], k=min(NEAR, len(outside)))
+    at = (sheet.xy[outside][near] - sheet.xy[nodes][:, None]) / sheet.spacing
+    x, y = at[..., 0], at[..., 1]
+    terms = np.stack([np.ones_like(x), x, y, x * x, x * y, y * y], axis=-1)
+    weight = np.exp(-0.5 * ((far - far[:, :1]) / sheet.spacing) ** 2)
+    fit = np.linalg.pinv(terms * weight[..., None])[:, 0] * weight
+    result = np.zeros((len(nodes), len(outside)))
+    result[np.arange(len(nodes))[:, None], near] = fit
+    return result
+
+
+def _biharmonic(sheet: Sheet, nodes: Ints, number: Ints, count: int) -> Array:
+    """One row a node: the 13-point biharmonic, in the numbering of the continuation."""
+    rows = np.zeros((len(nodes), count))
+    i, j = np.divmod(nodes, sheet.shape[1])
     for di, dj, value in _BIHARMONIC:
         at = ((i + di) % sheet.shape[0]) * sheet.shape[1] + (j + dj) % sheet.shape[1]
-        np.add.at(rows, (np.arange(len(inside)), number[at]), value)
+        np.add.at(rows, (np.arange(len(nodes)), number[at]), value)
     return rows
-
-
-def _monomials(at: Array, dx: int, dy: int) -> Array:
-    """(..., terms) monomials up to DEGREE at places (..., 2), differentiated once or not."""
-    terms = []
-    for degree in range(DEGREE + 1):
-        for j in range(degree + 1):
-            i = degree - j
-            factor = (i if dx else 1) * (j if dy else 1)
-            power = at[..., 0] ** max(i - dx, 0) * at[..., 1] ** max(j - dy, 0)
-            terms.append(factor * power)
-    return np.stack(terms, axis=-1)
