@@ -187,6 +187,14 @@ class Case(Table):
         """Where relative file names of the case start from."""
         return self._folder
 
+    @property
+    def files(self) -> tuple[str, ...]:
+        """Names of the files that a run of the case reads, as the case has them, in order."""
+        named = [wave.file for wave in self.waves] + [body.mesh for body in self.body]
+        named += [body.motions_file for body in self.body]
+        named += [self.surface.mesh] + [handoff.points for handoff in self.handoff]
+        return tuple(sorted({str(name) for name in named if name is not None}))
+
     def placed(self, folder: Path) -> Self:
         """The same case, its relative file names starting from another folder."""
         case = self.model_copy()

@@ -154,7 +154,7 @@ def _begin(
         notes["trustworthy_from"] = trustworthy_from(surveyed)
         notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)
     manifest = Manifest(
-        inputs=checksums(case.folder, _input_files(case)),
+        inputs=checksums(case.folder, case.files),
         threads=get_num_threads(),
         route=route,
         reason=reason,
@@ -178,13 +178,6 @@ def _begin(
     log.info(f"bemwave {__version__}, process {os.getpid()} on {platform.node()}")
     log.info(f"route {route}: {reason}")
     return manifest
-
-
-def _input_files(case: Case) -> list[str]:
-    named = [wave.file for wave in case.waves] + [body.mesh for body in case.body]
-    named += [body.motions_file for body in case.body]
-    named += [case.surface.mesh] + [handoff.points for handoff in case.handoff]
-    return sorted({str(name) for name in named if name is not None})
 
 
 def _asymmetry(matrix: Array) -> float:

@@ -39,7 +39,7 @@ def plan(case: Case, *, picture: str | os.PathLike[str] | None = None) -> str:
     refuse_unfit(surveyed)
     lines = [
         (label, text)
-        for section in (_route, _water, _sea, _bodies, _panels, _times, _places, _frames, _cost)
+        for section in SECTIONS
         for label, text in section(surveyed)
     ]
     if picture is not None:
@@ -166,6 +166,13 @@ def _frames(s: Survey) -> _Lines:
             yield "", "they start before the solved waves can be trusted"
 
 
+def _files(s: Survey) -> _Lines:
+    for number, name in enumerate(s.case.files):
+        path = (s.case.folder / name).resolve()
+        beside = path.is_relative_to(s.case.folder.resolve())
+        yield "" if number else "files read", name if beside else f"{name}, which is {path}"
+
+
 def _cost(s: Survey) -> _Lines:
     cost = budget(s)
     needed, allowed = (m / GIGABYTE for m in (cost.memory + sampling_memory(s), memory_allowed(s)))
@@ -175,6 +182,12 @@ def _cost(s: Survey) -> _Lines:
         f"about {_span(cost.assembly)} to assemble, {_span(cost.stepping)} to solve, "
         f"{_span(sampling_seconds(s))} to sample"
     )
+
+
+SECTIONS = (
+    *(_route, _water, _sea, _bodies, _panels),
+    *(_times, _places, _frames, _files, _cost),
+)
 
 
 def _span(seconds: float) -> str:

@@ -150,3 +150,16 @@ def test_the_picture_has_everything_to_scale_and_a_title_as_it_is(
         "frames",
     ]
     assert "waves 1" in [text.get_text() for text in axes.texts]
+
+
+def test_the_files_that_a_run_reads_are_listed(tmp_path: Path) -> None:
+    rows = "frequency_rad_s,heading_deg,amplitude_m,phase_deg\n2.0,0,0.1,0\n"
+    home = tmp_path / "case"
+    home.mkdir()
+    (home / "waves.csv").write_text(rows)
+    (tmp_path / "swell.csv").write_text(rows)
+    tables = [{"kind": "table", "file": name} for name in ("waves.csv", "../swell.csv")]
+    asked = case(waves=tables).placed(home)
+    lines = [line.split("  ", 1)[-1].strip() for line in plan(asked).splitlines()]
+    first = lines.index(f"../swell.csv, which is {tmp_path / 'swell.csv'}")
+    assert lines[first + 1] == "waves.csv"
