@@ -104,12 +104,11 @@ class UsdFile:
         """
         if self._done:  # all of it stands from before an interruption
             return
-        from pxr import Gf, Sdf, Usd, UsdGeom
+        from pxr import Gf, Sdf, UsdGeom
 
         code = float(self._numbers[frame])
         beside = self._parts / f"part.{self._numbers[frame]}.usdc"
-        beside.unlink(missing_ok=True)
-        stage = Usd.Stage.CreateNew(str(beside))
+        stage = _new_stage(beside)
         water = UsdGeom.Mesh(stage.OverridePrim("/sea/water"))
         water.CreatePointsAttr().Set(_vectors(points), code)
         water.CreateNormalsAttr().Set(_vectors(normals), code)
@@ -140,9 +139,15 @@ class UsdFile:
         """Make surface.usdc play the first `count` parts."""
         from pxr import Usd
 
-        beside = self._path.with_stem("surface.part")
-        stage = self._stage(beside, self._numbers[count - 1], primvars)
-        clips = Usd.ClipsAPI(stage.GetPrimAtPath("/sea"))
+        still, beside = self._parts / "still.usdc", self._path.with_stem("surface.part")
+        if not still.exists():
+            self._define(new := _new_stage(still.with_stem("still.part")), primvars)
+            new.GetRootLayer().Save()
+            os.replace(still.with_stem("still.part"), still)
+        stage = _new_stage(beside)
+        stage.GetRootLayer().subLayerPaths.append(f"./{self._parts.name}/{still.name}")
+        self._describe(stage, self._numbers[count - 1])
+        clips = Usd.ClipsAPI(stage.OverridePrim("/sea"))
         names = [f"./{self._parts.name}/{self._part(k).name}" for k in range(count)]
         codes = [float(number) for number in self._numbers[:count]]
         clips.SetClipPrimPath("/sea")
@@ -158,7 +163,9 @@ class UsdFile:
         from pxr import Sdf
 
         beside = self._path.with_stem("surface.part")
-        stage = self._stage(beside, self._numbers[-1], primvars)
+        stage = _new_stage(beside)
+        self._define(stage, primvars)
+        self._describe(stage, self._numbers[-1])
         whole = stage.GetRootLayer()
         whole.Save()
         for frame in range(len(self._numbers)):
@@ -172,12 +179,10 @@ class UsdFile:
         shutil.rmtree(self._parts)
         self._done = True
 
-    def _stage(self, path: Path, last: int, primvars: list[str]) -> Any:
-        """A new stage at `path` with all that does not change."""
-        from pxr import Usd, UsdGeom
+    def _describe(self, stage: Any, last: int) -> None:
+        """Axes, units and times, which belong in the file that is opened."""
+        from pxr import UsdGeom
 
-        path.unlink(missing_ok=True)
-        stage = Usd.Stage.CreateNew(str(path))
         UsdGeom.SetStageUpAxis(stage, UsdGeom.Tokens.z)
         UsdGeom.SetStageMetersPerUnit(stage, UsdGeom.LinearUnits.meters)
         stage.SetTimeCodesPerSecond(self._fps)
@@ -185,9 +190,14 @@ class UsdFile:
         stage.SetStartTimeCode(self._numbers[0])
         stage.SetEndTimeCode(last)
         stage.GetRootLayer().documentation = self._note
+        stage.SetDefaultPrim(stage.GetPrimAtPath("/sea"))
+
+    def _define(self, stage: Any, primvars: list[str]) -> None:
+        """All that does not change from frame to frame."""
+        from pxr import Usd, UsdGeom
+
         sea = UsdGeom.Xform.Define(stage, "/sea")
         Usd.ModelAPI(sea).SetKind("component")
-        stage.SetDefaultPrim(sea.GetPrim())
         self._define_water(stage, primvars)
         UsdGeom.Scope.Define(stage, "/sea/bodies")
         for name, mesh in self._bodies.items():
@@ -196,7 +206,6 @@ class UsdFile:
         words = _valid([guide.name for guide in self._guides])
         for word, guide in zip(words, self._guides, strict=True):
             _define_guide(stage, f"/sea/guides/{word}", guide)
-        return stage
 
     def _define_water(self, stage: Any, primvars: list[str]) -> None:
         from pxr import UsdGeom
@@ -214,6 +223,13 @@ class UsdFile:
         _primvar(water, "inside", _types().FloatArray).Set(_numbers(self._sheet.under_hull))
         for name in primvars:
             _primvar(water, name, _types().FloatArray)
+
+
+def _new_stage(path: Path) -> Any:
+    from pxr import Usd
+
+    path.unlink(missing_ok=True)
+    return Usd.Stage.CreateNew(str(path))
 
 
 def _define_body(stage: Any, path: str, mesh: SurfaceMesh, name: str) -> None:
