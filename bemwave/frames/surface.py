@@ -100,7 +100,7 @@ class MovingSurface:
         if sea.count:
             self._seas.append((WaveSum(sea, sheet, shifted), 1.0))
         if short is not None and short.count:
-            shade = shelter(sheet.mesh.points[:, :2], waterlines, short)
+            shade = shelter(_outside(sheet), waterlines, short)
             self._seas.append((WaveSum(short, sheet, shifted), shade))
         self._solved_rows = np.flatnonzero(np.isfinite(sheet.solved_at[:, 0]))
         places = sheet.solved_at[self._solved_rows]
@@ -136,6 +136,14 @@ class MovingSurface:
             state.time, mesh, normals, velocity, water_velocity, elevation, steepness, -rows[4],
             self.sheet.under_hull,
         )  # fmt: skip
+
+
+def _outside(sheet: Sheet) -> Array:
+    """The vertices' places (n, 2), those under hulls mirrored out through the waterline."""
+    plan = sheet.mesh.points[:, :2].copy()
+    under = sheet.under_hull & np.isfinite(sheet.solved_at[:, 0])
+    plan[under] = 2.0 * sheet.solved_at[under] - plan[under]
+    return plan
 
 
 def _solved_rows(maps: SurfaceMaps, state: SurfaceState) -> Array:

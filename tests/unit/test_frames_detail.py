@@ -152,6 +152,9 @@ def test_short_waves_are_faded_behind_hulls_only_where_detail_is_added():
     lee = (x * np.cos(np.pi / 6) + y * np.sin(np.pi / 6) > 6.5) & (np.hypot(x, y) < 9.0)
     away = np.hypot(x, y) > 25.0
     short = drawn.elevation - long
+    skirt = drawn.under_hull & (x * np.cos(np.pi / 6) + y * np.sin(np.pi / 6) > 5.0)
+    assert skirt.sum() > 20
+    assert short[skirt].std() < 0.5 * short[away].std()  # no step at the waterline
     assert short[lee].std() < 0.5 * short[away].std()
 
 
