@@ -180,6 +180,12 @@ def _filled_out(unit: SurfaceMesh, top: float) -> SurfaceMesh:
         points[rim, :2] *= polygon_radius(1.0, int(rim.sum()))
     for _ in range(40):  # the volume goes nearly with the cube, so each round gains a digit
         points[~rim] *= (exact / _volume_under(unit.with_points(points), level)) ** (1.0 / 3.0)
+    missed = abs(_volume_under(unit.with_points(points), level) / exact - 1.0)
+    if not missed < 1e-10:
+        raise InputError(
+            f"the panels of a sphere could not be given its volume, {missed:.2g} of it is missing, "
+            "expected below 1e-10: give the body a smaller panel_size"
+        )
     return unit.with_points(points)
 
 

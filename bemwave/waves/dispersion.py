@@ -15,6 +15,7 @@ from bemwave.errors import InputError
 Array = NDArray[np.float64]
 
 STANDARD_GRAVITY = 9.80665
+LARGEST_RESIDUAL = 1e-12  # of w^2, in the dispersion relation
 SEA_WATER_DENSITY = 1025.0
 
 
@@ -65,8 +66,19 @@ def wavenumber_of_frequency(
     for _ in range(4):
         tanh = np.tanh(x)
         x = x - (x * tanh - alpha) / (tanh + x * (1 - tanh**2))
+    _refuse_unsolved(np.abs(x * np.tanh(x) / alpha - 1), w, h)
     k: Array = np.where(finite, x / np.where(finite, h, 1.0), deep_wavenumber)[()]
     return k
+
+
+def _refuse_unsolved(missed: Array, frequency: Array, depth: Array) -> None:
+    if not (missed < LARGEST_RESIDUAL).all():
+        worst = np.unravel_index(np.argmax(np.nan_to_num(missed, nan=np.inf)), missed.shape)
+        raise InputError(
+            f"no wavenumber was found for {frequency[worst]:.3g} rad/s in {depth[worst]:.3g} m of "
+            f"water: the dispersion relation is missed by {missed[worst]:.2g}, expected below "
+            f"{LARGEST_RESIDUAL:g}; give a period and a depth of real water"
+        )
 
 
 def wavelength(period: ArrayLike, depth: ArrayLike, gravity: float = STANDARD_GRAVITY) -> Array:
