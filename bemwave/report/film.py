@@ -88,14 +88,21 @@ def film_of(run: Run, times: Array) -> Film:
 
 
 def frame_times(records: Array, peak_period: float) -> Array:
-    """Times of the frames out of those of the records: enough in a period, the latest of them."""
+    """Times of the frames: enough in a period of the peak, the latest of them.
+
+    Some of the records, or all and times between, where these follow the waves well enough for
+    the run to fill in: at a quarter period it errs by 2 % ((w dt)^4/384).
+    """
     if len(records) < 2:
         return records
     interval = float(records[-1] - records[0]) / (len(records) - 1)
+    stride = math.ceil(len(records) / FRAMES)
     if math.isfinite(peak_period):
-        stride = max(1, int(peak_period / FRAMES_PER_PERIOD / interval))
-    else:
-        stride = math.ceil(len(records) / FRAMES)
+        wanted = peak_period / FRAMES_PER_PERIOD
+        stride = max(1, int(wanted / interval))
+        if wanted < interval <= 0.25 * peak_period:
+            parts = math.ceil(interval / wanted)
+            records = np.linspace(records[0], records[-1], parts * (len(records) - 1) + 1)
     return np.asarray(records[::-1][::stride][:FRAMES][::-1])
 
 

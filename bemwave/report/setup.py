@@ -35,11 +35,12 @@ def _brief(run: Run) -> str:
     if sea.count == 0:
         waves = "no incident waves"
     elif sea.count == 1:
-        waves = f"a regular wave of {number(2 * float(sea.amplitude[0]))} m and {_period(run)} s"
+        period = number(2.0 * math.pi / float(sea.frequency[0]))
+        waves = f"a regular wave of {number(2.0 * float(sea.amplitude[0]))} m and {period} s"
     else:
         waves = (
-            f"a sea of {number(sea.significant_height)} m significant height and {_period(run)} s "
-            f"at the peak ({sea.count} components)"
+            f"a sea of {number(sea.significant_height)} m significant height and {_period(run)} "
+            f"({sea.count} components)"
         )
     depth = "deep water" if math.isinf(sea.depth) else f"water {sea.depth:g} m deep"
     names = ", ".join(body.name for body in case.body) or "no bodies"
@@ -47,7 +48,13 @@ def _brief(run: Run) -> str:
 
 
 def _period(run: Run) -> str:
-    return number(run.manifest.peak_period)
+    """The peak's where the case gives one for all, else that of the mean energy."""
+    given = {wave.period for wave in run.case.waves}
+    peak = given.pop() if len(given) == 1 else None
+    if peak is not None:
+        return f"{number(peak)} s at the peak"
+    energy = 2.0 * math.pi * run.sea.moment(-1) / run.sea.moment(0)
+    return f"{number(energy)} s energy period"
 
 
 def _run_rows(material: Material) -> Iterator[tuple[str, str]]:

@@ -58,3 +58,5 @@ def test_frames_follow_the_peak_and_are_the_latest() -> None:
     assert len(frame_times(np.linspace(0.0, 900.0, 9001), 8.0)) == 240
     assert frame_times(np.linspace(0.0, 9.0, 5), 1.0) == pytest.approx(np.linspace(0.0, 9.0, 5))
     assert len(frame_times(records, math.inf)) <= 240
+    filled = frame_times(np.linspace(0.0, 28.0, 29), 5.0)
+    assert np.diff(filled) == pytest.approx(0.25)  # a quarter of the interval of the records
