@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
+from bemwave import __version__
 from bemwave.frames.sheet import Array, Bools
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.vtp_files import save
@@ -39,6 +40,7 @@ def pvd_text(files: Sequence[tuple[float, str]]) -> str:
     return "\n".join(
         [
             '<?xml version="1.0"?>',
+            f"<!-- bemwave {__version__} -->",
             '<VTKFile type="Collection" version="0.1" byte_order="LittleEndian">',
             "  <Collection>",
             *lines,

@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 
+from bemwave import __version__
 from bemwave.geometry.meshio_files import UNNAMED, named
 from bemwave.geometry.surface_mesh import FloatArray, SurfaceMesh
 
@@ -60,6 +61,7 @@ def write_vtp(mesh: SurfaceMesh, path: Path) -> None:
     data = pv.PolyData.from_regular_faces(mesh.points.copy(), mesh.triangles)
     data.cell_data["part"] = mesh.part.astype(np.int32)
     data.field_data["part_names"] = list(mesh.part_names)
+    data.field_data["bemwave_version"] = [__version__]
     save(data, path)
 
 

@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import numpy.typing as npt
 
+from bemwave import __version__
 from bemwave.bodies.modes import displacement
 from bemwave.case.output import Box
 from bemwave.case.output import Frames as Entry
@@ -50,7 +51,8 @@ class FramesOutput:
             DrawnBody(hull.name, drawn_mesh(hull), hull.place, body.attitude != "fixed")
             for hull, body in zip(survey.hulls, case.body, strict=True)
         ]
-        surface, note = moving_surface(survey, case.frames, flow), note_on(survey)
+        surface = moving_surface(survey, case.frames, flow)
+        note = f"{note_on(survey)}; bemwave {__version__}"
         guides = list(_guides(survey))
         self._writer = FrameWriter(case.frames, surface, bodies, folder, keep, guides, note)
         self.times = self._writer.times

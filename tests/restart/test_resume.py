@@ -12,7 +12,9 @@ from pathlib import Path
 
 import netCDF4
 import pytest
+import pyvista
 
+from bemwave import __version__
 from bemwave.case import Case, read_case
 from bemwave.errors import InputError, RunError
 from bemwave.records import (
@@ -288,3 +290,21 @@ def test_what_a_finished_run_wrote_has_its_checksums_in_the_manifest(
     assert {"case.toml", "history.nc", "handoff/box.nc", "frames/surface.pvd"} <= files.keys()
     assert not files.keys() & {"manifest.json", "log.txt", "checks.json"}
     assert files == checksums(folder, files)
+
+
+def test_every_file_says_which_version_wrote_it(
+    whole: Callable[[str], tuple[Case, Path]],
+) -> None:
+    _, folder = whole("tank")
+    files = {path for path in folder.rglob("*") if path.is_file()}
+    # the case is the user's, the checks are a list of verdicts; a checkpoint has its own mark
+    for path in files - {folder / "case.toml", folder / "checks.json"}:
+        if path.suffix == ".nc":
+            with netCDF4.Dataset(path) as file:
+                told = str(file.bemwave_version)
+        elif path.suffix == ".vtp":
+            fields = pyvista.read(path).field_data
+            told = str([list(fields[name]) for name in fields])
+        else:
+            told = path.read_bytes().decode("latin-1")
+        assert ("bemwave checkpoint" if path.suffix == ".ckpt" else __version__) in told, path
