@@ -4,7 +4,7 @@ from bemwave.frames.bodies import drawn_mesh
 from bemwave.frames.crests import Crests, SolvedShift
 from bemwave.frames.sheet import Sheet, cut_sheet, grid_sheet, solver_sheet
 from bemwave.frames.surface import MovingSurface, WaterFrame
-from bemwave.frames.usd import Guide
+from bemwave.frames.usd_prims import Guide
 from bemwave.frames.writer import DrawnBody, FrameWriter, frame_times, need_libraries, sheet_of
 
 __all__ = [

@@ -8,32 +8,31 @@ it. What is held in memory is one frame.
 
 from __future__ import annotations
 
-import math
 import os
 import shutil
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 import numpy as np
-from scipy import sparse
 
 from bemwave.errors import MissingLibraryError
-from bemwave.frames.sheet import Array, Bools, Sheet
+from bemwave.frames.sheet import Array, Sheet
+from bemwave.frames.usd_prims import (
+    Guide,
+    define_body,
+    define_guide,
+    primvar,
+    scalars,
+    set_triangles,
+    valid_names,
+    value_types,
+    vectors,
+)
 from bemwave.geometry.pose import Pose
 from bemwave.geometry.surface_mesh import SurfaceMesh
 
-CREASE = 40.0  # degrees
 SAVED_AT_ONCE = 8  # frames moved into the one file between two of its saves
-
-
-@dataclass(frozen=True)
-class Guide:
-    """Lines that show where something is and are not rendered: polylines (k, 3), m."""
-
-    name: str
-    lines: Sequence[Array]
 
 
 def need_usd() -> None:
@@ -81,7 +80,8 @@ class UsdFile:
         self._done = whole and keep > 0
         self._sheet, self._bodies, self._guides = sheet, bodies, guides
         self._fps, self._note = fps, note
-        self._names = dict(zip(bodies, _valid(list(bodies)), strict=True))
+        self._names = dict(zip(bodies, valid_names(list(bodies)), strict=True))
+        shutil.rmtree(self._parts.with_suffix(".old"), ignore_errors=True)
         if not self._done:
             self._parts.mkdir(exist_ok=True)
 
@@ -110,14 +110,14 @@ class UsdFile:
         beside = self._parts / f"part.{self._numbers[frame]}.usdc"
         stage = _new_stage(beside)
         water = UsdGeom.Mesh(stage.OverridePrim("/sea/water"))
-        water.CreatePointsAttr().Set(_vectors(points), code)
-        water.CreateNormalsAttr().Set(_vectors(normals), code)
-        water.CreateVelocitiesAttr().Set(_vectors(velocity), code)
+        water.CreatePointsAttr().Set(vectors(points), code)
+        water.CreateNormalsAttr().Set(vectors(normals), code)
+        water.CreateVelocitiesAttr().Set(vectors(velocity), code)
         corners = np.array([points.min(axis=0), points.max(axis=0)])
-        water.CreateExtentAttr().Set(_vectors(corners), code)
+        water.CreateExtentAttr().Set(vectors(corners), code)
         for name, values in primvars.items():
-            attribute = water.GetPrim().CreateAttribute(f"primvars:{name}", _types().FloatArray)
-            attribute.Set(_numbers(values), code)
+            kind = value_types().FloatArray
+            water.GetPrim().CreateAttribute(f"primvars:{name}", kind).Set(scalars(values), code)
         for name, place in places.items():
             prim = stage.OverridePrim(f"/sea/bodies/{self._names[name]}")
             matrix = np.eye(4)
@@ -176,7 +176,9 @@ class UsdFile:
         whole.Save()
         del whole, stage
         os.replace(beside, self._path)
-        shutil.rmtree(self._parts)
+        old = self._parts.with_suffix(".old")  # so that a kill leaves all of the parts or none
+        os.replace(self._parts, old)
+        shutil.rmtree(old)
         self._done = True
 
     def _describe(self, stage: Any, last: int) -> None:
@@ -201,17 +203,17 @@ class UsdFile:
         self._define_water(stage, primvars)
         UsdGeom.Scope.Define(stage, "/sea/bodies")
         for name, mesh in self._bodies.items():
-            _define_body(stage, f"/sea/bodies/{self._names[name]}", mesh, name)
+            define_body(stage, f"/sea/bodies/{self._names[name]}", mesh, name)
         UsdGeom.Scope.Define(stage, "/sea/guides")
-        words = _valid([guide.name for guide in self._guides])
+        words = valid_names([guide.name for guide in self._guides])
         for word, guide in zip(words, self._guides, strict=True):
-            _define_guide(stage, f"/sea/guides/{word}", guide)
+            define_guide(stage, f"/sea/guides/{word}", guide)
 
     def _define_water(self, stage: Any, primvars: list[str]) -> None:
         from pxr import UsdGeom
 
         water = UsdGeom.Mesh.Define(stage, "/sea/water")
-        _set_triangles(water, self._sheet.mesh)
+        set_triangles(water, self._sheet.mesh)
         water.CreatePointsAttr()
         water.CreateNormalsAttr()
         water.SetNormalsInterpolation(UsdGeom.Tokens.vertex)
@@ -219,10 +221,10 @@ class UsdFile:
         water.CreateExtentAttr()
         plan = self._sheet.mesh.points[:, :2]
         low, size = plan.min(axis=0), np.ptp(plan, axis=0)
-        _primvar(water, "st", _types().TexCoord2fArray).Set(_vectors((plan - low) / size))
-        _primvar(water, "inside", _types().FloatArray).Set(_numbers(self._sheet.under_hull))
+        primvar(water, "st", value_types().TexCoord2fArray).Set(vectors((plan - low) / size))
+        primvar(water, "inside", value_types().FloatArray).Set(scalars(self._sheet.under_hull))
         for name in primvars:
-            _primvar(water, name, _types().FloatArray)
+            primvar(water, name, value_types().FloatArray)
 
 
 def _new_stage(path: Path) -> Any:
@@ -230,66 +232,6 @@ def _new_stage(path: Path) -> Any:
 
     path.unlink(missing_ok=True)
     return Usd.Stage.CreateNew(str(path))
-
-
-def _define_body(stage: Any, path: str, mesh: SurfaceMesh, name: str) -> None:
-    from pxr import UsdGeom
-
-    body = UsdGeom.Mesh.Define(stage, path)
-    body.GetPrim().SetDisplayName(name)
-    _set_triangles(body, mesh)
-    body.CreatePointsAttr().Set(_vectors(mesh.points))
-    body.CreateExtentAttr().Set(_vectors(np.array([mesh.points.min(0), mesh.points.max(0)])))
-    body.CreateNormalsAttr().Set(_vectors(_creased_normals(mesh)))
-    body.SetNormalsInterpolation(UsdGeom.Tokens.faceVarying)
-    body.AddTransformOp()
-
-
-def _creased_normals(mesh: SurfaceMesh) -> Array:
-    """At every corner of every triangle, (3 m, 3): smooth, but for edges sharper than CREASE."""
-    count = len(mesh.triangles)
-    triangle, vertex = np.repeat(np.arange(count), 3), mesh.triangles.ravel()
-    shape = (len(mesh.points), count)
-    about = sparse.csr_matrix((np.ones(3 * count), (vertex, triangle)), shape=shape)
-    pairs = about[vertex].tocoo()  # a corner and each triangle that meets its vertex
-    alike = np.sum(mesh.normals[triangle[pairs.row]] * mesh.normals[pairs.col], axis=1)
-    smooth = alike > math.cos(math.radians(CREASE))
-    sums = np.zeros((3 * count, 3))
-    np.add.at(sums, pairs.row[smooth], mesh.area_vectors[pairs.col[smooth]])
-    return np.asarray(sums / np.maximum(np.linalg.norm(sums, axis=1, keepdims=True), 1e-300))
-
-
-def _define_guide(stage: Any, path: str, guide: Guide) -> None:
-    from pxr import UsdGeom
-
-    lines = UsdGeom.BasisCurves.Define(stage, path)
-    lines.GetPrim().SetDisplayName(guide.name)
-    lines.CreatePurposeAttr(UsdGeom.Tokens.guide)
-    lines.CreateTypeAttr(UsdGeom.Tokens.linear)
-    lines.CreateCurveVertexCountsAttr([len(line) for line in guide.lines])
-    points = np.concatenate(guide.lines)
-    lines.CreatePointsAttr(_vectors(points))
-    lines.CreateWidthsAttr([0.02])
-    lines.SetWidthsInterpolation(UsdGeom.Tokens.constant)
-    lines.CreateExtentAttr(_vectors(np.array([points.min(0) - 0.01, points.max(0) + 0.01])))
-
-
-def _set_triangles(prim: Any, mesh: SurfaceMesh) -> None:
-    from pxr import UsdGeom, Vt
-
-    counts = np.full(len(mesh.triangles), 3, dtype=np.int32)
-    corners = mesh.triangles.ravel().astype(np.int32)
-    prim.CreateFaceVertexCountsAttr(Vt.IntArray.FromNumpy(counts))
-    prim.CreateFaceVertexIndicesAttr(Vt.IntArray.FromNumpy(corners))
-    prim.CreateSubdivisionSchemeAttr(UsdGeom.Tokens.none)
-    prim.CreateOrientationAttr(UsdGeom.Tokens.rightHanded)
-    prim.CreateDoubleSidedAttr(True)
-
-
-def _primvar(prim: Any, name: str, kind: Any) -> Any:
-    from pxr import UsdGeom
-
-    return UsdGeom.PrimvarsAPI(prim).CreatePrimvar(name, kind, UsdGeom.Tokens.vertex)
 
 
 def _copy_samples(part: Any, whole: Any) -> None:
@@ -303,40 +245,7 @@ def _copy_samples(part: Any, whole: Any) -> None:
     part.Traverse(part.pseudoRoot.path, visit)
 
 
-def _valid(names: list[str]) -> list[str]:
-    """Names that prims can have, each once."""
-    from pxr import Tf
-
-    result: list[str] = []
-    for name in names:
-        word = base = Tf.MakeValidIdentifier("_" + name if name[0].isdigit() else name)
-        number = 2
-        while word in result:
-            word, number = f"{base}_{number}", number + 1
-        result.append(word)
-    return result
-
-
-def _types() -> Any:
-    from pxr import Sdf
-
-    return Sdf.ValueTypeNames
-
-
 def _assets(names: Sequence[str]) -> Any:
     from pxr import Sdf
 
     return Sdf.AssetPathArray([Sdf.AssetPath(name) for name in names])
-
-
-def _vectors(rows: Array) -> Any:
-    from pxr import Vt
-
-    kind = Vt.Vec3fArray if rows.shape[1] == 3 else Vt.Vec2fArray
-    return kind.FromNumpy(np.ascontiguousarray(rows, dtype=np.float32))
-
-
-def _numbers(values: Array | Bools) -> Any:
-    from pxr import Vt
-
-    return Vt.FloatArray.FromNumpy(np.ascontiguousarray(values, dtype=np.float32))

@@ -19,7 +19,8 @@ from bemwave.frames.obj import write_obj
 from bemwave.frames.ply import write_ply
 from bemwave.frames.sheet import Array, Bools, Sheet, cut_sheet, grid_sheet, solver_sheet
 from bemwave.frames.surface import MovingSurface, WaterFrame, vertex_normals
-from bemwave.frames.usd import Guide, UsdFile, need_usd
+from bemwave.frames.usd import UsdFile, need_usd
+from bemwave.frames.usd_prims import Guide
 from bemwave.frames.vtk import pvd_text, write_vtp
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.pose import Pose
