@@ -127,12 +127,26 @@ spacing = 0.1
 displacement_maps = true
 """
 
+PICTURES = (
+    TANK.replace('["ply", "vtk"]', '["usd", "obj", "glb", "ply", "vtk"]')
+    .replace("start = 2.0\nfps = 5", "start = 1.0\nfps = 5")
+    .replace("volume_at_start = true\n", "")
+    + """\
+region = { size = [3.0, 1.0] }
+spacing = 0.2
+shading = true
+displacement_maps = true
+horizontal_displacement = true
+"""
+)
+
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
 CASES = {
     "tank": TANK,
     "sphere": SPHERE,
     "moved by file": MOVED_BY_FILE,
     "sea alone": SEA_ALONE,
+    "pictures": PICTURES,
 }
 
 
