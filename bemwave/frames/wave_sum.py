@@ -38,9 +38,11 @@ class WaveSum:
         squares = sheet.squares
         self._sea, self._rows = sea, None if squares is None else squares.rows
         self._weights = _weights(sea, shifted)
-        k = (sea.wavenumber * np.cos(sea.heading), sea.wavenumber * np.sin(sea.heading))
+        once = sea.wavenumber * np.array([np.cos(sea.heading), np.sin(sea.heading)])
+        k = np.hstack([once, -once])  # see `at`
         # one thread: the same sum, bit by bit, whatever the machine
-        common = {"n_trans": len(self._weights), "eps": ACCURACY, "isign": 1, "nthreads": 1}
+        pairs = (len(self._weights) + 1) // 2
+        common = {"n_trans": pairs, "eps": ACCURACY, "isign": 1, "nthreads": 1}
         if squares is None:
             self._start = np.exp(1j * sea.phase)
             self._plan = finufft.Plan(3, 2, **common)
@@ -48,20 +50,27 @@ class WaveSum:
         else:
             (x, y), (dx, dy), count = squares.corner, squares.step, squares.count
             # the transform counts from the middle of the rectangle
-            middle = k[0] * (x + dx * (count[0] // 2)) + k[1] * (y + dy * (count[1] // 2))
+            middle = once[0] * (x + dx * (count[0] // 2)) + once[1] * (y + dy * (count[1] // 2))
             self._start = np.exp(1j * (sea.phase + middle))
             self._plan = finufft.Plan(1, count, **common)
             turn = 2.0 * math.pi
             self._plan.setpts(np.remainder(k[0] * dx, turn), np.remainder(k[1] * dy, turn))
 
     def at(self, time: float) -> Array:
-        """At a time [s], the rows of `_weights`: (5 or 7, n)."""
-        turned = self._start * np.exp(-1j * self._sea.frequency * time)
-        found: Complex = self._plan.execute(np.ascontiguousarray(self._weights * turned))
-        if self._rows is None:
-            return np.asarray(found.real)
-        # the transform has x first
-        return np.asarray(found.real.transpose(0, 2, 1).reshape(len(found), -1)[:, self._rows])
+        """At a time [s], the rows of `_weights`: (5 or 7, n).
+
+        Two real rows are the real and the imaginary part of one transform, in which each wave
+        stands with its conjugate at minus its wavenumber.
+        """
+        turned = self._weights * (self._start * np.exp(-1j * self._sea.frequency * time))
+        first, second = turned[0::2], np.zeros_like(turned[0::2])
+        second[: len(turned) // 2] = turned[1::2]
+        both = [first + 1j * second, first.conj() + 1j * second.conj()]
+        found: Complex = self._plan.execute(np.ascontiguousarray(0.5 * np.hstack(both)))
+        if self._rows is not None:  # the transform has x first
+            found = found.transpose(0, 2, 1).reshape(len(found), -1)[:, self._rows]
+        split = np.stack([found.real, found.imag], axis=1).reshape(2 * len(found), -1)
+        return np.asarray(split[: len(turned)])
 
 
 def _weights(sea: Sea, shifted: bool) -> Complex:
