@@ -54,8 +54,6 @@ class BodyLoads:
         """(times, 6) load of the incident sea's pressure on the mean wetted surface [N, N m]."""
         return np.asarray(self._sea.pressure(np.atleast_1d(times)) @ self._incident.T)
 
-    def solved(self, surface_rate: Array, hull_rate: Array) -> Array:
-        """(6, ...) load of a solved potential's rate at surface and hull nodes [N, N m]."""
-        return np.asarray(
-            -self._density * (self._nodal @ np.concatenate([surface_rate, hull_rate]))
-        )
+    def solved(self, rate: Array) -> Array:
+        """(6, ...) load of a solved potential's rate at the elements' nodes [N, N m]."""
+        return np.asarray(-self._density * (self._nodal @ rate))

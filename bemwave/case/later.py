@@ -21,8 +21,6 @@ def refuse_not_yet(case: Case) -> None:
 
 
 def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
-    if case.surface.route == "grid":
-        yield '[surface] route = "grid"', 'write route = "panels"'
     if any(case.water.current):
         yield "[water] current", "take it out"
     for body in case.body:
@@ -39,8 +37,6 @@ def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
 
 
 def _run_not_yet(case: Case) -> Iterator[tuple[str, str]]:
-    if case.run.history_region is not None:
-        yield "[run] history_region", "take it out: the whole surface is recorded"
     if case.run.precision != "double":
         yield '[run] precision = "single"', "take it out"
 

@@ -21,7 +21,7 @@ no mode of the water can grow, whatever hulls there are; where E is positive no 
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 import numpy.typing as npt
@@ -52,6 +52,7 @@ class GridFlow:
     bodies : the closed surfaces of hulls and waterplanes (`geometry.waterplane.closed_bodies`);
         None where there are none.
     waterlines : for each body that pierces the surface its waterlines, (k, 2) [m].
+    progress : called with the share of the work done, 0 to 1.
 
     Attributes
     ----------
@@ -63,13 +64,14 @@ class GridFlow:
         sheet: Sheet,
         bodies: SurfaceMesh | None = None,
         waterlines: Sequence[Sequence[Array]] = (),
+        progress: Callable[[float], None] = lambda share: None,
     ) -> None:
         self.sheet = sheet
         self.elements = body_elements(bodies)
         self.continuation = Continuation(sheet, waterlines)
         self._area = sheet.spacing**2
-        if bodies is not None:
-            self._coupling = _Bodies(sheet, self.elements)
+        if self.elements.nodes:
+            self._coupling = _Bodies(sheet, self.elements, progress)
         self.mass = sparse.csr_matrix(self._area * sparse.identity(sheet.size, format="csr"))
         if waterlines:
             self.mass = sparse.csr_matrix(self.mass - self._coupling.dry_mass)
@@ -89,7 +91,8 @@ class GridFlow:
             (np.ones(len(at)), (at, np.arange(len(at)))), shape=(len(rows), len(at))
         )
         spread = spread + place @ inside
-        local = spread.T @ (self.mass[rows][:, rows] @ spread)
+        around = sparse.csr_matrix(sparse.csr_matrix(self.mass[rows])[:, rows])
+        local = spread.T @ (around @ spread)
         self._solve_near = solver_of(sparse.csc_matrix(local))
 
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
@@ -123,9 +126,45 @@ class GridFlow:
         """A field given on the water, (nx ny,) or (nx ny, k), continued through waterplanes."""
         return self.continuation(field)
 
-    def march(self, gravity: float, step: float) -> GridMarch:
-        """The steps of free waves in time."""
-        return GridMarch(self, gravity, step)
+    @property
+    def places(self) -> Array:
+        """(nx ny, 2) where the surface's values stand [m]."""
+        return self.sheet.xy
+
+    @property
+    def hull_places(self) -> Array:
+        """(nodes, 3) where the bodies' values stand [m]."""
+        return self.elements.points
+
+    def at_nodes(self, surface: Array, hull: Array) -> Array:
+        """A field of the surface and of bodies, at the nodes of `elements`."""
+        return hull
+
+    def nodal(self, height: Callable[[Array], Array]) -> Array:
+        """(nx ny,) values of a function of places (n, 2)."""
+        return self.continuation(height(self.sheet.xy))
+
+    def damping(self, rate: Callable[[Array], Array]) -> sparse.csc_matrix:
+        """(nx ny, nx ny) int rate, of a rate [1/s] at places (n, 2), zero near hulls."""
+        return sparse.csc_matrix(sparse.diags(self._area * rate(self.sheet.xy)))
+
+    def asymmetry(self) -> float:
+        """|a' S b - b' S a| over a' S a, of two fields drawn at random."""
+        fields = np.random.default_rng(1).standard_normal((self.sheet.size, 2))
+        fields = self.continuation(fields)
+        still = np.zeros((len(self.elements.hull), 2))
+        energy = fields.T @ (self.mass @ self.surface_flux(fields, still))
+        return float(abs(energy[0, 1] - energy[1, 0]) / abs(energy[0, 0]))
+
+    def fastest(self, gravity: float) -> float:
+        """The largest angular frequency of free waves on the grid [rad/s]."""
+        return float(np.sqrt(gravity * self.sheet.rise.max()))
+
+    def march(
+        self, gravity: float, step: float, damping: sparse.csc_matrix | None = None
+    ) -> GridMarch:
+        """Steps of a length [s]."""
+        return GridMarch(self, gravity, step, damping)
 
     def _transform(self, fields: Array) -> Complex:
         return self.sheet.transform(fields.T.reshape(-1, *self.sheet.shape))
@@ -137,9 +176,9 @@ class GridFlow:
 class _Bodies:
     """All that closed bodies add to the energy of the grid's own waves."""
 
-    def __init__(self, sheet: Sheet, e: Elements) -> None:
+    def __init__(self, sheet: Sheet, e: Elements, progress: Callable[[float], None]) -> None:
         images = make_images(sheet.depth, True, (), sheet.spacing * max(sheet.shape))
-        energy, given = forms(e, images)
+        energy, given = forms(e, images, progress=lambda share: progress(0.4 * share))
         self._count, free = e.nodes, e.free
         line = np.unique(e.hull)
         self._line = line[line < free]
@@ -185,20 +224,36 @@ class _Bodies:
 
 
 class GridMarch:
-    """The surface flux of a step that is exact in time for free waves.
+    """The surface flux of a step, averaged over it so that leapfrog is exact for free waves.
 
-    As on route "panels" a step is leapfrog on A_dt = 2 (1 - cos w dt)/(g dt^2), here for the grid's
-    own waves only; what hulls add is of the second order, (w dt)^2/12.
+    Of the grid's own waves A becomes A_dt = 2 (1 - cos w dt)/(g dt^2); what hulls add is of the
+    second order, (w dt)^2/12.
     """
 
-    def __init__(self, flow: GridFlow, gravity: float, step: float) -> None:
+    def __init__(
+        self, flow: GridFlow, gravity: float, step: float, damping: sparse.csc_matrix | None
+    ) -> None:
         self._flow = flow
         half_turn = 0.5 * step * np.sqrt(gravity * flow.sheet.rise)
         self._rise = flow.sheet.rise * np.sinc(half_turn / np.pi) ** 2
+        self._rate: Array | None = None
+        if damping is not None:
+            self._rate = damping.diagonal()[:, None] / flow.sheet.spacing**2
+            self._share = 1.0 / (1.0 + 0.5 * step * self._rate)
 
-    def flux(self, potential: Array, hull_flux: Array) -> Array:
-        """(nx ny, k) from the potential at the step's middle and the given flux, smoothed."""
-        return self._flow.vertical_velocity(potential, hull_flux, self._rise)
+    def given(self, fluxes: Sequence[Array]) -> Array:
+        """(times, ...) to be passed on to `flux`, of the given flux (mB, times) of each part."""
+        return np.stack([flux.T for flux in fluxes], axis=2)
+
+    def flux(self, potential: Array, given: Array) -> Array:
+        """(nx ny, parts) from the potential in the middle of a step."""
+        return self._flow.vertical_velocity(potential, given, self._rise)
+
+    def damped(self, flux: Array, mean: Array) -> Array:
+        """Rate of the step's mean elevation: the flux less what the absorber takes, old and new."""
+        if self._rate is None:
+            return flux
+        return np.asarray((flux - self._rate * mean) * self._share)
 
 
 def body_elements(bodies: SurfaceMesh | None) -> Elements:

@@ -20,7 +20,7 @@ and positive semi-definite on any mesh, hence no growing mode and no need of smo
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 import numpy as np
 import numpy.typing as npt
@@ -28,6 +28,7 @@ from scipy import linalg, sparse
 
 from bemwave.errors import RunError
 from bemwave.flow.elements import Elements, solver_of, split
+from bemwave.flow.exact import exact_map, fastest_frequency
 from bemwave.flow.images import Images, Mirror, make_images
 from bemwave.flow.lattice import curl_moments
 from bemwave.geometry.surface_mesh import SurfaceMesh
@@ -102,6 +103,86 @@ class PanelFlow:
         """M_F^-1 load."""
         result: Array = self._solve_mass(load)
         return result
+
+    @property
+    def places(self) -> Array:
+        """(free, 2) where the surface's values stand [m]."""
+        return self.elements.points[: self.elements.free, :2]
+
+    @property
+    def hull_places(self) -> Array:
+        """(below, 3) where the hulls' and walls' values stand [m]."""
+        return self.elements.points[self.elements.free : self.elements.nodes]
+
+    def at_nodes(self, surface: Array, hull: Array) -> Array:
+        """A field of the surface and of hulls and walls, at the nodes of `elements`."""
+        return np.concatenate([surface, hull])
+
+    def nodal(self, height: Callable[[Array], Array]) -> Array:
+        """(free,) values whose hats are nearest to a function of places (n, 2)."""
+        e = self.elements
+        load = np.zeros(len(e.points))
+        corners = e.points[e.water, :2]
+        for rule in kernel.SEVEN:
+            values = height(np.einsum("j,mjc->mc", rule[:3], corners))
+            for j in range(3):
+                share = e.water_table[:, 28] * rule[3] * rule[j]
+                np.add.at(load, e.water[:, j], share * values)
+        return self.solve_mass(load[: e.free])
+
+    def damping(self, rate: Callable[[Array], Array]) -> sparse.csc_matrix:
+        """(free, free) int rate hat hat, of a rate [1/s] at places (n, 2)."""
+        return self.elements.weighted_mass(rate(self.elements.water_table[:, 24:26]))
+
+    def asymmetry(self) -> float:
+        """Largest difference across the flow map's diagonal over its largest entry."""
+        matrix = self.surface_matrix
+        rows = [slice(start, start + 256) for start in range(0, len(matrix), 256)]
+        largest = max(np.abs(matrix[row]).max() for row in rows)
+        return float(max(np.abs(matrix[row] - matrix[:, row].T).max() for row in rows) / largest)
+
+    def fastest(self, gravity: float) -> float:
+        """The largest angular frequency of free waves on the mesh [rad/s]."""
+        return fastest_frequency(self.surface_matrix, self.solve_mass, gravity)
+
+    def march(
+        self, gravity: float, step: float, damping: sparse.csc_matrix | None = None
+    ) -> PanelMarch:
+        """Steps of a length [s], exact in time."""
+        return PanelMarch(self, gravity, step, damping)
+
+
+class PanelMarch:
+    """The surface flux of a step, averaged over it so that leapfrog is exact for free waves.
+
+    See `exact.exact_map`; what is given is averaged to the fourth order, f - (g dt^2/12) A f.
+    """
+
+    def __init__(
+        self, flow: PanelFlow, gravity: float, step: float, damping: sparse.csc_matrix | None
+    ) -> None:
+        self._flow, self._damping = flow, damping
+        self._map = exact_map(flow.surface_matrix, flow.solve_mass, gravity, step)
+        self._given_map = flow.solve_mass(flow.hull_flux_matrix)
+        self._late = gravity * step**2 / 12.0
+        if damping is not None:
+            self._solve = solver_of(sparse.csc_matrix(flow.mass + 0.5 * step * damping))
+
+    def given(self, fluxes: Sequence[Array]) -> Array:
+        """(times, ...) to be passed on to `flux`, of the given flux (mB, times) of each part."""
+        return np.stack([(self._given_map @ flux).T for flux in fluxes], axis=2)
+
+    def flux(self, potential: Array, given: Array) -> Array:
+        """(free, parts) from the potential in the middle of a step."""
+        moving = potential - self._late * given
+        # part by part: libraries are slow at products with two or three columns
+        return np.column_stack([self._map @ part for part in moving.T]) + given
+
+    def damped(self, flux: Array, mean: Array) -> Array:
+        """Rate of the step's mean elevation: the flux less what the absorber takes, old and new."""
+        if self._damping is None:
+            return flux
+        return np.asarray(self._solve(self._flow.mass @ flux - self._damping @ mean))
 
 
 def _cholesky(matrix: Array, where: str) -> Array:

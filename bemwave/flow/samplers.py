@@ -216,7 +216,7 @@ def _maps(samplers: PanelSamplers, points: Array, components: int) -> tuple[Arra
         part = np.ascontiguousarray(points[start : start + BLOCK])
         at = slice(components * start, components * (start + len(part)))
         for corners, table, images in sheets:
-            single, double = _influences(e.points, corners, table, images, part, components)
+            single, double = influences(e.points, corners, table, images, part, components)
             nodes[at] += double[:, : e.nodes]
             if corners is e.hull:
                 hull[at] = single
@@ -225,7 +225,7 @@ def _maps(samplers: PanelSamplers, points: Array, components: int) -> tuple[Arra
     return nodes, water, hull
 
 
-def _influences(
+def influences(
     nodes: Array, corners: Ints, table: Array, images: Images, points: Array, components: int
 ) -> tuple[Array, Array]:
     """Of triangles at points: (rows, m) of unit flux, (rows, nodes) of unit potentials."""

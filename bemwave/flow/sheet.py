@@ -39,6 +39,13 @@ class Sheet:
         """Number of nodes."""
         return self.shape[0] * self.shape[1]
 
+    @property
+    def extent(self) -> tuple[float, float, float, float]:
+        """Least and largest x, then y, of a period [m]."""
+        nx, ny = self.shape
+        east, north = self.west + self.spacing * nx, self.south + self.spacing * ny
+        return self.west, east, self.south, north
+
     @cached_property
     def xy(self) -> Array:
         """(nx ny, 2) places of the nodes, j fastest [m]."""
@@ -89,7 +96,7 @@ class Sheet:
         kept = np.zeros((*spectrum.shape[:-2], nx, ny // 2 + 1), dtype=spectrum.dtype)
         kept[..., :m, :-1] = spectrum[..., :m, : ny // 2]
         kept[..., m + 1 :, :-1] = spectrum[..., -m + 1 :, : ny // 2]
-        return kept * (coarse.size / self.size)
+        return np.asarray(kept * (coarse.size / self.size))
 
     def padded(self, spectrum: Complex, coarse: Sheet) -> Complex:
         """The transpose of `cropped` between fields: a coarser sheet's, spread over this one's."""
@@ -99,10 +106,12 @@ class Sheet:
         wide[..., -m + 1 :, : ny // 2] = spectrum[..., m + 1 :, :-1]
         return wide
 
-    def interpolation(self, xy: Array) -> sparse.csr_matrix:
+    def interpolation(self, xy: Array, periodic: bool = True) -> sparse.csr_matrix:
         """(p, nx ny) from nodes to places (p, 2): Lagrange polynomials of fifth degree."""
         at = (np.asarray(xy) - [self.west, self.south]) / self.spacing
         first = np.floor(at).astype(np.int64) - STENCIL // 2 + 1
+        if not periodic:
+            first = np.clip(first, 0, np.array(self.shape) - STENCIL)
         weights = [_lagrange(at[:, axis] - first[:, axis]) for axis in (0, 1)]
         steps = np.arange(STENCIL)
         rows = (first[:, 0, None] + steps) % self.shape[0]

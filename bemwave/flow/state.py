@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -36,6 +36,11 @@ class SurfaceState:
     hull_potential_rate: Array
     hull_flux: Array
     hull_flux_rate: Array
+
+    def at(self, nodes: npt.NDArray[np.int64]) -> SurfaceState:
+        """The same at some of the water's nodes."""
+        surface = ("elevation", "potential", "potential_rate", "surface_flux", "surface_flux_rate")
+        return replace(self, **{name: getattr(self, name)[nodes] for name in surface})
 
 
 ARRAYS = tuple(f.name for f in fields(SurfaceState) if f.name != "time")

@@ -70,14 +70,14 @@ class Continuation:
     def __call__(self, field: Array) -> Array:
         """A copy of a field (nx ny, k), continued."""
         result = field.copy()
-        result[self._nodes] = self.map @ field
+        result[self._nodes] = np.asarray(self.map @ field)
         return result
 
     def gather(self, load: Array) -> None:
         """Give loads (nx ny, k) inside to the nodes outside that rule there, in place."""
         ruled = load[self._nodes]
         load[self._nodes] = 0.0
-        load += self._back @ ruled
+        load += np.asarray(self._back @ ruled)
 
 
 def _dense_line(polygons: Sequence[Array], spacing: float) -> Array:
@@ -135,7 +135,8 @@ def _rows(sheet: Sheet, inside: Bools, line: Array, others: Bools) -> sparse.csr
 
 def _parabolas(sheet: Sheet, nodes: Ints, outside: Ints) -> Array:
     """(nodes, outside) weights of the parabolas fitted to the nearest nodes outside."""
-    far, near = KDTree(sheet.xy[outside]).query(sheet.xy[nodes], k=min(NEAR, len(outside)))
+    distance, near = KDTree(sheet.xy[outside]).query(sheet.xy[nodes], k=min(NEAR, len(outside)))
+    far = np.asarray(distance)
     at = (sheet.xy[outside][near] - sheet.xy[nodes][:, None]) / sheet.spacing
     x, y = at[..., 0], at[..., 1]
     terms = np.stack([np.ones_like(x), x, y, x * x, x * y, y * y], axis=-1)

@@ -24,6 +24,9 @@ def closed_bodies(hulls: Sequence[Hull]) -> SurfaceMesh:
     InputError
         If a waterline is too narrow for its own edges.
     """
+    if not hulls:
+        none = np.zeros((0, 3))
+        return SurfaceMesh(none, none.astype(np.int64), none[:, 0].astype(np.int64), (WATERPLANE,))
     mesh = joined([hull.mesh for hull in hulls])
     points, triangles, first = [mesh.points], [], 0
     count = len(mesh.points)

@@ -14,10 +14,9 @@ from typing import Protocol
 import numpy as np
 
 from bemwave.flow.state import SurfaceState
-from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff.box import BOX_FACES, Array, Box, PointSet, turn
 from bemwave.handoff.fields import Flow, on_surface
-from bemwave.handoff.plan import Waterplane, water_quadrature, waterplane_quadrature
+from bemwave.handoff.plan import Waterplane, waterplane_quadrature
 from bemwave.handoff.sampler import Instant
 from bemwave.waves import Sea
 
@@ -51,8 +50,8 @@ class Closure:
         `points` from `box_points(box)`.
     sea : Sea
     flow : Flow or None
-    water : SurfaceMesh
-        The water's surface as it is solved.
+    surface : callable
+        Points (n, 2) and weights, m2, that integrate over the solved water in a box.
     waterplanes : sequence of Waterplane
         One for each body that pierces the surface.
     kept_out : Sea, optional
@@ -67,7 +66,7 @@ class Closure:
         points: PointSet,
         sea: Sea,
         flow: Flow | None,
-        water: SurfaceMesh,
+        surface: Callable[[Box], tuple[Array, Array]],
         waterplanes: Sequence[Waterplane] = (),
         kept_out: Sea | None = None,
         share: Callable[[float], float] = lambda time: 1.0,
@@ -84,7 +83,7 @@ class Closure:
             waves = sea if kept_out is None else kept_out
             self._planes = [_WaterplaneRate(waves, box, plane, share) for plane in waterplanes]
             if flow is not None:
-                self._surface.append(_SolvedRate(flow, box, water))
+                self._surface.append(_SolvedRate(flow, *surface(box)))
 
     def at(
         self, instant: Instant, state: SurfaceState, bodies: Array | None = None
@@ -153,8 +152,8 @@ class _IncidentRate:
 class _SolvedRate:
     """Integral of the solved d(elevation)/dt over the water inside the box."""
 
-    def __init__(self, flow: Flow, box: Box, water: SurfaceMesh) -> None:
-        points, self._weights = water_quadrature(box, water)
+    def __init__(self, flow: Flow, points: Array, weights: Array) -> None:
+        self._weights = weights
         self._surface = flow.surface_sampler(points)
 
     def at(self, state: SurfaceState) -> float:

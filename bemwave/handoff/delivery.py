@@ -15,7 +15,6 @@ from bemwave.case.output import Handoff as Entry
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.inside import inside
-from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff.box import Array, Box, PointSet, box_points, box_volume
 from bemwave.handoff.closure import Closure
 from bemwave.handoff.divergence import CellDivergence
@@ -40,14 +39,14 @@ class Scene:
     scattered : those of them that hulls scatter; None: all. The others pass through hulls.
     start_up : the share of these that hulls scatter at a time, 1 once the run has started up.
     flow : samplers of the solved part; None where nothing is solved.
-    water : the water's surface as it is solved.
+    surface : points (n, 2) and weights [m2] that integrate over the water's surface in a box.
     hulls : the bodies, at rest.
     shortest_period, peak_period : s, of what the field holds.
     """
 
     sea: Sea
     flow: Flow | None
-    water: SurfaceMesh
+    surface: Callable[[Box], tuple[Array, Array]]
     hulls: Sequence[Hull] = ()
     shortest_period: float = math.inf
     peak_period: float = math.inf
@@ -148,7 +147,7 @@ class Handoff:
             points,
             scene.sea,
             flow,
-            scene.water,
+            scene.surface,
             waterplanes,
             scene.scattered,
             scene.start_up,

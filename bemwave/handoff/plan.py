@@ -41,6 +41,28 @@ def water_quadrature(box: Box, water: SurfaceMesh) -> tuple[Array, Array]:
     return _clipped(box, water.vertices[:, :, :2])
 
 
+def grid_quadrature(box: Box, spacing: float, hulls: Sequence[Hull]) -> tuple[Array, Array]:
+    """Points and weights, m2, over the water in a box's plan, for fields that go on under hulls.
+
+    Two points each way by Gauss in cells no larger than the spacing, (k spacing)^4/4320 of a wave;
+    waterplanes are taken off again.
+    """
+    axes = []
+    for side in box.size:
+        count = max(1, int(np.ceil(side / spacing)))
+        middle = (np.arange(count) + 0.5) / count - 0.5
+        offset = 0.5 / (count * np.sqrt(3.0))
+        axes.append(side * np.sort(np.concatenate([middle - offset, middle + offset])))
+    places = np.stack([g.ravel() for g in np.meshgrid(*axes, indexing="ij")], axis=1)
+    points = [box.to_earth(places)]
+    weights = [np.full(len(places), box.area / len(places))]
+    for hull in hulls:
+        taken, area = waterplane_quadrature(box, Waterplane.of(hull))
+        points.append(taken)
+        weights.append(-area)
+    return np.concatenate(points), np.concatenate(weights)
+
+
 def waterplane_quadrature(box: Box, waterplane: Waterplane) -> tuple[Array, Array]:
     """Points and weights, m2, over the part of a waterplane inside the box's plan.
 

@@ -104,6 +104,7 @@ class History:
         self._path = path
         with reading(path) as file:
             self.times: Array = read_times(file)
+            self.places: Array = np.column_stack([file["node_x"][:], file["node_y"][:]])
         self.record = lru_cache(maxsize=8)(self._read)
 
     def _read(self, index: int) -> SurfaceState:

@@ -65,6 +65,7 @@ class Manifest:
     route, reason : the route taken, and why.
     closed : whether walls close the water.
     mirrors : walls that are images, as (axis, position) pairs.
+    sheet : west and south corner, spacing [m] and shape of the grid, on that route.
     part_names : names of the parts of mesh.vtp, in order.
     bodies : where each body rests, by name; see `Rest`.
     shortest_period, peak_period : s, of what the field holds.
@@ -83,6 +84,7 @@ class Manifest:
     part_names: tuple[str, ...]
     shortest_period: float
     peak_period: float
+    sheet: Mapping[str, Any] | None = None
     bodies: Mapping[str, Rest] = field(default_factory=dict)
     status: Status = "running"
     versions: Mapping[str, str] = field(default_factory=lambda: versions_now())

@@ -6,21 +6,28 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
+from typing import cast
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from bemwave.case import Case, read_case
 from bemwave.errors import InputError
+from bemwave.flow.grid import body_elements
+from bemwave.flow.grid_samplers import GridSamplers
 from bemwave.flow.images import Mirror
+from bemwave.flow.region import RegionSamplers
 from bemwave.flow.samplers import PanelSamplers
+from bemwave.flow.sheet import Sheet
 from bemwave.flow.state import ARRAYS, SurfaceState
 from bemwave.geometry.files import read_mesh
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.handoff import Flow, HandoffSampler, Scene, free_points
+from bemwave.handoff.box import Box
 from bemwave.handoff.fields import SurfaceMaps, on_surface
 from bemwave.handoff.netcdf import read_times, reading
+from bemwave.handoff.plan import grid_quadrature, water_quadrature
 from bemwave.records.folder import RunFolder, checksums
 from bemwave.records.history import History, cubic_in_time
 from bemwave.records.manifest import Manifest, read_manifest
@@ -111,10 +118,23 @@ class Run:
         return History(self.folder.history) if self.folder.history.exists() else None
 
     @cached_property
+    def sheet(self) -> Sheet | None:
+        """The grid, on that route."""
+        corner = self.manifest.sheet
+        if corner is None:
+            return None
+        shape = (int(corner["shape"][0]), int(corner["shape"][1]))
+        return Sheet(corner["west"], corner["south"], corner["spacing"], shape, self.sea.depth)
+
+    @cached_property
     def flow(self) -> Flow | None:
         """Samplers of the solved field; None where nothing had to be solved."""
         if self.history is None:
             return None
+        if self.sheet is not None:
+            if self.case.run.history_region is not None:
+                return cast(Flow, RegionSamplers(self.history.places))  # refuses what it has not
+            return GridSamplers(self.sheet, body_elements(self.mesh), density=self.sea.density)
         return PanelSamplers(
             self.mesh,
             self.sea.depth,
@@ -137,11 +157,16 @@ class Run:
         return Scene(
             sea=self.sea,
             flow=self.flow,
-            water=self.mesh.keep(self.mesh.in_part("water")),
+            surface=self._surface_in,
             hulls=self.hulls,
             shortest_period=self.manifest.shortest_period,
             peak_period=self.manifest.peak_period,
         )
+
+    def _surface_in(self, box: Box) -> tuple[Array, Array]:
+        if self.sheet is not None:
+            return grid_quadrature(box, self.sheet.spacing, self.hulls)
+        return water_quadrature(box, self.mesh.keep(self.mesh.in_part("water")))
 
     @cached_property
     def times(self) -> Array:

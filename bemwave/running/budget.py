@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import os
 import time as clock
 from dataclasses import dataclass
@@ -9,12 +10,17 @@ from dataclasses import dataclass
 import numpy as np
 
 from bemwave.errors import InputError
+from bemwave.flow.coupling import CLOSE
 from bemwave.flow.elements import split
 from bemwave.flow.images import make_images
+from bemwave.flow.sheet import Sheet
+from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.running.route import MOST_TRIANGLES
+from bemwave.running.solution import STEPS_PER_PERIOD
 from bemwave.running.survey import Survey
 
 GIGABYTE = 1e9
+BYTES_A_NODE = 700  # of the grid: states, transforms, what goes on far from hulls
 
 
 @dataclass(frozen=True)
@@ -41,6 +47,8 @@ def memory_of(survey: Survey) -> tuple[int, int, float]:
     """
     if survey.mesh is None:
         return 0, 0, 0.2 * GIGABYTE
+    if survey.sheet is not None:
+        return _on_grid(survey.mesh, survey.sheet)
     e = split(survey.mesh, survey.closed, survey.mirrors, survey.case.water.depth)
     water, hull, free, nodes = len(e.water), len(e.hull), e.free, e.nodes
     layers = 2 if survey.closed else 1
@@ -48,6 +56,14 @@ def memory_of(survey: Survey) -> tuple[int, int, float]:
     assembling += 2 * hull**2 + (3 * water * nodes if survey.closed else 0)
     stepping = 5 * free**2 + 3 * free * hull + 2 * e.below * free
     return len(survey.mesh.triangles), free, 8.0 * max(assembling, stepping) + 0.3 * GIGABYTE
+
+
+def _on_grid(mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int, float]:
+    """The same on the grid: fields of its nodes, and dense maps between hulls and nodes near."""
+    panels, nodes = len(mesh.triangles), len(mesh.points)
+    near = (2.0 * CLOSE[1] + np.ptp(mesh.points[:, :2], axis=0) / sheet.spacing) if nodes else 0.0
+    dense = 3 * panels**2 + 4 * nodes**2 + (panels + nodes) * float(np.prod(near))
+    return panels, sheet.size, BYTES_A_NODE * sheet.size + 8.0 * dense + 0.4 * GIGABYTE
 
 
 def memory_allowed(survey: Survey) -> float:
@@ -60,8 +76,15 @@ def memory_allowed(survey: Survey) -> float:
 
 def refuse_too_large(survey: Survey) -> None:
     """Raise InputError if the case does not fit, saying what would."""
-    triangles, _, memory = memory_of(survey)
+    triangles, nodes, memory = memory_of(survey)
     allowed = memory_allowed(survey)
+    if survey.sheet is not None and memory > allowed:
+        fits = survey.case.surface.spacing * (memory / allowed) ** 0.5
+        raise InputError(
+            f"[surface] spacing = {survey.case.surface.spacing:g} m makes {nodes} nodes, which "
+            f"need {memory / GIGABYTE:.1f} GB; expected at most {allowed / GIGABYTE:.1f} GB: about "
+            f"spacing = {fits:.2g} m would fit, or less water"
+        )
     if triangles <= MOST_TRIANGLES and memory <= allowed:
         return
     ratio = max(triangles / MOST_TRIANGLES, (memory / allowed) ** 0.5)
@@ -78,15 +101,29 @@ def budget(survey: Survey) -> Budget:
     triangles, nodes, memory = memory_of(survey)
     if survey.mesh is None:
         return Budget(0, 0, memory, 0.0, 0.0)
+    if survey.sheet is not None:
+        return _grid_budget(survey, survey.sheet, triangles, memory)
     product = _seconds_per_flop()
     # five products for the step's map, and where walls close the water a factor of the sheet's V
     flops = 10 * nodes**3 + (triangles**3 / 3 if survey.closed else 0)
     assembly = _assembly_seconds(survey) + product * flops
-    step = max(survey.periods.shortest / 40, 1e-3)
+    step = max(survey.periods.shortest / STEPS_PER_PERIOD["panels"], 1e-3)
     steps = survey.case.run.duration / step
     # a step and a state read off are about four products bound by memory, 8 bytes an entry
     stepping = steps * 4 * nodes**2 * 8 / 1.5e10
     return Budget(triangles, nodes, memory, assembly, stepping)
+
+
+def _grid_budget(survey: Survey, sheet: Sheet, panels: int, memory: float) -> Budget:
+    """A step is about four pairs of transforms, a state read off eight."""
+    field = np.zeros((1, *sheet.shape))
+    start = clock.perf_counter()
+    sheet.back(sheet.transform(field))
+    pair = clock.perf_counter() - start
+    step = survey.periods.shortest / STEPS_PER_PERIOD["grid"]
+    steps = survey.case.run.duration / max(step, 1e-3)
+    images = 2 if math.isinf(sheet.depth) else 34
+    return Budget(panels, sheet.size, memory, panels * 0.01 * images, steps * 8.0 * pair)
 
 
 def _seconds_per_flop() -> float:

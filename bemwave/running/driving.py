@@ -10,8 +10,9 @@ import numpy as np
 import numpy.typing as npt
 
 from bemwave.bodies.modes import MODES, mode_shapes, panels_of
+from bemwave.case.sea import Hump
 from bemwave.flow.elements import Elements
-from bemwave.kernels.panels import SEVEN, THREE
+from bemwave.kernels.panels import THREE
 from bemwave.running.survey import Survey
 from bemwave.stepping.forcing import (
     GivenFlux,
@@ -128,17 +129,10 @@ def _wall_shape(
     return shape
 
 
-def released_elevation(survey: Survey, elements: Elements) -> Array:
-    """(free,) integrals over hats of the humps let go at t = 0 [m^3]."""
-    load = np.zeros(len(elements.points))
-    corners = elements.points[elements.water, :2]
-    for rule in SEVEN:
-        at = np.einsum("j,mjc->mc", rule[:3], corners)
-        height = sum(
-            hump.height * np.exp(-0.5 * ((at - hump.centre) ** 2).sum(axis=1) / hump.width**2)
-            for hump in survey.case.hump
-        )
-        for j in range(3):
-            share = elements.water_table[:, 28] * rule[3] * rule[j]
-            np.add.at(load, elements.water[:, j], share * height)
-    return load[: elements.free]
+def released_elevation(humps: Sequence[Hump], xy: Array) -> Array:
+    """(n,) the humps let go at t = 0, at places (n, 2) [m]."""
+    result = np.zeros(len(xy))
+    for hump in humps:
+        r2 = ((xy - hump.centre) ** 2).sum(axis=1)
+        result += hump.height * np.exp(-0.5 * r2 / hump.width**2)
+    return result

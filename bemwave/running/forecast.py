@@ -17,6 +17,10 @@ def forecasts(survey: Survey) -> dict[str, float]:
     water, surface = survey.case.water, survey.case.surface
     if survey.layer is not None:
         figures["reflection"] = survey.layer.reflection
+    if survey.layer is not None and survey.layer.passed:
+        figures["passed"] = survey.layer.passed
+    if survey.sheet is not None:
+        return figures
     if survey.mesh is not None and math.isfinite(survey.periods.peak):
         wavelength = length_of_period(survey.periods.peak, water.depth, water.gravity)
         even, distance = not survey.hulls, math.hypot(*surface.extent)

@@ -96,4 +96,5 @@ def steps(case: Case) -> Iterator[LiveState]:
 
 def _sea_step(surveyed: Survey) -> float:
     """Between states of a case in which the sea is all there is [s]."""
-    return min(surveyed.periods.kept / STEPS_PER_PERIOD, surveyed.case.run.record_every)
+    steps = STEPS_PER_PERIOD[surveyed.route[0]]
+    return min(surveyed.periods.kept / steps, surveyed.case.run.record_every)

@@ -10,6 +10,7 @@ from contextlib import contextmanager, suppress
 from dataclasses import replace
 from functools import partial
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -19,6 +20,7 @@ from bemwave import __version__
 from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.errors import InputError, RunError
+from bemwave.flow.sheet import Sheet
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.vtp_files import write_vtp
 from bemwave.records import (
@@ -152,7 +154,7 @@ def _begin(
         notes |= {"frames": note_on(surveyed), **shares(surveyed)}
     if solution is not None:
         notes["trustworthy_from"] = trustworthy_from(surveyed)
-        notes["matrix_symmetry"] = _asymmetry(solution.flow.surface_matrix)
+        notes["matrix_symmetry"] = solution.flow.asymmetry()
     manifest = Manifest(
         inputs=checksums(case.folder, case.files),
         threads=get_num_threads(),
@@ -160,6 +162,7 @@ def _begin(
         reason=reason,
         closed=surveyed.closed,
         mirrors=tuple((m.axis, m.position) for m in surveyed.mirrors),
+        sheet=None if surveyed.sheet is None else _corner(surveyed.sheet),
         part_names=mesh.part_names,
         shortest_period=surveyed.periods.kept,
         peak_period=surveyed.periods.peak,
@@ -180,11 +183,9 @@ def _begin(
     return manifest
 
 
-def _asymmetry(matrix: Array) -> float:
-    """Largest difference across the diagonal over the largest entry; a few rows at a time."""
-    rows = [slice(start, start + 256) for start in range(0, len(matrix), 256)]
-    largest = max(np.abs(matrix[row]).max() for row in rows)
-    return float(max(np.abs(matrix[row] - matrix[:, row].T).max() for row in rows) / largest)
+def _corner(sheet: Sheet) -> dict[str, Any]:
+    """A grid as the manifest tells it."""
+    return {name: getattr(sheet, name) for name in ("west", "south", "spacing", "shape")}
 
 
 @contextmanager

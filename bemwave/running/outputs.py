@@ -9,6 +9,7 @@ from typing import Protocol
 import numpy as np
 import numpy.typing as npt
 
+from bemwave.flow.grid_samplers import GridSamplers
 from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.inside import inside
@@ -48,12 +49,12 @@ class HistoryOutput:
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         run = solution.survey.case.run
         self.times = np.linspace(0.0, run.duration, round(run.duration / run.record_every) + 1)
-        e = solution.flow.elements
-        below = e.points[e.free : e.nodes]
-        panels = e.hull_table[:, 24:27]
-        self._file = HistoryFile(
-            folder.history, self.times, e.points[: e.free], below, panels, keep
-        )
+        flow = solution.flow
+        panels = flow.elements.hull_table[:, 24:27]
+        self._part = recorded(solution.survey)
+        nodes = flow.places if self._part is None else flow.places[self._part]
+        places = np.column_stack([nodes, np.zeros(len(nodes))])
+        self._file = HistoryFile(folder.history, self.times, places, flow.hull_places, panels, keep)
 
     @property
     def count(self) -> int:
@@ -62,7 +63,7 @@ class HistoryOutput:
 
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
-        self._file.append(state)
+        self._file.append(state if self._part is None else state.at(self._part))
 
     def flush(self) -> None:
         """See `Output`."""
@@ -118,7 +119,11 @@ class GaugesOutput:
     """gauges.nc."""
 
     def __init__(
-        self, survey: Survey, flow: PanelSamplers | None, folder: RunFolder, keep: int | None
+        self,
+        survey: Survey,
+        flow: PanelSamplers | GridSamplers | None,
+        folder: RunFolder,
+        keep: int | None,
     ) -> None:
         gauges = survey.case.gauge
         self.times = fine_times(survey)
@@ -187,7 +192,7 @@ def outputs_of(
     scene = Scene(
         survey.sea,
         flow,
-        survey.water,
+        survey.surface_in,
         survey.hulls,
         survey.periods.kept,
         survey.periods.peak,
@@ -201,6 +206,15 @@ def outputs_of(
     if case.frames is not None:
         outputs["frames"] = FramesOutput(survey, solution, flow, folder.frames, keep("frames") or 0)
     return outputs
+
+
+def recorded(survey: Survey) -> npt.NDArray[np.int64] | None:
+    """The nodes that history.nc holds, of a region; None: all."""
+    region, sheet = survey.case.run.history_region, survey.sheet
+    if region is None or sheet is None:
+        return None
+    offset = np.abs(sheet.xy - region.centre)
+    return np.flatnonzero((offset <= np.array(region.size) / 2 + 1e-9).all(axis=1))
 
 
 def fine_times(survey: Survey) -> Array:

@@ -18,7 +18,8 @@ from bemwave.running.frames_output import note_on
 from bemwave.running.outputs import dry_places
 from bemwave.running.sampling import refuse_unfit, sampling_memory, sampling_seconds
 from bemwave.running.sea import PANELS_PER_WAVELENGTH, length_of_period
-from bemwave.running.survey import Survey, survey
+from bemwave.running.survey import Survey, behind, survey
+from bemwave.stepping.absorber import forecast
 
 
 def plan(case: Case, *, picture: str | os.PathLike[str] | None = None) -> str:
@@ -78,8 +79,18 @@ def _water(s: Survey) -> _Lines:
         length = length_of_period(longest, depth, s.case.water.gravity)
         yield "absorber", (
             f"{s.layer.width:.3g} m wide, for waves up to {length:.3g} m ({longest:.3g} s); "
-            f"reflects {100 * s.layer.reflection:.2g} % of them"
+            f"reflects {100 * s.layer.reflection:.2g} % of them{_through(s.layer.passed)}"
         )
+        beyond = behind(s.route[0], s.closed)
+        for wave in forecast(s.layer, depth, s.case.water.gravity, surface.spacing, beyond):
+            yield "", (
+                f"of waves of {wave.wavelength:.3g} m at {math.degrees(wave.angle):.0f} degrees "
+                f"{100 * wave.reflected:.2g} %{_through(wave.passed)}"
+            )
+
+
+def _through(passed: float) -> str:
+    return f", and lets {100 * passed:.2g} % through its seam" if passed else ""
 
 
 def _sea(s: Survey) -> _Lines:
@@ -128,6 +139,9 @@ def _panels(s: Survey) -> _Lines:
         f"{shortest / s.case.surface.spacing:.3g} panels in the shortest solved wave "
         f"({shortest:.3g} m, {s.periods.shortest:.3g} s)"
     )
+    if s.sheet is not None:
+        yield "phase error", "none: waves of the grid are exact in space and time"
+        return
     yield "phase error", (
         f"{found['phase_error_degrees']:.2g} degrees over the useful water, for waves of the peak "
         f"({100 * found['dispersion_forecast']:.2g} % in frequency)"
@@ -176,7 +190,8 @@ def _files(s: Survey) -> _Lines:
 def _cost(s: Survey) -> _Lines:
     cost = budget(s)
     needed, allowed = (m / GIGABYTE for m in (cost.memory + sampling_memory(s), memory_allowed(s)))
-    yield "triangles", f"{cost.triangles} ({cost.nodes} unknowns on the surface)"
+    kind = "nodes of the grid" if s.sheet is not None else "unknowns on the surface"
+    yield "triangles", f"{cost.triangles} ({cost.nodes} {kind})"
     yield "memory", f"{needed:.2g} GB of {allowed:.3g} GB allowed"
     yield "time", (
         f"about {_span(cost.assembly)} to assemble, {_span(cost.stepping)} to solve, "

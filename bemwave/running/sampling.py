@@ -98,6 +98,8 @@ def _row(survey: Survey) -> float:
     """Bytes of the maps to velocity and pressure at one point."""
     if survey.mesh is None:
         return 0.0
+    if survey.sheet is not None:
+        return 4 * 8.0 * 1.5 * len(survey.mesh.triangles)
     hull = len(survey.mesh.triangles) - len(survey.water.triangles)
     return 4 * 8.0 * (len(survey.water.points) + 1.5 * hull)
 

@@ -11,17 +11,20 @@ import numpy.typing as npt
 from bemwave.bodies.loads import BodyLoads
 from bemwave.bodies.modes import panels_of, stiffness
 from bemwave.errors import InputError
+from bemwave.flow.exact import LARGEST_TURN
+from bemwave.flow.grid import GridFlow
+from bemwave.flow.grid_samplers import GridSamplers
 from bemwave.flow.panels import PanelFlow
 from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import ARRAYS, SurfaceState
 from bemwave.running.driving import Driving, driving, released_elevation
 from bemwave.running.survey import Survey
-from bemwave.stepping.exact import LARGEST_TURN, fastest_frequency
 from bemwave.stepping.stepper import Stepper
 
 Array = npt.NDArray[np.float64]
 
-STEPS_PER_PERIOD = 40  # of the shortest waves solved, common practice, no source
+# of the shortest waves solved, by route: common practice, no source; free waves are exact in time
+STEPS_PER_PERIOD = {"panels": 40, "grid": 30}
 
 
 class Solution:
@@ -39,22 +42,15 @@ class Solution:
         assert survey.mesh is not None
         self.survey = survey
         water = survey.case.water
-        self.flow = PanelFlow(
-            survey.mesh,
-            water.depth,
-            closed=survey.closed,
-            mirrors=survey.mirrors,
-            progress=lambda share: progress(0.8 * share),
-        )
-        elements = self.flow.elements
-        self.driving: Driving = driving(survey, elements)
+        self.flow = _flow(survey, lambda share: progress(0.8 * share))
+        self.driving: Driving = driving(survey, self.flow.elements)
         self.step = self._choose_step()
         self.damping = None
         if survey.layer is not None:
-            centroids = elements.water_table[:, 24:26]
-            rate = survey.layer.rate(survey.outside(centroids))
-            self.damping = elements.weighted_mass(rate)
-        hump = released_elevation(survey, elements) if survey.case.hump else None
+            layer = survey.layer
+            self.damping = self.flow.damping(
+                lambda xy: layer.rate(np.minimum(survey.outside(xy), layer.width))
+            )
         self.stepper = Stepper(
             self.flow,
             water.gravity,
@@ -62,16 +58,20 @@ class Solution:
             list(self.driving.parts.values()),
             patches=self.driving.patches,
             damping=self.damping,
-            elevation=None if hump is None else self.flow.solve_mass(hump),
+            elevation=self._released(),
         )
         self._loads = [self._loads_on(number) for number in range(len(survey.hulls))]
         progress(1.0)
 
+    def _released(self) -> Array | None:
+        """The surface of the humps let go at t = 0 [m]."""
+        humps = self.survey.case.hump
+        return self.flow.nodal(lambda xy: released_elevation(humps, xy)) if humps else None
+
     def _choose_step(self) -> float:
         """A fortieth of the shortest period solved, within what the mesh's own waves allow."""
         gravity, asked = self.survey.case.water.gravity, self.survey.case.run.step
-        fastest = fastest_frequency(self.flow.surface_matrix, self.flow.solve_mass, gravity)
-        longest = LARGEST_TURN / fastest
+        longest = LARGEST_TURN / self.flow.fastest(gravity)
         if asked != "auto":
             if float(asked) > longest:
                 raise InputError(
@@ -79,7 +79,7 @@ class Solution:
                     f'{longest:.4g} s: write that, or step = "auto"'
                 )
             return float(asked)
-        step = min(longest, self.survey.periods.shortest / STEPS_PER_PERIOD)
+        step = min(longest, self.survey.periods.shortest / STEPS_PER_PERIOD[self.survey.route[0]])
         duration = self.survey.case.run.duration
         return duration / math.ceil(duration / step)
 
@@ -89,15 +89,17 @@ class Solution:
         panels = panels_of(self.flow.elements, mesh.part, mesh.part_names.index(hull.name))
         return BodyLoads(self.flow.elements, panels, hull, self.survey.scattered)
 
-    def samplers(self) -> PanelSamplers:
+    def samplers(self) -> PanelSamplers | GridSamplers:
         """Samplers of the field at places."""
-        assert self.survey.mesh is not None
-        water = self.survey.case.water
+        survey, water = self.survey, self.survey.case.water
+        if survey.sheet is not None:
+            return GridSamplers(survey.sheet, self.flow.elements, density=water.density)
+        assert survey.mesh is not None
         return PanelSamplers(
-            self.survey.mesh,
+            survey.mesh,
             water.depth,
-            closed=self.survey.closed,
-            mirrors=self.survey.mirrors,
+            closed=survey.closed,
+            mirrors=survey.mirrors,
             density=water.density,
         )
 
@@ -126,11 +128,9 @@ class Solution:
         shape = (len(self.survey.hulls), 6)
         loads = {f"force_{part}": np.zeros(shape) for part in ("scattered", "radiated")}
         if self.driving.parts:
-            rate, hull_rate = self.stepper.parts_at(time)[1], self.stepper.hull_parts(time)
+            rate = self.stepper.wetted_parts(time)
             for k, part in enumerate(self.driving.parts):
-                loads[f"force_{part}"] = np.array(
-                    [load.solved(rate[:, k], hull_rate[:, k]) for load in self._loads]
-                )
+                loads[f"force_{part}"] = np.array([load.solved(rate[:, k]) for load in self._loads])
         at = np.array([time])
         loads["force_incident"] = np.array([load.incident(at)[0] for load in self._loads])
         water, motion = self.survey.case.water, self.motions(time)[0]
@@ -154,16 +154,33 @@ class Solution:
         water, elements, mass = self.survey.case.water, self.flow.elements, self.flow.mass
         density, gravity = water.density, water.gravity
         eta, potential = state.elevation, state.potential
-        energy = gravity * eta @ (mass @ eta) + potential @ (mass @ state.surface_flux)
+        rise: Array = np.asarray(mass @ state.surface_flux)
+        energy = float(gravity * eta @ np.asarray(mass @ eta) + potential @ rise)
         with_head = -state.potential_rate / gravity
-        power = gravity * (eta - with_head) @ (mass @ state.surface_flux)
+        power = float(gravity * (eta - with_head) @ rise)
         if len(elements.hull):
             shares = elements.shares(elements.hull, elements.hull_table)
             through = shares.T @ state.hull_flux
-            energy += through @ np.concatenate([potential, state.hull_potential])
-            power += through @ np.concatenate([state.potential_rate, state.hull_potential_rate])
+            at_nodes = self.flow.at_nodes
+            energy += float(through @ at_nodes(potential, state.hull_potential))
+            power += float(through @ at_nodes(state.potential_rate, state.hull_potential_rate))
         taken = 0.0 if self.damping is None else gravity * eta @ (self.damping @ with_head)
-        return 0.5 * density * float(energy), density * float(power), density * float(taken)
+        return 0.5 * density * energy, density * power, density * float(taken)
+
+
+def _flow(survey: Survey, progress: Callable[[float], None]) -> PanelFlow | GridFlow:
+    """The flow map of the case's route."""
+    assert survey.mesh is not None
+    if survey.sheet is not None:
+        waterlines = [hull.polygons() for hull in survey.hulls if hull.waterlines]
+        return GridFlow(survey.sheet, survey.mesh, waterlines, progress)
+    return PanelFlow(
+        survey.mesh,
+        survey.case.water.depth,
+        closed=survey.closed,
+        mirrors=survey.mirrors,
+        progress=progress,
+    )
 
 
 def nothing_solved(time: float) -> SurfaceState:

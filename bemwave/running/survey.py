@@ -13,6 +13,7 @@ from bemwave.case import Case, refuse_not_yet
 from bemwave.case.body import Body
 from bemwave.errors import InputError
 from bemwave.flow.images import Mirror
+from bemwave.flow.sheet import Sheet
 from bemwave.geometry.bodies import default_fine_spacing, hull_from
 from bemwave.geometry.boundary import RIM, boundary_mesh
 from bemwave.geometry.files import read_mesh
@@ -20,7 +21,11 @@ from bemwave.geometry.hull import Hull
 from bemwave.geometry.layout import check_layout
 from bemwave.geometry.outline import SIDES, Circle, Outline, Rectangle
 from bemwave.geometry.surface_mesh import SurfaceMesh
-from bemwave.geometry.water_surface import fitted_water, water_surface
+from bemwave.geometry.water_surface import expected_triangles, fitted_water, water_surface
+from bemwave.geometry.waterplane import closed_bodies
+from bemwave.handoff.box import Box
+from bemwave.handoff.plan import grid_quadrature, water_quadrature
+from bemwave.running.route import choose
 from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
 from bemwave.stepping.absorber import Layer, layer_for
 from bemwave.stepping.damped_line import Behind
@@ -56,11 +61,14 @@ class Survey:
         the energy share of the others.
     hulls : the bodies at rest.
     motion_files : what moves each of them from a file, or None.
+    route : the route taken, and why.
     outline : the water with its absorber.
     layer : the absorber, or None where no edge absorbs.
     closed, mirrors : whether meshed walls close the water, and walls that are images.
-    water : the sheet.
-    mesh : the whole boundary; None where there is nothing to solve.
+    sheet : the grid, on that route; else None.
+    water : the meshed surface; on the grid it has no triangles.
+    mesh : the whole boundary, on the grid the closed surfaces of hulls and waterplanes; None where
+        there is nothing to solve.
     periods : of its waves.
     """
 
@@ -70,19 +78,26 @@ class Survey:
     unscattered_share: float
     hulls: tuple[Hull, ...]
     motion_files: tuple[MotionFile | None, ...]
+    route: tuple[str, str]
     outline: Outline
     layer: Layer | None
     closed: bool
     mirrors: tuple[Mirror, ...]
+    sheet: Sheet | None
     water: SurfaceMesh
     mesh: SurfaceMesh | None
     periods: Periods
 
     @property
-    def route(self) -> tuple[str, str]:
-        """The route taken, and why."""
-        why = "named in the case" if self.case.surface.route == "panels" else "the only one yet"
-        return "panels", why
+    def solved(self) -> bool:
+        """Whether there is anything to solve beside the sea."""
+        return self.mesh is not None
+
+    def surface_in(self, box: Box) -> tuple[Array, Array]:
+        """Points (n, 2) and weights [m2] that integrate over the solved water in a box."""
+        if self.sheet is not None:
+            return grid_quadrature(box, self.sheet.spacing, self.hulls)
+        return water_quadrature(box, self.water)
 
     def outside(self, xy: Array) -> Array:
         """Distance (n,) of places (n, 2) outside the useful water [m]; zero inside."""
@@ -112,16 +127,27 @@ def survey(case: Case) -> Survey:
     )
     files = tuple(_motion_file(case, body) for body in case.body)
     periods = _periods(case, sea, scattered, list(_periods_made(case, hulls, files)))
-    layer = _layer(case, periods, closed)
+    layer = _layer(case, periods, behind("panels", closed))
     outline = _outline(case, layer)
     check_layout(hulls, useful_water(case))
-    sheet = _sheet(case, outline, hulls)
+    route = choose(case, hulls, _expected_triangles(case, outline, hulls))
+    if route[0] == "grid":
+        layer = _layer(case, periods, behind(route[0], closed))
+        outline = _outline(case, layer)
     solved = bool(hulls or case.hump or case.pressure or case.wavemaker)
-    walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
-    mesh = boundary_mesh(sheet, hulls, walls, water.depth) if solved else None
+    sheet = None
+    if route[0] == "grid":
+        sheet, meshed = _grid(case, layer), closed_bodies([])
+        outline = Rectangle(*sheet.extent)
+        mesh = closed_bodies(hulls) if solved else None
+    else:
+        _refuse_on_panels(case)
+        meshed = _meshed_water(case, outline, hulls)
+        walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
+        mesh = boundary_mesh(meshed, hulls, walls, water.depth) if solved else None
     return Survey(
-        case, sea, scattered, unscattered, hulls, files, outline, layer, closed, mirrors, sheet,
-        mesh, periods,
+        case, sea, scattered, unscattered, hulls, files, route, outline, layer, closed, mirrors,
+        sheet, meshed, mesh, periods,
     )  # fmt: skip
 
 
@@ -206,7 +232,14 @@ def _periods_made(
             yield 2.0 * math.pi * speed / gravity  # the waves that follow it, in deep water
 
 
-def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
+def behind(route: str, closed: bool) -> Behind:
+    """What lies behind the absorber."""
+    if route == "grid":
+        return "itself"
+    return "wall" if closed else "still water"
+
+
+def _layer(case: Case, periods: Periods, beyond: Behind) -> Layer | None:
     surface = case.surface
     absorbing = 1 if surface.outline == "circle" else 4
     if len(surface.walls) == absorbing or math.isinf(periods.longest):
@@ -214,8 +247,7 @@ def _layer(case: Case, periods: Periods, closed: bool) -> Layer | None:
     depth, gravity = case.water.depth, case.water.gravity
     width = None if surface.absorber == "auto" else float(surface.absorber)
     wavelength = length_of_period(periods.longest, depth, gravity)
-    behind: Behind = "wall" if closed else "still water"
-    return layer_for(wavelength, depth, gravity, surface.spacing, width=width, behind=behind)
+    return layer_for(wavelength, depth, gravity, surface.spacing, width=width, behind=beyond)
 
 
 def useful_water(case: Case) -> Outline:
@@ -240,15 +272,53 @@ def _outline(case: Case, layer: Layer | None) -> Outline:
     )
 
 
-def _sheet(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> SurfaceMesh:
+def _fine_spacing(case: Case, hulls: tuple[Hull, ...]) -> float:
+    surface = case.surface
+    return surface.fine_spacing or default_fine_spacing(surface.spacing, hulls)
+
+
+def _expected_triangles(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> int:
+    """On route "panels", in open water, about."""
+    fine = _fine_spacing(case, hulls)
+    on_hulls = sum(len(hull.mesh.triangles) for hull in hulls)
+    return on_hulls + expected_triangles(outline, case.surface.spacing, hulls, fine)
+
+
+def _refuse_on_panels(case: Case) -> None:
+    if case.run.history_region is not None:
+        raise InputError(
+            "[run] history_region was given on route panels; expected it on the grid alone, whose "
+            "surface is large: take it out, for panels record the whole surface"
+        )
+
+
+def _grid(case: Case, layer: Layer | None) -> Sheet:
+    """The useful water and a layer all round, made a little larger for quick Fourier transforms."""
+    surface = case.surface
+    width = 0.0 if layer is None else layer.width
+    nx, ny = (_quick_count((extent + 2.0 * width) / surface.spacing) for extent in surface.extent)
+    west, south = (
+        centre - 0.5 * count * surface.spacing
+        for centre, count in zip(surface.centre, (nx, ny), strict=True)
+    )
+    return Sheet(west, south, surface.spacing, (nx, ny), case.water.depth)
+
+
+def _quick_count(least: float) -> int:
+    """The least multiple of eight whose Fourier transforms are quick."""
+    from scipy.fft import next_fast_len
+
+    return 8 * int(next_fast_len(math.ceil(least / 8.0 - 1e-9), real=True))
+
+
+def _meshed_water(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> SurfaceMesh:
     surface = case.surface
     if surface.mesh is not None:
         ready = read_mesh(case.folder / surface.mesh)
         _refuse_other_extent(ready, outline, surface.mesh)
         polygons = [polygon for hull in hulls for polygon in hull.polygons()]
         return fitted_water(ready, polygons, surface.mesh)
-    fine = surface.fine_spacing or default_fine_spacing(surface.spacing, hulls)
-    return water_surface(outline, surface.spacing, hulls, fine)
+    return water_surface(outline, surface.spacing, hulls, _fine_spacing(case, hulls))
 
 
 def _refuse_other_extent(ready: SurfaceMesh, outline: Outline, name: str) -> None:

@@ -19,16 +19,14 @@ flow map. The columns of phi are parts of the solved field kept apart (scattered
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
+from typing import Protocol
 
 import numpy as np
 import numpy.typing as npt
 from scipy import sparse
 
-from bemwave.flow.elements import solver_of
-from bemwave.flow.panels import PanelFlow
+from bemwave.flow.elements import Elements
 from bemwave.flow.state import SurfaceState
-from bemwave.stepping.exact import exact_map
 from bemwave.stepping.forcing import GivenFlux, PressurePatch
 
 Array = npt.NDArray[np.float64]
@@ -36,6 +34,41 @@ Array = npt.NDArray[np.float64]
 STENCIL = 8
 BLOCK = 32  # steps whose given fluxes are worked out together, as one matrix product
 START_TERMS = 12  # of the series of sin(x)/x for x <= LARGEST_TURN, to 1e-16
+
+
+class March(Protocol):
+    """Steps of one length; fields have a column for each part of the solved field."""
+
+    def given(self, fluxes: Sequence[Array]) -> Array:
+        """What `flux` needs of the parts' given flux (triangles, times), by time."""
+
+    def flux(self, potential: Array, given: Array) -> Array:
+        """Mean surface flux of a step from the potential in its middle [m/s]."""
+
+    def damped(self, flux: Array, mean: Array) -> Array:
+        """The flux less what the absorber takes of the mean elevation [m/s]."""
+
+
+class Flow(Protocol):
+    """What a route gives to the stepper; see `flow.panels` and `flow.grid`."""
+
+    elements: Elements
+
+    @property
+    def places(self) -> Array:
+        """(n, 2) where the surface's values stand [m]."""
+
+    def march(self, gravity: float, step: float, damping: sparse.csc_matrix | None) -> March:
+        """Steps of a length [s]."""
+
+    def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
+        """Vertical velocity of the surface (n, k) [m/s]."""
+
+    def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
+        """Potential at hulls and walls (b, k) [m^2/s]."""
+
+    def at_nodes(self, surface: Array, hull: Array) -> Array:
+        """A field of the surface and of hulls, at the nodes of `elements`."""
 
 
 class Stepper:
@@ -53,7 +86,7 @@ class Stepper:
 
     def __init__(
         self,
-        flow: PanelFlow,
+        flow: Flow,
         gravity: float,
         step: float,
         parts: Sequence[GivenFlux],
@@ -63,19 +96,15 @@ class Stepper:
         elevation: Array | None = None,
     ) -> None:
         self.flow, self.gravity, self.step, self.parts = flow, gravity, step, parts
-        self.patches, self.damping = patches, damping
-        free = flow.elements.free
-        self._xy = flow.elements.points[:free, :2]
-        self._map = exact_map(flow.surface_matrix, flow.solve_mass, gravity, step)
-        self._given_map = flow.solve_mass(flow.hull_flux_matrix)
-        self._solve_damped: Any = None
-        if damping is not None:
-            self._solve_damped = solver_of(sparse.csc_matrix(flow.mass + 0.5 * step * damping))
+        self.patches = patches
+        self._xy = flow.places
+        self._march = flow.march(gravity, step, damping)
         self.count = 0
-        self._potentials = [np.zeros((free, max(1, len(parts))))]
+        self._potentials = [np.zeros((len(self._xy), max(1, len(parts))))]
         self._mean = self._first_mean(elevation)
-        self._forced: Array = np.empty((0, free, 0))
-        self._forced_from = -1
+        self._given: Array = np.empty((0, 0, 0))
+        self._heads: Array = np.empty((0, 0))
+        self._block_from = -1
 
     def _first_mean(self, elevation: Array | None) -> Array:
         """E(-1/2) of the free motion from rest, which is even in time."""
@@ -83,10 +112,11 @@ class Stepper:
         start = self._head(0.0) if elevation is None else elevation + self._head(0.0)
         if start.any():
             # the mean of cos(w t) over a step is sin(x)/x, x = w dt: a series in Y = g dt^2 A
-            turn, term = self.gravity * self.step**2, start
+            turn, term = self.gravity * self.step**2, start[:, None]
+            still = np.zeros((len(self.flow.elements.hull), 1))
             for k in range(START_TERMS):
-                mean[:, 0] += term
-                image = self.flow.solve_mass(self.flow.surface_matrix @ term)
+                mean[:, :1] += term
+                image = self.flow.surface_flux(term, still)
                 term = -turn / ((2 * k + 2) * (2 * k + 3)) * image
         return mean
 
@@ -98,40 +128,36 @@ class Stepper:
     def advance(self) -> None:
         """One step."""
         potential, g, dt = self._potentials[-1], self.gravity, self.step
-        forced = self._forced_flux(self.count)
-        moving = potential - (g * dt**2 / 12.0) * forced
-        # part by part: libraries are slow at products with two or three columns
-        flux = np.column_stack([self._map @ part for part in moving.T]) + forced
+        start = self.count - self.count % BLOCK
+        # blocks start at multiples of BLOCK, so that a resumed run has the very same ones
+        if self._block_from != start:
+            self._begin_block(start)
+        given = self._given[self.count - start]
+        if self.patches:
+            head = self._heads[self.count - start]
+            moving = potential.copy()
+            moving[:, 0] -= g * dt**2 / 12.0 * head
+            flux = self._march.flux(moving, given)
+            flux[:, 0] += head
+        else:
+            flux = self._march.flux(potential, given)
         if self.count == 0:
             flux *= 0.5  # what is given begins at t = 0: the first step sees half a stencil
-        self._mean = self._mean + dt * self._damped(flux)
+        self._mean = self._mean + dt * self._march.damped(flux, self._mean)
         self._potentials.append(potential - g * dt * self._mean)
         del self._potentials[:-STENCIL]
         self.count += 1
 
-    def _damped(self, flux: Array) -> Array:
-        """Rate of E from the surface flux: less what the absorber takes of E, old and new."""
-        if self.damping is None:
-            return flux
-        return np.asarray(self._solve_damped(self.flow.mass @ flux - self.damping @ self._mean))
-
-    def _forced_flux(self, count: int) -> Array:
-        """(free, parts) surface flux of what is given at a step, smoothed over it."""
-        # blocks start at multiples of BLOCK, so that a resumed run has the very same ones
-        start = count - count % BLOCK
-        if self._forced_from != start:
-            self._forced, self._forced_from = self._forced_block(start), start
-        return np.asarray(self._forced[count - start])
-
-    def _forced_block(self, start: int) -> Array:
+    def _begin_block(self, start: int) -> None:
+        """What is given in the next steps, smoothed over each."""
         times: Array = (start + np.arange(-1.0, BLOCK + 1)) * self.step
-        block = np.zeros((BLOCK, *self._potentials[0].shape))
-        for k, part in enumerate(self.parts):
-            block[:, :, k] = (self._given_map @ _smoothed(part.flux(times), start)).T
+        fluxes = [_smoothed(part.flux(times), start) for part in self.parts]
+        if not fluxes:
+            fluxes = [np.zeros((len(self.flow.elements.hull), BLOCK))]
+        self._given, self._block_from = self._march.given(fluxes), start
         if self.patches:
             rates = np.column_stack([self._head_rate(time) for time in times])
-            block[:, :, 0] += _smoothed(rates, start).T
-        return block
+            self._heads = _smoothed(rates, start).T
 
     def _head(self, time: float) -> Array:
         return sum((p.value(self._xy, time) for p in self.patches), np.zeros(len(self._xy)))
@@ -161,11 +187,11 @@ class Stepper:
         rate = sum(w * p for w, p in zip(slope, self._potentials, strict=True))
         return np.asarray(potential), np.asarray(rate) / self.step
 
-    def hull_parts(self, time: float) -> Array:
-        """Potential rate at hull and wall nodes (below, parts): each part's, for its loads."""
+    def wetted_parts(self, time: float) -> Array:
+        """Potential rate at the nodes of hulls (nodes, parts): each part's, for its loads."""
         rate = self.parts_at(time)[1]
         given = np.column_stack([part.rate(np.array([time]))[:, 0] for part in self.parts])
-        return self.flow.hull_potential(rate, given)
+        return self.flow.at_nodes(rate, self.flow.hull_potential(rate, given))
 
     def state(self, time: float) -> SurfaceState:
         """The solved field, its parts added, at any time among the kept steps."""

@@ -10,9 +10,9 @@ import numpy as np
 import pytest
 
 from bemwave.case import Case
+from bemwave.flow.exact import exact_map
 from bemwave.running.solution import Solution
 from bemwave.running.survey import survey
-from bemwave.stepping.exact import exact_map
 
 STEPS = 64  # two blocks of given fluxes
 

@@ -111,7 +111,7 @@ def loads(elements, panels, hull):
 
 def solved(loads, elements, rate):
     """Load of a potential whose rate (nodes,) is given at all nodes."""
-    return loads.solved(rate[: elements.free], rate[elements.free :])
+    return loads.solved(rate[: elements.nodes])
 
 
 def test_hydrostatic_pressure_carries_the_displaced_water(loads, elements, hull):

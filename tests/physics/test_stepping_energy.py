@@ -10,6 +10,7 @@ import pytest
 from scipy.integrate import cumulative_simpson
 
 from bemwave.case import Case
+from bemwave.flow.exact import LARGEST_TURN, exact_map, fastest_frequency
 from bemwave.flow.panels import PanelFlow
 from bemwave.geometry import forms
 from bemwave.geometry.boundary import boundary_mesh
@@ -20,7 +21,6 @@ from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.water_surface import fitted_water, water_surface
 from bemwave.running.solution import Solution
 from bemwave.running.survey import survey
-from bemwave.stepping.exact import LARGEST_TURN, exact_map, fastest_frequency
 from bemwave.stepping.stepper import Stepper
 
 G = 9.81

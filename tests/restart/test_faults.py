@@ -10,9 +10,9 @@ import pytest
 
 from bemwave import cli, open_run
 from bemwave.errors import RunError
+from bemwave.flow import panels
 from bemwave.running import loop
 from bemwave.running.faults import GrowthGuard
-from bemwave.stepping import stepper
 from tests.restart.cases import assert_readable
 
 BASIN = """\
@@ -42,9 +42,9 @@ def stopped(home: Path, capsys: pytest.CaptureFixture[str]) -> str:
 def test_an_unstable_scheme_is_stopped_with_its_step(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> None:
-    sound = stepper.exact_map
+    sound = panels.exact_map
     # a map of the step that is far too strong for leapfrog: what it makes grows from step to step
-    monkeypatch.setattr(stepper, "exact_map", lambda *arguments: 100.0 * sound(*arguments))
+    monkeypatch.setattr(panels, "exact_map", lambda *arguments: 100.0 * sound(*arguments))
     told = stopped(tmp_path, capsys)
     assert "the energy of the solved waves grew to " in told
     assert "J at step " in told

@@ -24,6 +24,7 @@ from bemwave.handoff.netcdf import (
     complete_records,
     read_times,
 )
+from bemwave.handoff.plan import water_quadrature
 from bemwave.waves import Sea
 
 SEA = Sea.of([1.0, 1.4], [0.2, -0.4], [0.3, 0.1], [0.0, 1.0], depth=20.0)
@@ -37,7 +38,8 @@ def state_at(time):
 def water():
     x, y = np.meshgrid(*[np.linspace(-20, 20, 21)] * 2)
     points = np.column_stack([x.ravel(), y.ravel(), np.zeros(x.size)])
-    return SurfaceMesh.of_one_part(points, grid_triangles(20, 20), "water")
+    mesh = SurfaceMesh.of_one_part(points, grid_triangles(20, 20), "water")
+    return lambda box: water_quadrature(box, mesh)
 
 
 def deliver(folder, entry, stop=None, keep=None, hulls=()):

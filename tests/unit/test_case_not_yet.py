@@ -13,12 +13,10 @@ BOX = {"size": [10.0, 10.0], "bottom": -5.0, "top": 1.0}
 SPHERE = {"name": "buoy", "form": "sphere", "radius": 2.0}
 
 LATER: dict[str, dict[str, Any]] = {
-    'route = "grid"': {"surface": {"size": [40.0, 30.0], "spacing": 2.0, "route": "grid"}},
     "current": {"water": {"depth": 10.0, "current": [0.5, 0.0]}},
     "path": {"body": [SPHERE | {"path": 2.0}]},
     'attitude = "floating"': {"body": [SPHERE | {"attitude": "floating", "free": ["heave"]}]},
     'attitude = "follow"': {"body": [SPHERE | {"attitude": "follow"}]},
-    "history_region": {"run": {"duration": 20.0, "history_region": {"size": [9.0, 9.0]}}},
     'precision = "single"': {"run": {"duration": 20.0, "precision": "single"}},
     'axes = "body:buoy"': {"body": [SPHERE], "handoff": [{"box": BOX, "axes": "body:buoy"}]},
     'format = "csv"': {"handoff": [{"box": BOX, "format": "csv"}]},

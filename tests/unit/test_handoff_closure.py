@@ -15,6 +15,7 @@ from bemwave.handoff import (
     closure_figure,
     divergence_figure,
 )
+from bemwave.handoff.plan import water_quadrature
 from bemwave.waves import Sea
 
 TIMES = np.linspace(0.0, 9.0, 7)
@@ -32,7 +33,8 @@ def water_mesh(spacing=2.0, size=60.0):
     x, y = np.meshgrid(*[np.linspace(-size / 2, size / 2, n + 1)] * 2, indexing="ij")
     points = np.column_stack([x.ravel(), y.ravel(), np.zeros(x.size)])
     mesh = SurfaceMesh.of_one_part(points, grid_triangles(n, n), "water")
-    return mesh if mesh.normals[0, 2] > 0 else mesh.flipped()
+    mesh = mesh if mesh.normals[0, 2] > 0 else mesh.flipped()
+    return lambda box: water_quadrature(box, mesh)
 
 
 def figure(box, sea, flow, state_at, water):

@@ -10,11 +10,11 @@ import numpy as np
 import pytest
 from scipy import linalg
 
+from bemwave.flow.exact import LARGEST_TURN, exact_map, fastest_frequency
 from bemwave.flow.panels import PanelFlow
 from bemwave.geometry.boundary import boundary_mesh
 from bemwave.geometry.outline import SIDES, Rectangle
 from bemwave.geometry.water_surface import structured_water
-from bemwave.stepping.exact import LARGEST_TURN, exact_map, fastest_frequency
 from bemwave.stepping.forcing import PressurePatch
 from bemwave.stepping.stepper import STENCIL, Stepper
 
