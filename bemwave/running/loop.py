@@ -199,8 +199,9 @@ def _told(solution: Solution | None, folder: RunFolder) -> Iterator[None]:
             "forecasts: close other programs, then go on with --resume"
         ) from error
     except (OSError, RuntimeError) as error:  # netCDF's own errors are RuntimeErrors
+        reason = " ".join(str(error).split())[:300]  # some libraries tell at length
         raise RunError(
-            f"{folder.path} could not be written any further {where(solution)} ({error}); "
+            f"{folder.path} could not be written any further {where(solution)} ({reason}); "
             "expected room and a disk that answers and may be written to: see to that, then go on "
             "with --resume; what was written is whole"
         ) from error
