@@ -130,15 +130,15 @@ class SurfaceSampler:
 
     def elevation(self, state: SurfaceState) -> Array:
         """(n,) [m]."""
-        return self._read(state, "elevation", [_VALUE])[0]
+        return self._value(state, "elevation")
 
     def elevation_rate(self, state: SurfaceState) -> Array:
         """(n,) vertical velocity of the surface [m/s]."""
-        return self._read(state, "surface_flux", [_VALUE])[0]
+        return self._value(state, "surface_flux")
 
     def elevation_acceleration(self, state: SurfaceState) -> Array:
         """(n,) vertical acceleration of the surface [m/s^2]."""
-        return self._read(state, "surface_flux_rate", [_VALUE])[0]
+        return self._value(state, "surface_flux_rate")
 
     def velocity(self, state: SurfaceState) -> Array:
         """(n, 3) at z = 0 [m/s]."""
@@ -152,7 +152,11 @@ class SurfaceSampler:
 
     def potential_rate(self, state: SurfaceState) -> Array:
         """(n,) [m^2/s^2]."""
-        return self._read(state, "potential_rate", [_VALUE])[0]
+        return self._value(state, "potential_rate")
+
+    def _value(self, state: SurfaceState, name: str) -> Array:
+        value: Array = self._read(state, name, [_VALUE])[0]
+        return value
 
     def _read(self, state: SurfaceState, name: str, orders: list[Order]) -> Array:
         return self._samplers.extension(state, name).at_surface(self._xy, orders)
