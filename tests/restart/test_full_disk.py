@@ -123,11 +123,12 @@ def without_root_rights() -> None:
 
 
 def test_a_folder_made_read_only_ends_the_run_resumably(tmp_path: Path) -> None:
-    (tmp_path / "case.toml").write_text(CASE.replace("duration = 4.0", "duration = 40.0"))
+    text = TANK.partition("[frames]")[0].replace("duration = 4.0", "duration = 30.0")
+    (tmp_path / "case.toml").write_text(text.replace("[run]\n", "[run]\ncheckpoint_every = 0.3\n"))
     folder = tmp_path / "run"
     arguments = ("run", "case.toml", "--out", "run")
     stopped = command(*arguments, cwd=tmp_path, prepare=without_root_rights)
-    while not list((folder / "checkpoint").glob("0*.ckpt")):
+    while not any(path.stem.isdecimal() for path in (folder / "checkpoint").glob("*.ckpt")):
         assert stopped.poll() is None
         time.sleep(0.01)
     set_rights(folder, 0o555, 0o444)
