@@ -92,14 +92,14 @@ class Plane:
         (nx, ny), (value, slope) = self.shape, self.multipliers
         half, width = nx // 2, ny // 2 + 1
         cut = np.empty((nx, width), dtype=np.complex64)
-        cut[:half], cut[half:] = spectrum[:half, :width], spectrum[-half:, :width]
-        slopes = self._back(cut * slope)
-        cut *= value
-        return self._back(cut), slopes
 
-    def _back(self, spectrum: Complex) -> Floats:
-        field: Floats = fft.irfft2(spectrum, s=self.shape, overwrite_x=True, workers=-1)
-        return field
+        def back(factor: Floats) -> Floats:
+            np.multiply(spectrum[:half, :width], factor[:half], out=cut[:half])
+            np.multiply(spectrum[-half:, :width], factor[half:], out=cut[half:])
+            field: Floats = fft.irfft2(cut, s=self.shape, overwrite_x=True, workers=-1)
+            return field
+
+        return back(value), back(slope)
 
 
 class Planes:
@@ -141,7 +141,8 @@ class Extension:
         self._planes = planes
         self._mean = float(field.mean())
         # single precision is ample for what follows, once the mean is taken out
-        rest = (field - self._mean).astype(np.float32).reshape(planes.sheet.shape)
+        rest = np.empty(planes.sheet.shape, dtype=np.float32)
+        np.subtract(field.reshape(rest.shape), self._mean, out=rest, casting="same_kind")
         self._spectrum: Complex = np.asarray(fft.rfft2(rest, overwrite_x=True, workers=-1))
         self._coefficients: dict[int, tuple[Floats, Floats]] = {}
 

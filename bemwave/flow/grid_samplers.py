@@ -25,6 +25,7 @@ from bemwave.kernels import panels as kernel
 
 Array = npt.NDArray[np.float64]
 Bools = npt.NDArray[np.bool_]
+Ints = npt.NDArray[np.int64]
 
 REACH = 2.5  # spacings from a node of a hull within which the surface's own fields are used
 PART = 64  # points for which influences are held at a time
@@ -88,26 +89,36 @@ class GridSamplers:
         if not len(e.hull):
             return None
 
-        def rows(places: Array) -> Array:
-            parts = [
-                self._rows(np.ascontiguousarray(places[start : start + PART]), components)
-                for start in range(0, len(places), PART)
-            ]
+        def rows(places: Array, columns: Ints) -> Array:
+            starts = range(0, len(places), PART)
+            parts = [self._rows(places[i : i + PART], columns, components) for i in starts]
             return np.concatenate(parts)
 
+        distance, _ = KDTree(e.points).query(points)
         # a potential over the size of the hulls weighs as much as a flux
         size = float(np.ptp(e.points, axis=0).max())
         weights = np.concatenate([np.full(e.nodes, size), np.ones(len(e.hull))])
-        return BlockMap(points, rows, weights, components)
+        return BlockMap(points, np.asarray(distance), rows, weights, components)
 
-    def _rows(self, points: Array, components: int) -> Array:
-        """(n, components, nodes + panels) of the representation formula."""
+    def _rows(self, points: Array, columns: Ints, components: int) -> Array:
+        """(n, components, c) of the representation formula: chosen nodes and panels."""
         e = self.elements
-        flux, nodes = influences(e.points, e.hull, e.hull_table, self.images, points, components)
-        if len(e.water):
+        of_node = columns < e.nodes
+        nodes, panels = columns[of_node], columns[~of_node] - e.nodes
+        used = np.isin(e.hull, nodes).any(axis=1) | np.isin(np.arange(len(e.hull)), panels)
+        lid = np.isin(e.water, nodes).any(axis=1)
+        flux, potential = influences(
+            e.points, e.hull[used], e.hull_table[used], self.images, points, components
+        )
+        if lid.any():
             on_top = self.images.of_surface_dipoles()
-            nodes += influences(e.points, e.water, e.water_table, on_top, points, components)[1]
-        return np.concatenate([nodes, flux], axis=1).reshape(len(points), components, -1)
+            potential += influences(
+                e.points, e.water[lid], e.water_table[lid], on_top, points, components
+            )[1]
+        result = np.empty((len(flux), len(columns)))
+        result[:, of_node] = potential[:, nodes]
+        result[:, ~of_node] = flux[:, np.searchsorted(np.flatnonzero(used), panels)]
+        return result.reshape(len(points), components, -1)
 
     def within_hulls(self, points: Array) -> Bools:
         """Whether each of points (n, 3) is inside a hull: by the solid angle it sees of it."""
@@ -211,7 +222,7 @@ class PointSampler:
         result[self._top] = share * down + (1.0 - share) * value + (z + self._strip * share) * slope
 
 
-def _near_still_water(samplers: GridSamplers, points: Array) -> npt.NDArray[np.int64]:
+def _near_still_water(samplers: GridSamplers, points: Array) -> Ints:
     """Numbers of points in the strip under the surface, near hulls, with water a strip down."""
     top = np.flatnonzero(points[:, 2] > -samplers.strip)
     if not len(samplers.elements.hull) or not len(top):
