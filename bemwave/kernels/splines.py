@@ -9,7 +9,9 @@ from __future__ import annotations
 
 import numpy as np
 import numpy.typing as npt
-from numba import njit, prange
+from numba import prange
+
+from bemwave.kernels.compiling import njit
 
 Array = npt.NDArray[np.float64]
 Floats = npt.NDArray[np.float32]
