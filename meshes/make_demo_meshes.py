@@ -2,9 +2,10 @@
 
     python meshes/make_demo_meshes.py
 
-Writes tender-wetted.vtu and platform.vtu (hulls cut at still water and meshed to their panel size,
-in their own axes, normals out of the hull) and water.vtu (the sheet round both of them where the
-demonstration has them). Needs gmsh. Change the sizes here and in the case file together.
+Writes tender-wetted.vtu, offshore-platform.vtu and platform.vtu, a smaller one (hulls cut at still
+water and meshed to their panel size, in their own axes, normals out of the hull), and water.vtu, a
+sheet of panels round the tender and the smaller platform. Needs gmsh. Change the panel sizes here
+and in the case files together.
 """
 
 import math
@@ -29,9 +30,12 @@ PLATFORM = {"spacing": 16.0, "column_radius": 2.0, "pontoon": 2.0, "draught": 6.
 PLATFORM_PANEL = 2.2
 PLATFORM_POSITION, PLATFORM_HEADING = (-12.5, 0.0), 0.0
 
+OFFSHORE = {"spacing": 26.0, "column_radius": 3.5, "pontoon": 4.0, "draught": 9.0}
+OFFSHORE_PANEL = 2.6
+
 
 def main():
-    """Make and write the three meshes."""
+    """Make and write all meshes."""
     tender = prepare_hull(
         read_mesh(FOLDER / "tender.stl"),
         "tender",
@@ -39,6 +43,8 @@ def main():
         panel_size=TENDER_PANEL,
     )
     platform = place_hull("platform", columns(**PLATFORM, panel_size=PLATFORM_PANEL))
+    offshore = place_hull("offshore", columns(**OFFSHORE, panel_size=OFFSHORE_PANEL))
+    write_mesh(offshore.mesh.flipped(), FOLDER / "offshore-platform.vtu")
     write_mesh(tender.mesh.flipped(), FOLDER / "tender-wetted.vtu")
     write_mesh(platform.mesh.flipped(), FOLDER / "platform.vtu")
     hulls = [

@@ -33,6 +33,7 @@ FINER = 4  # cells of the fine sheet in one of the grid
 COARSER = 4  # cells of the grid in one of the coarse one
 CLOSE = 3.0, 11.0  # spacings from the hulls where the fine sheet gives way to nodes
 FAR = 10.0, 34.0  # and these to coarse nodes
+DEEP = 2.0  # spacings under which hulls see no cells, only nodes
 ACCURACY = 1e-6  # of the few rows that stand for all
 SAMPLE = 1200  # nodes by which they are chosen
 
@@ -72,13 +73,14 @@ class Coupling:
     def pull(self, potential: Array, spectrum: Complex) -> Array:
         """What a surface potential (nx ny, k) of half spectrum (k, ...) does at the hulls.
 
-        (nodes + panels, k): int hat d(phi)/dn over the hulls, normals into the bodies, then int phi
-        over each panel.
+        (nodes, k): int hat d(phi)/dn over the hulls, normals into the bodies. The maps have further
+        rows, int phi over each panel, which only `push` has a use for.
         """
         coarse = self._coarse.back(self.sheet.cropped(spectrum, self._coarse))
         long = coarse.reshape(len(coarse), -1).T[self.beyond]
         few = self._middle @ potential[self.middle] + self._beyond @ long
-        return np.asarray(self._close @ potential[self.close] + self._spread @ few)
+        close, spread = self._close[: self.nodes], self._spread[: self.nodes]
+        return np.asarray(close @ potential[self.close] + spread @ few)
 
     def push(self, load: Array, field: Array) -> Complex:
         """The transpose of `pull`: adds to a field (nx ny, k), and returns a spectrum to add."""
@@ -108,8 +110,12 @@ class Coupling:
         triangles = triangles[used[triangles].any(axis=1)]
         fine = np.column_stack([plan, np.zeros(len(plan))])
         to_fine = sparse.csr_matrix(_hat_projection(nx + 1, ny + 1) @ stencil[:, self.close])
-        rows = self._points.of_triangles(fine, triangles)
-        return np.ascontiguousarray((to_fine.T @ rows.T).T)
+        deep = self._points.at[:, 2] < -DEEP * sheet.spacing
+        rows = self._points.of_triangles(fine, triangles, np.flatnonzero(~deep))
+        maps = np.asarray((to_fine.T @ rows.T).T)
+        # deep down the sum over nodes is as good, exp(-2 pi depth/spacing), and quicker
+        maps += self._points.of_nodes(sheet.xy[self.close], np.flatnonzero(deep)) * sheet.spacing**2
+        return np.ascontiguousarray(maps)
 
 
 class _Rule:
@@ -130,14 +136,15 @@ class _Rule:
             (share.ravel(), (owner.ravel(), np.repeat(number, 3))), shape=shape
         )[: e.nodes]
         self.by_panel = sparse.csr_matrix((area, (number // 3, number)), shape=(count, 3 * count))
+        self._weights = sparse.csr_matrix(sparse.vstack([self.by_hat, self.by_panel]))
 
-    def of_triangles(self, nodes: Array, triangles: Ints) -> Array:
-        """(nodes + panels, n) `pull` of hats on triangles of the surface."""
+    def of_triangles(self, nodes: Array, triangles: Ints, used: Ints) -> Array:
+        """(nodes + panels, n) `pull` of hats on triangles of the surface, at some points."""
         table = kernel.pack(nodes[triangles])
         curls = hat_curls(nodes[triangles], table)
-        result = np.zeros((self.by_hat.shape[0] + self.by_panel.shape[0], len(nodes)))
-        for start in range(0, len(self.at), 192):
-            part = slice(start, start + 192)
+        result = np.zeros((self._weights.shape[0], len(nodes)))
+        for start in range(0, len(used), 192):
+            part = used[start : start + 192]
             at = np.ascontiguousarray(self.at[part])
             velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *self._around)[1]
             slope = np.einsum("pcn,pc->pn", velocity, self.normal[part])
@@ -145,10 +152,19 @@ class _Rule:
             self._add(result, part, slope, level)
         return result
 
+    def of_nodes(self, at: Array, used: Ints) -> Array:
+        """(nodes + panels, n) `pull` of dipoles at places (n, 2), per area, at some points."""
+        result = np.zeros((self._weights.shape[0], len(at)))
+        for start in range(0, len(used), 192):
+            part = used[start : start + 192]
+            maps = _surface_dipoles(self.at[part], self.normal[part], at, self._around)
+            self._add(result, part, *maps)
+        return result
+
     def rows(self, chosen: Ints, at: Array) -> Array:
         """(chosen, n) rows of `pull` of dipoles at places (n, 2) of the surface, per area."""
         hats = self.by_hat.shape[0]
-        weights = sparse.vstack([self.by_hat, self.by_panel]).tocsr()[chosen]
+        weights = self._weights[chosen]
         used = np.unique(weights.indices)
         slope, level = _surface_dipoles(self.at[used], self.normal[used], at, self._around)
         weights = weights[:, used]
@@ -178,12 +194,12 @@ class _Rule:
         spread[touched] = scale[:, None] * sums / scale[chosen]
         return touched[chosen], spread
 
-    def _add(self, result: Array, part: slice, slope: Array, level: Array) -> None:
+    def _add(self, result: Array, part: Ints, slope: Array, level: Array) -> None:
         hats = self.by_hat.shape[0]
-        result[:hats] += np.asarray(self.by_hat[:, part] @ slope)
-        first = part.start // 3
-        panels = self.by_panel[first : first + len(level) // 3, part]
-        result[hats + first : hats + first + len(level) // 3] += np.asarray(panels @ level)
+        for first, weights, values in ((0, self.by_hat, slope), (hats, self.by_panel, level)):
+            some = sparse.csr_matrix(weights[:, part])
+            rows = np.flatnonzero(np.diff(some.indptr))
+            result[first + rows] += np.asarray(some[rows] @ values)
 
 
 def _window(distance: Array, start: float, end: float) -> Array:

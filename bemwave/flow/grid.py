@@ -91,36 +91,39 @@ class GridFlow:
             (np.ones(len(at)), (at, np.arange(len(at)))), shape=(len(rows), len(at))
         )
         spread = spread + place @ inside
-        around = sparse.csr_matrix(sparse.csr_matrix(self.mass[rows])[:, rows])
+        some = sparse.csr_matrix(self.mass[rows])
+        around = sparse.csr_matrix(some[:, rows])
         local = spread.T @ (around @ spread)
         self._solve_near = solver_of(sparse.csc_matrix(local))
 
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
         """Vertical velocity of the surface, (nx ny, k) [m/s]."""
-        return self.vertical_velocity(potential, hull_flux, self.sheet.rise)
+        return self.answer(potential, hull_flux, self.sheet.rise)[0]
+
+    def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
+        """`surface_flux` and `hull_potential` at once."""
+        return self.answer(potential, hull_flux, self.sheet.rise)
 
     def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
         """Potential at all nodes of hulls and waterplanes, (nodes, k) [m^2/s]."""
-        if not self.elements.nodes:
-            return np.zeros((0, potential.shape[1]))
-        spectrum = self._transform(potential)
-        own = self._back(self.sheet.rise * spectrum)
-        return self._coupling.potential(potential, spectrum, own, hull_flux)[0]
+        return self.answer(potential, hull_flux, self.sheet.rise)[1]
 
-    def vertical_velocity(self, potential: Array, hull_flux: Array, rise: Array) -> Array:
-        """As `surface_flux`, with a symbol of the grid's own waves in place of k tanh(kh)."""
+    def answer(self, potential: Array, hull_flux: Array, rise: Array) -> tuple[Array, Array]:
+        """Surface flux and hull potential, `rise` the symbol of the grid's own waves."""
         spectrum = self._transform(potential)
         if not self.elements.nodes:
-            return self._back(rise * spectrum)
+            return self._back(rise * spectrum), np.zeros((0, potential.shape[1]))
         own = self._back(self.sheet.rise * spectrum)
-        load, lid, beyond = self._coupling.load(potential, spectrum, own, hull_flux)
+        u, left = self._coupling.potential(potential, spectrum, own, hull_flux)
+        load, lid, beyond = self._coupling.load(u, left, hull_flux)
         made = beyond - self.sheet.rise * self._transform(lid)
         result = self._back(self._area * rise * spectrum + made) + load
         self.continuation.gather(result)
         result /= self._area
         if self.continuation.inside.any():
-            result[self._near] = self._solve_near(self._area * result[self._near])
-        return self.continuation(result)
+            near = self._area * np.asarray(result[self._near])
+            result[self._near] = self._solve_near(near)
+        return self.continuation(result), u
 
     def continued(self, field: Array) -> Array:
         """A field given on the water, (nx ny,) or (nx ny, k), continued through waterplanes."""
@@ -153,7 +156,8 @@ class GridFlow:
         fields = np.random.default_rng(1).standard_normal((self.sheet.size, 2))
         fields = self.continuation(fields)
         still = np.zeros((len(self.elements.hull), 2))
-        energy = fields.T @ (self.mass @ self.surface_flux(fields, still))
+        rise = np.asarray(self.mass @ self.surface_flux(fields, still))
+        energy = fields.T @ rise
         return float(abs(energy[0, 1] - energy[1, 0]) / abs(energy[0, 0]))
 
     def fastest(self, gravity: float) -> float:
@@ -202,22 +206,18 @@ class _Bodies:
     def potential(
         self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
     ) -> tuple[Array, Array]:
-        """u (nodes, k), and G f of a continued field, its spectrum and its A f."""
-        pulled = -self._coupling.pull(field, spectrum)[: self._count]
+        """u (nodes, k), and what waterlines are left with, of a field, its spectrum and its A f."""
+        pulled = -self._coupling.pull(field, spectrum)
         free = self._lid_test.shape[0]
         pulled[:free] += self._lid_test @ own
         u = np.empty_like(pulled)
         u[self._line] = self._on_line @ field
         u[self._found] = self._by_flux @ pulled[self._found] + self._by_line @ u[self._line]
         u[self._found] += self._by_given @ hull_flux
-        return u, pulled
+        return u, self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
 
-    def load(
-        self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
-    ) -> tuple[Array, Array, Complex]:
+    def load(self, u: Array, left: Array, hull_flux: Array) -> tuple[Array, Array, Complex]:
         """What bodies add to A f: on nodes, as a field that A is still to be taken of, in waves."""
-        u, pulled = self.potential(field, spectrum, own, hull_flux)
-        left = self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
         load = self._from_line @ left
         beyond = self._coupling.push(np.concatenate([u, -hull_flux]), load)
         return load, self._lid @ u[: self._lid.shape[1]], beyond
@@ -247,7 +247,7 @@ class GridMarch:
 
     def flux(self, potential: Array, given: Array) -> Array:
         """(nx ny, parts) from the potential in the middle of a step."""
-        return self._flow.vertical_velocity(potential, given, self._rise)
+        return self._flow.answer(potential, given, self._rise)[0]
 
     def damped(self, flux: Array, mean: Array) -> Array:
         """Rate of the step's mean elevation: the flux less what the absorber takes, old and new."""

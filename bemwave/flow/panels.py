@@ -99,6 +99,10 @@ class PanelFlow:
         result: Array = self._hull_from_surface @ potential + self._hull_from_flux @ hull_flux
         return result
 
+    def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
+        """`surface_flux` and `hull_potential`."""
+        return self.surface_flux(potential, hull_flux), self.hull_potential(potential, hull_flux)
+
     def solve_mass(self, load: Array) -> Array:
         """M_F^-1 load."""
         result: Array = self._solve_mass(load)

@@ -4,7 +4,10 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+
 from bemwave.flow.dispersion import frequency_error, phase_error
+from bemwave.handoff import box_of
 from bemwave.running.driving import start_up
 from bemwave.running.sea import length_of_period
 from bemwave.running.survey import Survey
@@ -35,9 +38,25 @@ def forecasts(survey: Survey) -> dict[str, float]:
 
 
 def trustworthy_from(survey: Survey) -> float:
-    """When scattered waves of the peak have crossed the useful water after the start-up [s]."""
-    water, surface = survey.case.water, survey.case.surface
+    """When scattered waves of the peak have passed all bodies, gauges and boxes [s].
+
+    They start at the bodies, so that water further off than these does not count.
+    """
+    water = survey.case.water
     if survey.mesh is None or math.isinf(survey.periods.peak):
         return 0.0
     speed = float(group_speed(survey.periods.peak, water.depth, water.gravity))
-    return start_up(survey).length + math.hypot(*surface.extent) / speed
+    return start_up(survey).length + _span(survey) / speed
+
+
+def _span(survey: Survey) -> float:
+    """Across all that is in the water [m]; across the useful water where waves start in it all."""
+    case = survey.case
+    if not survey.hulls:
+        return math.hypot(*case.surface.extent)
+    places = [hull.mesh.points[:, :2] for hull in survey.hulls]
+    places += [np.array([gauge.position]) for gauge in case.gauge]
+    boxes = [box_of(entry) for entry in case.handoff]
+    corners = np.array([[-1.0, -1.0], [1.0, -1.0], [1.0, 1.0], [-1.0, 1.0]]) / 2.0
+    places += [box.to_earth(corners * box.size) for box in boxes if box is not None]
+    return float(np.hypot(*np.ptp(np.concatenate(places), axis=0)))

@@ -151,7 +151,7 @@ def _panels(s: Survey) -> _Lines:
 def _times(s: Survey) -> _Lines:
     yield "start-up", f"{start_up(s).length:.3g} s"
     first, duration = trustworthy_from(s), s.case.run.duration
-    yield "trust from", f"t = {first:.3g} s, when solved waves have crossed the useful water"
+    yield "trust from", f"t = {first:.3g} s, when solved waves have passed bodies, gauges and boxes"
     if first > duration:
         yield "", f"that is after the run's end, {duration:g} s: a longer duration is needed"
     for entry in s.case.handoff:

@@ -26,7 +26,7 @@ import numpy.typing as npt
 from scipy import sparse
 
 from bemwave.flow.elements import Elements
-from bemwave.flow.state import SurfaceState
+from bemwave.flow.state import ARRAYS, SurfaceState
 from bemwave.stepping.forcing import GivenFlux, PressurePatch
 
 Array = npt.NDArray[np.float64]
@@ -64,8 +64,8 @@ class Flow(Protocol):
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
         """Vertical velocity of the surface (n, k) [m/s]."""
 
-    def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
-        """Potential at hulls and walls (b, k) [m^2/s]."""
+    def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
+        """That, and the potential at hulls and walls (b, k) [m^2/s]."""
 
     def at_nodes(self, surface: Array, hull: Array) -> Array:
         """A field of the surface and of hulls, at the nodes of `elements`."""
@@ -105,6 +105,7 @@ class Stepper:
         self._given: Array = np.empty((0, 0, 0))
         self._heads: Array = np.empty((0, 0))
         self._block_from = -1
+        self._latest: tuple[float, int, SurfaceState] | None = None
 
     def _first_mean(self, elevation: Array | None) -> Array:
         """E(-1/2) of the free motion from rest, which is even in time."""
@@ -189,34 +190,42 @@ class Stepper:
 
     def wetted_parts(self, time: float) -> Array:
         """Potential rate at the nodes of hulls (nodes, parts): each part's, for its loads."""
-        rate = self.parts_at(time)[1]
-        given = np.column_stack([part.rate(np.array([time]))[:, 0] for part in self.parts])
-        return self.flow.at_nodes(rate, self.flow.hull_potential(rate, given))
+        at = self._parts_of(time)
+        return self.flow.at_nodes(at.potential_rate, at.hull_potential_rate)
 
     def state(self, time: float) -> SurfaceState:
         """The solved field, its parts added, at any time among the kept steps."""
-        potential, rate = (part.sum(axis=1) for part in self.parts_at(time))
-        flux, flux_rate = (
-            np.zeros(len(self.flow.elements.hull)),
-            np.zeros(len(self.flow.elements.hull)),
-        )
-        for part in self.parts:
-            flux = flux + part.flux(np.array([time]))[:, 0]
-            flux_rate = flux_rate + part.rate(np.array([time]))[:, 0]
-        both, given = np.column_stack([potential, rate]), np.column_stack([flux, flux_rate])
-        surface, hull = self.flow.surface_flux(both, given), self.flow.hull_potential(both, given)
-        return SurfaceState(
-            time=time,
-            elevation=-rate / self.gravity - self._head(time),
-            potential=potential,
-            potential_rate=rate,
-            surface_flux=surface[:, 0],
-            surface_flux_rate=surface[:, 1],
-            hull_potential=hull[:, 0],
-            hull_potential_rate=hull[:, 1],
-            hull_flux=flux,
-            hull_flux_rate=flux_rate,
-        )
+        parts = self._parts_of(time)
+        whole = {name: getattr(parts, name).sum(axis=1) for name in ARRAYS}
+        whole["elevation"] -= self._head(time)
+        return SurfaceState(time, **whole)
+
+    def _parts_of(self, time: float) -> SurfaceState:
+        """Each part's field in a column, but for pressure heads; the latest is kept."""
+        if self._latest is None or self._latest[:2] != (time, self.count):
+            potential, rate = self.parts_at(time)
+            at, shape = np.array([time]), (len(self.flow.elements.hull), potential.shape[1])
+            flux, flux_rate = np.zeros(shape), np.zeros(shape)
+            for k, part in enumerate(self.parts):
+                flux[:, k], flux_rate[:, k] = part.flux(at)[:, 0], part.rate(at)[:, 0]
+            surface, hull = self.flow.both(
+                np.hstack([potential, rate]), np.hstack([flux, flux_rate])
+            )
+            k = potential.shape[1]
+            state = SurfaceState(
+                time=time,
+                elevation=-rate / self.gravity,
+                potential=potential,
+                potential_rate=rate,
+                surface_flux=surface[:, :k],
+                surface_flux_rate=surface[:, k:],
+                hull_potential=hull[:, :k],
+                hull_potential_rate=hull[:, k:],
+                hull_flux=flux,
+                hull_flux_rate=flux_rate,
+            )
+            self._latest = time, self.count, state
+        return self._latest[2]
 
 
 def _smoothed(values: Array, start: int) -> Array:
