@@ -127,13 +127,10 @@ def survey(case: Case) -> Survey:
     )
     files = tuple(_motion_file(case, body) for body in case.body)
     periods = _periods(case, sea, scattered, list(_periods_made(case, hulls, files)))
-    layer = _layer(case, periods, behind("panels", closed))
-    outline = _outline(case, layer)
     check_layout(hulls, useful_water(case))
-    route = choose(case, hulls, _expected_triangles(case, outline, hulls))
-    if route[0] == "grid":
-        layer = _layer(case, periods, behind(route[0], closed))
-        outline = _outline(case, layer)
+    route = choose(case, hulls, _expected_triangles(case, periods, hulls))
+    layer = _layer(case, periods, behind(route[0], closed))
+    outline = _outline(case, 0.0 if layer is None else layer.width)
     solved = bool(hulls or case.hump or case.pressure or case.wavemaker)
     sheet = None
     if route[0] == "grid":
@@ -258,9 +255,9 @@ def useful_water(case: Case) -> Outline:
     return Rectangle(x - lx / 2, x + lx / 2, y - ly / 2, y + ly / 2)
 
 
-def _outline(case: Case, layer: Layer | None) -> Outline:
+def _outline(case: Case, width: float) -> Outline:
     """The useful water with the absorber outside the edges that absorb."""
-    useful, width = useful_water(case), 0.0 if layer is None else layer.width
+    useful = useful_water(case)
     if isinstance(useful, Circle):
         return Circle(useful.x, useful.y, useful.radius + width)
     margin = {side: 0.0 if side in case.surface.walls else width for side in SIDES}
@@ -277,9 +274,14 @@ def _fine_spacing(case: Case, hulls: tuple[Hull, ...]) -> float:
     return surface.fine_spacing or default_fine_spacing(surface.spacing, hulls)
 
 
-def _expected_triangles(case: Case, outline: Outline, hulls: tuple[Hull, ...]) -> int:
-    """On route "panels", in open water, about."""
-    fine = _fine_spacing(case, hulls)
+def _expected_triangles(case: Case, periods: Periods, hulls: tuple[Hull, ...]) -> int:
+    """On route "panels", in open water, about: with an absorber a wavelength wide."""
+    water, fine = case.water, _fine_spacing(case, hulls)
+    width = case.surface.absorber
+    if width == "auto":
+        known = math.isfinite(periods.longest)
+        width = length_of_period(periods.longest, water.depth, water.gravity) if known else 0.0
+    outline = _outline(case, float(width))
     on_hulls = sum(len(hull.mesh.triangles) for hull in hulls)
     return on_hulls + expected_triangles(outline, case.surface.spacing, hulls, fine)
 

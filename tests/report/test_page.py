@@ -229,7 +229,7 @@ def test_the_page_of_the_sea_alone(sea_alone: Path) -> None:
 @pytest.mark.slow
 def test_two_hundred_records_take_no_longer_than_twenty_seconds(tmp_path: Path) -> None:
     root = Path(bemwave.__file__).parents[1]
-    case = bemwave.read_case(root / "examples" / "tender_by_platform.toml")
+    case = bemwave.read_case(root / "examples" / "tender_on_panels.toml")
     run = bemwave.run(case, tmp_path / "run")
     assert len(run.times) == 201
     begun = time.perf_counter()

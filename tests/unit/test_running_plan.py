@@ -18,7 +18,7 @@ from bemwave.running.check import coarser
 from bemwave.running.sampling import sampled, sampling_memory
 from bemwave.running.survey import survey
 
-DEMONSTRATION = Path(cli.__file__).parents[1] / "examples" / "tender_by_platform.toml"
+DEMONSTRATION = Path(cli.__file__).parents[1] / "examples" / "tender_on_panels.toml"
 HUMP = {"height": 0.1, "width": 1.0}
 
 
