@@ -26,6 +26,7 @@ from bemwave.kernels.panels import THREE
 from bemwave.stepping.absorber import layer_for
 from bemwave.stepping.at_frequency import AtFrequency
 from bemwave.stepping.forcing import Ramp, ScatteredSea
+from bemwave.stepping.run_up import at_waterlines
 from bemwave.waves import Sea, depth_factors, group_speed, phase_speed, wavelength
 
 Array = npt.NDArray[np.float64]
@@ -150,14 +151,11 @@ class Scattered:
 
     def at_waterlines(self) -> tuple[Array, Complex]:
         """Places (m, 2) of the nodes of waterlines, and the whole elevation there (m,) [m]."""
-        e = self._waves.bodies.flow.elements
-        line = np.unique(e.hull)
-        line = line[line < e.free]
-        at = e.points[line, :2]
-        incident = self._waves.amplitude(
-            lambda times: self._sea.elevation(at[:, 0], at[:, 1], times)
-        )
-        return at, incident + self._waves.equation.elevation(self.hull_potential[line])
+        waves = self._waves
+        elements, rate = waves.bodies.flow.elements, waves.frequency**2 / waves.bodies.gravity
+        at, potential = at_waterlines(elements, self.hull_potential, rate)
+        incident = waves.amplitude(lambda times: self._sea.elevation(at[:, 0], at[:, 1], times))
+        return at, incident + waves.equation.elevation(potential)
 
     def sent_out(self, directions: Array) -> Complex:
         """H (n,): far off in a direction the scattered elevation is H e^(i(kr - pi/4)) / sqrt(r).

@@ -68,7 +68,7 @@ def in_waves(bodies, ka, heading=0.0):
         (0.2, 1 / 8, 0.6, (1.0,)),
         pytest.param(0.2, 1 / 6, 1.0, (0.2,), marks=pytest.mark.slow),
         pytest.param(0.15, 1 / 10, 0.6, (0.5, 1.0), marks=pytest.mark.slow),
-        pytest.param(0.1, 1 / 16, 0.4, (2.0, 3.0), marks=pytest.mark.slow),
+        pytest.param(0.1, 1 / 14, 0.4, (2.0, 3.0), marks=pytest.mark.slow),
     ],
 )
 def test_force_run_up_and_drift(panel, spacing, depth, frequencies):
