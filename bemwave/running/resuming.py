@@ -152,9 +152,10 @@ def save(
 
 
 def _ground(solution: Solution | None) -> str:
-    """What a field's arrays stand on: a checksum of the mesh, and the step."""
+    """What a field's arrays stand on: the grid, a checksum of the mesh, and the step."""
     if solution is None or solution.survey.mesh is None:
         return "nothing solved"
     mesh = solution.survey.mesh
-    found = hashlib.sha256(mesh.points.tobytes() + mesh.triangles.tobytes())
+    grid = repr(solution.survey.sheet).encode()
+    found = hashlib.sha256(grid + mesh.points.tobytes() + mesh.triangles.tobytes())
     return f"{found.hexdigest()} step {solution.step!r}"

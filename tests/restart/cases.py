@@ -140,6 +140,71 @@ horizontal_displacement = true
 """
 )
 
+GRID = """\
+[water]
+depth = "deep"
+[[waves]]
+kind = "regular"
+height = 0.05
+period = 1.8
+[surface]
+size = [8.0, 6.0]
+spacing = 0.25
+route = "grid"
+absorber = 4.0
+[[body]]
+name = "ball"
+form = "sphere"
+radius = 0.5
+panel_size = 0.3
+attitude = "forced"
+forced = { mode = "heave", amplitude = 0.03, period = 1.8 }
+[run]
+duration = 4.0
+record_every = 0.1
+[[gauge]]
+position = [1.0, 0.0]
+[[handoff]]
+name = "box"
+box = { size = [3.0, 2.0], bottom = -1.0, top = 0.2 }
+start = 3.0
+every = 0.1
+field = "parts"
+volume_at_start = true
+[frames]
+formats = ["ply"]
+start = 3.0
+fps = 5
+region = { size = [4.0, 3.0] }
+spacing = 0.25
+horizontal_displacement = true
+shading = true
+"""
+
+GRID_HUMP = """\
+[water]
+depth = "deep"
+[[hump]]
+height = 0.05
+width = 0.8
+[surface]
+size = [8.0, 8.0]
+spacing = 0.25
+route = "grid"
+absorber = 3.0
+[run]
+duration = 4.0
+record_every = 0.1
+history_region = { size = [4.0, 3.0] }
+[[gauge]]
+position = [1.0, 0.0]
+[[handoff]]
+name = "box"
+box = { size = [3.0, 2.0], bottom = -1.0, top = 0.2 }
+start = 3.0
+every = 0.1
+"""
+
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
 CASES = {
     "tank": TANK,
@@ -147,6 +212,8 @@ CASES = {
     "moved by file": MOVED_BY_FILE,
     "sea alone": SEA_ALONE,
     "pictures": PICTURES,
+    "grid": GRID,
+    "hump on the grid": GRID_HUMP,
 }
 
 
