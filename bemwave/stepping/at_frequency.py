@@ -30,7 +30,8 @@ Complex = npt.NDArray[np.complex128]
 DAMPED = 0.3  # of w^2: what the sea that divides loses
 ACCURACY = 1e-6  # of the equation, over its right-hand side
 WORST = 1e-5  # above this there is no result
-ITERATIONS = 150
+BASIS = 60  # fields kept by an iteration until it starts again
+CYCLES = 5
 
 
 class AtFrequency:
@@ -85,15 +86,15 @@ class AtFrequency:
         equation: Any = LinearOperator((count, count), matvec=self._left_side, dtype=complex)
         division: Any = LinearOperator((count, count), matvec=self._divide, dtype=complex)
         solved: Any = gmres(
-            equation, wanted, M=division, rtol=ACCURACY, restart=ITERATIONS, maxiter=1
+            equation, wanted, M=division, rtol=ACCURACY, restart=BASIS, maxiter=CYCLES
         )
         found: Complex = solved[0]
         left = np.linalg.norm(wanted - self._left_side(found)) / np.linalg.norm(wanted)
         if not left <= WORST:
             period = 2.0 * math.pi / self._frequency
             raise RunError(
-                f"waves of period {period:.4g} s: {ITERATIONS} iterations leave {left:.2g} of the "
-                f"equation open, {WORST:g} wanted; give a wider absorber or a coarser grid"
+                f"waves of period {period:.4g} s: {CYCLES * BASIS} iterations leave {left:.2g} of "
+                f"the equation open, {WORST:g} wanted; give a wider absorber or a coarser grid"
             )
         return self._continued(found)
 

@@ -92,7 +92,8 @@ class SteadyWaves:
         The load of a velocity v and an acceleration a is -(damping v + added mass a).
         """
         shapes = self.bodies.shapes if motions is None else self.bodies.shapes[:, list(motions)]
-        load = self.loads_of(self.equation.solve(shapes.astype(complex))[1], self.sea(0.0))
+        made = [self.equation.solve(shape[:, None] + 0j)[1] for shape in shapes.T]
+        load = self.loads_of(np.hstack(made), self.sea(0.0))
         return load.imag / self.frequency, -load.real
 
     def scattered(self, heading: float) -> Scattered:
@@ -158,10 +159,9 @@ class Scattered:
         return at, incident + waves.equation.elevation(potential)
 
     def sent_out(self, directions: Array) -> Complex:
-        """H (n,): far off in a direction the scattered elevation is H e^(i(kr - pi/4)) / sqrt(r).
+        """H (n,) [m]: far off the scattered elevation is sqrt(2/(pi k r)) exp(i(kr - pi/4)) H.
 
-        Times sqrt(2/(pi k)), in m. By Green's theorem over the hulls, with a wave that comes from
-        there.
+        By Green's theorem over the hulls, with waves that come from those directions [rad].
         """
         bodies = self._waves.bodies
         e, k = bodies.flow.elements, float(self._sea.wavenumber[0])

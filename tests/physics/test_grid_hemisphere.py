@@ -14,8 +14,10 @@ import math
 import numpy as np
 import pytest
 
+from bemwave.errors import RunError
 from bemwave.geometry.forms import sphere
 from bemwave.geometry.hull import place_hull
+from bemwave.stepping import at_frequency
 from bemwave.stepping.in_waves import BodiesOnGrid, SteadyWaves
 from bemwave.stepping.response import water_round
 
@@ -71,6 +73,13 @@ def test_coefficients_on_1024_panels(frequencies):
     for ka in frequencies:
         table, haskind = coefficients(bodies, ka)
         error = (table - HULME[ka]) / SCALE[list(HULME).index(ka)]
-        print(ka, np.round(100 * error, 2), np.round(100 * (haskind - 1), 2))
         assert np.abs(error).max() < 0.005
         assert haskind == pytest.approx(1.0, abs=0.01)
+
+
+def test_iterations_that_do_not_come_to_an_end_are_an_error(monkeypatch):
+    monkeypatch.setattr(at_frequency, "BASIS", 2)
+    monkeypatch.setattr(at_frequency, "CYCLES", 1)
+    waves = SteadyWaves(ball(0.5, 2.0, 1.0), 1.2)
+    with pytest.raises(RunError, match="2 iterations leave"):
+        waves.added_mass_and_damping([2])

@@ -15,7 +15,7 @@ from scipy.special import h1vp, hankel1, jv, jvp
 from bemwave.geometry.forms import cylinder
 from bemwave.geometry.hull import place_hull
 from bemwave.stepping.in_waves import DIRECTIONS, BodiesOnGrid, SteadyWaves
-from bemwave.stepping.response import water_round
+from bemwave.stepping.response import response, water_round
 
 G, DENSITY = 9.81, 1000.0
 TERMS = [(m, 1 if m == 0 else 2) for m in range(40)]
@@ -107,3 +107,30 @@ def test_four_piles():
             own = np.linalg.norm(places[:, None] - axes, axis=2).argmin(axis=1)
             highest = [np.abs(elevation[own == number]).max() for number in range(4)]
             assert highest == pytest.approx(elevations, rel=0.02)
+
+
+def test_response_has_the_names_and_phases_of_its_table():
+    """A pile elsewhere, turned with the waves: its own axes, and the wave at its own origin."""
+    ka, depth, turned = 1.0, 0.6, math.radians(30.0)
+    form = cylinder(1.0, depth, 0.2, stands_on_bed=True)
+    hull = place_hull("pile", form, position=(3.03, -2.04), heading=turned)
+    period = 2.0 * math.pi / math.sqrt(G * ka * math.tanh(ka * depth))
+    found = response(
+        [hull], [period], [turned], spacing=1 / 8, depth=depth, density=DENSITY, gravity=G
+    )
+    assert found.modes[0] == "pile/surge"
+    assert found.added_mass.shape == found.damping.shape == (1, 6, 6)
+    assert found.wave_load_amplitude.shape == found.wave_load_phase.shape == (1, 1, 6)
+    surge, sway = found.wave_load_amplitude[0, 0, :2]
+    assert surge == pytest.approx(force(ka, depth), rel=0.006)
+    assert sway < 0.001 * surge
+    # the series' first term: F = 4 rho g tanh(kh)/(k^2 a H1'(ka)) exp(-i w t)
+    phase = -np.angle(h1vp(1, ka))
+    assert found.wave_load_phase[0, 0, 0] == pytest.approx(phase, abs=0.01)
+    # Haskind (1957): B11 = k X1^2/(8 rho g Cg)
+    speed = math.sqrt(G * math.tanh(ka * depth) / ka)
+    speed *= 0.5 + ka * depth / math.sinh(2.0 * ka * depth)
+    assert found.damping[0, 0, 0] == pytest.approx(
+        ka * surge**2 / (8.0 * DENSITY * G * speed), rel=0.01
+    )
+    assert found.returned[0] < 0.003
