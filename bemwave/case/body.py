@@ -142,6 +142,11 @@ class Body(Table):
         return self.form or "mesh"
 
     @property
+    def rides(self) -> bool:
+        """Whether it follows the surface and makes no waves: it is not in the solved boundary."""
+        return self.attitude == "follow"
+
+    @property
     def motions_file(self) -> str | None:
         """The name of the .csv file that moves it, or None."""
         return self.attitude if self.attitude.lower().endswith(".csv") else None
@@ -175,6 +180,9 @@ class Body(Table):
             "floating": ("forced",),
         }.get(self.attitude, ("forced", "free", "released"))
         faults = keys_for(self, owner, needed, refused)
+        if self.rides and self.draught == "bed":
+            text = 'got "bed", and what rides the surface stands on nothing; expected a number'
+            faults.append(Fault(("draught",), text))
         if self.free is not None and len(set(self.free)) < len(self.free):
             faults.append(Fault(("free",), f"names a mode twice: {', '.join(self.free)}"))
         return faults

@@ -27,8 +27,8 @@ def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
         where = f'[[body]] "{body.name}"'
         if body.path != "fixed":
             yield f"{where} path other than fixed", 'write path = "fixed"'
-        if body.attitude in ("floating", "follow"):
-            yield f'{where} attitude = "{body.attitude}"', 'write attitude = "fixed" or "forced"'
+        if body.attitude == "floating":
+            yield f'{where} attitude = "floating"', 'write attitude = "fixed" or "forced"'
         if body.thin:
             yield f"{where} thin", "take it out"
     yield from _run_not_yet(case)

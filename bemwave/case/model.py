@@ -195,6 +195,16 @@ class Case(Table):
         named += [self.surface.mesh] + [handoff.points for handoff in self.handoff]
         return tuple(sorted({str(name) for name in named if name is not None}))
 
+    @property
+    def solved_bodies(self) -> tuple[Body, ...]:
+        """The bodies that the water flows round, in order."""
+        return tuple(body for body in self.body if not body.rides)
+
+    @property
+    def riding_bodies(self) -> tuple[Body, ...]:
+        """The bodies that ride the surface and make no waves, in order."""
+        return tuple(body for body in self.body if body.rides)
+
     def placed(self, folder: Path) -> Self:
         """The same case, its relative file names starting from another folder."""
         case = self.model_copy()

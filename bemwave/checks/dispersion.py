@@ -72,7 +72,7 @@ def _steady_frequency(run: Run) -> float | None:
         return None
     periods = {m.period for m in case.wavemaker}
     periods |= {body.forced.period for body in case.body if body.forced is not None}
-    if case.body:
+    if case.solved_bodies:
         if any(wave.kind != "regular" for wave in case.waves):
             return None
         periods |= {wave.period for wave in case.waves if wave.period is not None}

@@ -145,7 +145,7 @@ class Run:
 
     @cached_property
     def hulls(self) -> tuple[Hull, ...]:
-        """The bodies at rest, in the order of the case."""
+        """The bodies that the water flows round, at rest, in the order of the case."""
         return tuple(
             rest.hull(name, self.mesh.keep(self.mesh.in_part(name)))
             for name, rest in self.manifest.bodies.items()
@@ -203,7 +203,9 @@ class Run:
         with reading(self.folder.bodies) as file:
             times = read_times(file)
             first, weights = cubic_in_time(times, time)
-            near = np.asarray(file["velocity"][first : first + len(weights)], dtype=np.float64)
+            rows = slice(first, first + len(weights))
+            # after these bodies come those that ride the surface
+            near = np.asarray(file["velocity"][rows, : len(self.hulls)], dtype=np.float64)
         return in_radians(np.tensordot(weights, near, axes=1))
 
     def elevation(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> Array:

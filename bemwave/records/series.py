@@ -21,6 +21,10 @@ FORCES = {
     "force_radiated": "of the waves that the body's motion makes",
     "force_restoring": "of the water's weight as the body leaves its place at rest",
 }
+RIDING = (
+    'bodies with attitude = "follow" ride the surface and make no waves: heave, roll and pitch '
+    "follow the plane nearest to it, surge and sway the water of the incident waves alone"
+)
 _SOURCE = f"bemwave {__version__}, linear potential theory"
 
 
@@ -32,6 +36,7 @@ class BodiesFile:
     path : Path
     times : (n,) s, of all records that will be.
     names : sequence of str
+        Of the bodies, those last that ride the surface.
     keep : int, optional
         Records of an interrupted run to keep.
     """
@@ -47,7 +52,7 @@ class BodiesFile:
                 dimensions,
                 "m",
                 f"displacement from the mean position: {about}",
-                attributes={"comment": "m; degrees for roll, pitch and yaw"},
+                attributes={"comment": f"m; degrees for roll, pitch and yaw; {RIDING}"},
             ),
             Variable(
                 "velocity",
@@ -64,7 +69,7 @@ class BodiesFile:
                 "N",
                 f"pressure load about the centre of mass, body axes, {what}; weight and buoyancy "
                 "at rest left out",
-                attributes={"comment": "N; N m for roll, pitch and yaw"},
+                attributes={"comment": "N; N m for roll, pitch and yaw; none of riding bodies"},
             )
             for name, what in FORCES.items()
         ]

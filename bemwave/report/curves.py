@@ -85,7 +85,9 @@ def _gauges(start: int, gauges: Sequence[Gauge], since: float, folder: Path) -> 
 def load_figures(
     number: int, name: str, bodies: Bodies, since: float, folder: Path
 ) -> Iterator[Figure]:
-    """Forces and moments on one body."""
+    """Forces and moments on one body; none of one that rides the surface."""
+    if not np.isfinite(bodies.forces["force"][:, number]).any():
+        return
     parts = {key: values[:, number] for key, values in bodies.forces.items() if key in _FORCE_NAMES}
     parts = {key: values for key, values in parts.items() if np.nan_to_num(values).any()}
     for first, kind, unit in ((0, "forces", "N"), (3, "moments", "N m")):

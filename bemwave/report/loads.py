@@ -25,10 +25,14 @@ def loads(material: Material) -> Section:
         return Section("loads", QUESTION, short, answer, [])
     blocks: list[Block] = []
     for place, name in enumerate(bodies.names):
-        blocks.append(_table(material, bodies, place, name))
+        if np.isfinite(bodies.forces["force"][:, place]).any():
+            blocks.append(_table(material, bodies, place, name))
         blocks.append(Figures(list(_figures(material, bodies, place, name))))
     since = material.shown(bodies.times)
     size = np.abs(bodies.forces["force"][since][:, :, :3])
+    if not np.isfinite(size).any():
+        answer = "Bodies that ride the surface have motions alone: no loads are reckoned on them."
+        return Section("loads", QUESTION, "no loads", answer, blocks)
     _, body, mode = np.unravel_index(int(np.nanargmax(size)), size.shape)
     largest = f"{number(float(np.nanmax(size)) / 1e3)} kN"
     answer = (

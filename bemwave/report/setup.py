@@ -19,7 +19,7 @@ def setup(material: Material) -> Section:
         Table("The run.", ("", ""), list(_run_rows(material))),
         Table("The water.", ("", ""), list(_water_rows(run))),
     ]
-    if run.case.body:
+    if run.hulls:
         blocks.append(_body_table(run))
     if run.manifest.inputs:
         rows = [(name, digest) for name, digest in run.manifest.inputs.items()]
@@ -96,7 +96,7 @@ def _water_rows(run: Run) -> Iterator[tuple[str, str]]:
 
 def _body_table(run: Run) -> Table:
     rows = []
-    for body, hull in zip(run.case.body, run.hulls, strict=False):
+    for body, hull in zip(run.case.solved_bodies, run.hulls, strict=False):
         here = hull.hydrostatics
         rows.append(
             (

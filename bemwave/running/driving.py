@@ -80,7 +80,7 @@ def _scattered(survey: Survey, elements: Elements, ramp: Ramp) -> ScatteredSea:
 def _motions(survey: Survey, ramp: Ramp) -> list[tuple[Motion | None, ...]]:
     """Displacements of each body; metres and radians."""
     result = []
-    for body, file in zip(survey.case.body, survey.motion_files, strict=True):
+    for body, file in zip(survey.case.solved_bodies, survey.motion_files, strict=True):
         row: list[Motion | None] = [None] * 6
         if body.forced is not None:
             mode = MODES.index(body.forced.mode)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 import numpy as np
@@ -28,6 +28,7 @@ from bemwave.frames import (
 from bemwave.frames.surface import Flow
 from bemwave.geometry.outline import Circle, Rectangle
 from bemwave.geometry.pose import Pose
+from bemwave.running.riding import Rider
 from bemwave.running.sea import added_sea, unscattered_sea
 from bemwave.running.solution import Solution
 from bemwave.running.survey import Survey
@@ -42,14 +43,21 @@ class FramesOutput:
     """frames/, told where the bodies have gone."""
 
     def __init__(
-        self, survey: Survey, solution: Solution | None, flow: Flow | None, folder: Path, keep: int
+        self,
+        survey: Survey,
+        solution: Solution | None,
+        flow: Flow | None,
+        riders: Sequence[Rider],
+        folder: Path,
+        keep: int,
     ) -> None:
         case = survey.case
         assert case.frames is not None
-        self._survey, self._solution = survey, solution
+        self._survey, self._solution, self._riders = survey, solution, riders
+        asked = case.solved_bodies + case.riding_bodies
         bodies = [
             DrawnBody(hull.name, drawn_mesh(hull), hull.place, body.attitude != "fixed")
-            for hull, body in zip(survey.hulls, case.body, strict=True)
+            for hull, body in zip(survey.hulls + survey.riders, asked, strict=True)
         ]
         surface = moving_surface(survey, case.frames, flow)
         note = f"{note_on(survey)}; bemwave {__version__}"
@@ -69,6 +77,8 @@ class FramesOutput:
             motion = self._solution.motions(state.time)[0]
             hulls = self._survey.hulls
             places = {h.name: displacement(h, row) for h, row in zip(hulls, motion, strict=True)}
+        for hull, rider in zip(self._survey.riders, self._riders, strict=True):
+            places[hull.name] = displacement(hull, rider.motion(state))
         self._writer.write(state, places)
 
     def flush(self) -> None:

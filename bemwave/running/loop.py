@@ -42,7 +42,7 @@ from bemwave.running.faults import refuse_no_numbers, where
 from bemwave.running.forecast import forecasts, trustworthy_from
 from bemwave.running.frames_output import note_on, shares
 from bemwave.running.interrupts import heard
-from bemwave.running.outputs import LedgerOutput, Output, outputs_of
+from bemwave.running.outputs import EnergyOutput, Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
 from bemwave.running.resuming import refuse_changed, restore, save, tell_what_changed
 from bemwave.running.sampling import refuse_unfit
@@ -291,7 +291,7 @@ def _visits(
 
 def _figure(state: SurfaceState, outputs: Mapping[str, Output]) -> str:
     """What to show beside the bar: how far it is, and whether energy is kept until now."""
-    figure, ledger = f"t = {state.time:.1f} s", outputs.get("ledger")
-    if isinstance(ledger, LedgerOutput) and ledger.count:
-        figure += f", {ledger.figure}"
+    figure, energy = f"t = {state.time:.1f} s", outputs.get("energy")
+    if isinstance(energy, EnergyOutput) and energy.count:
+        figure += f", {energy.figure}"
     return figure

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Protocol
 
 import numpy as np
@@ -19,6 +19,7 @@ from bemwave.records.energy import EnergyFile, Ledger, read_energy
 from bemwave.running.driving import start_up
 from bemwave.running.faults import GrowthGuard
 from bemwave.running.frames_output import FramesOutput
+from bemwave.running.riding import Rider
 from bemwave.running.solution import Solution
 from bemwave.running.survey import Survey
 
@@ -70,8 +71,8 @@ class HistoryOutput:
         self._file.flush()
 
 
-class LedgerOutput:
-    """bodies.nc and energy.nc."""
+class EnergyOutput:
+    """energy.nc."""
 
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         self.times = fine_times(solution.survey)
@@ -83,8 +84,6 @@ class LedgerOutput:
         self._guard = GrowthGuard(solution)
         for time, energy, power_in, _ in self._rows:
             self._guard.check(time, energy, power_in)
-        names = [hull.name for hull in solution.survey.hulls]
-        self._bodies = BodiesFile(folder.bodies, self.times, names, keep) if names else None
 
     @property
     def count(self) -> int:
@@ -104,15 +103,49 @@ class LedgerOutput:
         self._guard.check(state.time, energy, power_in)
         self._rows.append((state.time, energy, power_in, absorbed))
         self._energy.append(*self._rows[-1])
-        if self._bodies is not None:
-            motion, velocity = self._solution.motions(state.time)
-            self._bodies.append(state.time, motion, velocity, self._solution.loads(state.time))
 
     def flush(self) -> None:
         """See `Output`."""
         self._energy.flush()
-        if self._bodies is not None:
-            self._bodies.flush()
+
+
+class BodiesOutput:
+    """bodies.nc: the bodies that the water flows round, then those that ride it, without loads."""
+
+    def __init__(
+        self,
+        survey: Survey,
+        solution: Solution | None,
+        riders: Sequence[Rider],
+        folder: RunFolder,
+        keep: int | None,
+    ) -> None:
+        self.times = fine_times(survey)
+        self._solution, self._riders = solution, riders
+        names = [hull.name for hull in survey.hulls + survey.riders]
+        self._file = BodiesFile(folder.bodies, self.times, names, keep)
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._file.count
+
+    def write(self, state: SurfaceState) -> None:
+        """See `Output`."""
+        motion, velocity = np.zeros((2, 0, 6))
+        loads: dict[str, Array] = {}
+        none = np.full((len(self._riders), 6), np.nan)
+        if self._solution is not None:
+            motion, velocity = self._solution.motions(state.time)
+            given = self._solution.loads(state.time)
+            loads = {name: np.vstack([load, none]) for name, load in given.items()}
+        motion = np.vstack([motion, *(rider.motion(state) for rider in self._riders)])
+        velocity = np.vstack([velocity, *(rider.velocity(state) for rider in self._riders)])
+        self._file.append(state.time, motion, velocity, loads)
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._file.flush()
 
 
 class GaugesOutput:
@@ -179,6 +212,7 @@ def outputs_of(
     """All outputs of a case by name; `kept`: how many instants each has from before."""
     case = survey.case
     flow = None if solution is None else solution.samplers()
+    riders = [Rider(hull, survey.sea, flow) for hull in survey.riders]
     outputs: dict[str, Output] = {}
 
     def keep(name: str) -> int | None:
@@ -186,7 +220,9 @@ def outputs_of(
 
     if solution is not None:
         outputs["history"] = HistoryOutput(solution, folder, keep("history"))
-        outputs["ledger"] = LedgerOutput(solution, folder, keep("ledger"))
+        outputs["energy"] = EnergyOutput(solution, folder, keep("energy"))
+    if case.body:
+        outputs["bodies"] = BodiesOutput(survey, solution, riders, folder, keep("bodies"))
     if case.gauge:
         outputs["gauges"] = GaugesOutput(survey, flow, folder, keep("gauges"))
     scene = Scene(
@@ -204,7 +240,8 @@ def outputs_of(
         handoff = Handoff(entry, case, scene, folder.handoff, keep(name))
         outputs[name] = HandoffOutput(handoff, solution)
     if case.frames is not None:
-        outputs["frames"] = FramesOutput(survey, solution, flow, folder.frames, keep("frames") or 0)
+        done = keep("frames") or 0
+        outputs["frames"] = FramesOutput(survey, solution, flow, riders, folder.frames, done)
     return outputs
 
 

@@ -27,7 +27,7 @@ def draw(survey: Survey, path: Path) -> None:
     if survey.mesh is not None:
         x, y = survey.water.points[:, 0], survey.water.points[:, 1]
         axes.triplot(x, y, survey.water.triangles, color="#88aacc", linewidth=0.3)
-    for number, hull in enumerate(survey.hulls):
+    for number, hull in enumerate(survey.hulls + survey.riders):
         plan = hull.polygons() or [hull.mesh.points[:, :2]]
         for k, loop in enumerate(plan):
             label = hull.name if k == 0 else None

@@ -105,7 +105,7 @@ def _sea(s: Survey) -> _Lines:
     )
     if sea.count > 1:
         yield "repeats after", f"{sea.repeat_time:.3g} s (2 pi over the least frequency spacing)"
-    if s.case.body:
+    if s.hulls:
         yield "not scattered", (
             f"{100 * s.unscattered_share:.2g} % of the sea's energy: waves of fewer than "
             f"{PANELS_PER_WAVELENGTH:g} panels stay incident only"
@@ -113,7 +113,7 @@ def _sea(s: Survey) -> _Lines:
 
 
 def _bodies(s: Survey) -> _Lines:
-    for hull, body, file in zip(s.hulls, s.case.body, s.motion_files, strict=True):
+    for hull, body, file in zip(s.hulls, s.case.solved_bodies, s.motion_files, strict=True):
         h = hull.hydrostatics
         yield f"body {hull.name}", (
             f"{len(hull.mesh.triangles)} panels, {h.length:.4g} x {h.beam:.4g} x "
@@ -126,6 +126,12 @@ def _bodies(s: Survey) -> _Lines:
                 f"moved by {body.attitude}: nine tenths of its speed's variance between periods of "
                 f"{periods[1]:.3g} and {periods[0]:.3g} s; eased in over the start-up"
             )
+    for hull in s.riders:
+        h = hull.hydrostatics
+        yield f"body {hull.name}", (
+            f"rides the surface, makes no waves: {h.length:.4g} x {h.beam:.4g} x "
+            f"{h.draught:.4g} m, in surge and sway with the incident waves alone"
+        )
 
 
 def _panels(s: Survey) -> _Lines:

@@ -59,7 +59,8 @@ class Survey:
     case : the case.
     sea, scattered, unscattered_share : the incident sea, its components that hulls scatter, and
         the energy share of the others.
-    hulls : the bodies at rest.
+    hulls : the bodies that the water flows round, at rest.
+    riders : those that ride the surface and make no waves, at rest.
     motion_files : what moves each of them from a file, or None.
     route : the route taken, and why.
     outline : the water with its absorber.
@@ -77,6 +78,7 @@ class Survey:
     scattered: Sea
     unscattered_share: float
     hulls: tuple[Hull, ...]
+    riders: tuple[Hull, ...]
     motion_files: tuple[MotionFile | None, ...]
     route: tuple[str, str]
     outline: Outline
@@ -121,13 +123,11 @@ def survey(case: Case) -> Survey:
     closed, mirrors = _edges(case)
     sea = incident_sea(case, mirrors)
     scattered, unscattered = scattered_sea(sea, surface.spacing)
-    hulls = tuple(
-        hull_from(body, spacing=surface.spacing, depth=water.depth, folder=case.folder)
-        for body in case.body
-    )
-    files = tuple(_motion_file(case, body) for body in case.body)
+    hulls, riders = _hulls(case, case.solved_bodies), _hulls(case, case.riding_bodies)
+    files = tuple(_motion_file(case, body) for body in case.solved_bodies)
     periods = _periods(case, sea, scattered, list(_periods_made(case, hulls, files)))
-    check_layout(hulls, useful_water(case))
+    check_layout(hulls + riders, useful_water(case))
+    _refuse_without_waterplane(riders)
     route = choose(case, hulls, _expected_triangles(case, periods, hulls))
     layer = _layer(case, periods, behind(route[0], closed))
     outline = _outline(case, 0.0 if layer is None else layer.width)
@@ -143,8 +143,8 @@ def survey(case: Case) -> Survey:
         walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
         mesh = boundary_mesh(meshed, hulls, walls, water.depth) if solved else None
     return Survey(
-        case, sea, scattered, unscattered, hulls, files, route, outline, layer, closed, mirrors,
-        sheet, meshed, mesh, periods,
+        case, sea, scattered, unscattered, hulls, riders, files, route, outline, layer, closed,
+        mirrors, sheet, meshed, mesh, periods,
     )  # fmt: skip
 
 
@@ -180,6 +180,23 @@ def _edges(case: Case) -> tuple[bool, tuple[Mirror, ...]]:
     return False, tuple(Mirror(side[0], at[side]) for side in walls)
 
 
+def _hulls(case: Case, bodies: tuple[Body, ...]) -> tuple[Hull, ...]:
+    spacing, depth = case.surface.spacing, case.water.depth
+    return tuple(
+        hull_from(body, spacing=spacing, depth=depth, folder=case.folder) for body in bodies
+    )
+
+
+def _refuse_without_waterplane(riders: tuple[Hull, ...]) -> None:
+    for hull in riders:
+        if not hull.waterlines:
+            raise InputError(
+                f'{hull.name}: attitude = "follow" was given, and it lies wholly under water; '
+                "expected a body that pierces the surface it rides: raise it, or write "
+                'attitude = "fixed"'
+            )
+
+
 def _motion_file(case: Case, body: Body) -> MotionFile | None:
     name = body.motions_file
     return None if name is None else MotionFile(case.folder / name, case.run.duration)
@@ -187,7 +204,7 @@ def _motion_file(case: Case, body: Body) -> MotionFile | None:
 
 def _periods(case: Case, sea: Sea, scattered: Sea, made: list[float]) -> Periods:
     longest, shortest = list(made), list(made)
-    if case.body and scattered.count:
+    if case.solved_bodies and scattered.count:
         order = np.argsort(scattered.frequency)
         share = np.cumsum(scattered.amplitude[order] ** 2)
         low = scattered.frequency[order][np.searchsorted(share, 0.05 * share[-1])]
@@ -210,7 +227,7 @@ def _periods_made(
 ) -> Iterator[float]:
     """Periods of the waves that bodies, wavemakers, humps and patches make themselves."""
     depth, gravity = case.water.depth, case.water.gravity
-    for body in case.body:
+    for body in case.solved_bodies:
         if body.forced is not None:
             yield body.forced.period
     for hull, file in zip(hulls, files, strict=True):

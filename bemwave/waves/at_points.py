@@ -87,6 +87,14 @@ class SeaAtPoints:
         """Velocity in m/s; the last axis holds u, v, w."""
         return self._vector(t, self.sea.gravity * self.sea.wavenumber / self.sea.frequency)
 
+    def displacement(self, t: ArrayLike) -> Array:
+        """How far the water has moved from the points, in metres; the last axis holds x, y, z.
+
+        First order: the integral of the velocity at the fixed points, without a mean.
+        """
+        sea = self.sea
+        return self._vector(t, 1j * sea.gravity * sea.wavenumber / sea.frequency**2)
+
     def acceleration(self, t: ArrayLike) -> Array:
         """d(velocity)/dt at the fixed points in m/s^2 (linear: no advective part)."""
         return self._vector(t, -1j * self.sea.gravity * self.sea.wavenumber)

@@ -243,6 +243,12 @@ BAD = {
         16, '[[body]] draught: got "bed", which goes with form = "cylinder" alone, expected a '
         "number",
     ),
+    "standing and riding": (
+        'form = "box"\nlength = 8.0\nbeam = 4.0\ndraught = 1.0',
+        'form = "cylinder"\nradius = 2.0\nattitude = "follow"\ndraught = "bed"',
+        17, '[[body]] draught: got "bed", and what rides the surface stands on nothing; expected '
+        "a number",
+    ),
 }  # fmt: skip
 
 

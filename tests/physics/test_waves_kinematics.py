@@ -43,6 +43,19 @@ def test_below_still_water(z, u, w, pressure):
     assert at.pressure(0.0)[0] == pytest.approx(pressure, rel=1e-6)
 
 
+def test_the_water_moves_round_ellipses():
+    # half axes H/2 cosh k(z + h)/sinh kh along and H/2 sinh k(z + h)/sinh kh upward, a quarter
+    # period apart (Dean & Dalrymple 1991, section 4.2)
+    k = float(REGULAR.wavenumber[0])
+    at = REGULAR.at([[0.0, 0.0, -5.0], [0.0, 0.0, 0.0]])
+    along = 1.5 * np.cosh(k * np.array([15.0, 20.0])) / math.sinh(20.0 * k)
+    upward = 1.5 * np.sinh(k * np.array([15.0, 20.0])) / math.sinh(20.0 * k)
+    # on top under the crest, behind its place a quarter period before that
+    assert at.displacement(0.0)[:, 2] == pytest.approx(upward, rel=1e-9)
+    assert at.displacement(-2.0)[:, 0] == pytest.approx(-along, rel=1e-9)
+    assert at.displacement(0.0)[:, 0] == pytest.approx([0.0, 0.0], abs=1e-12)
+
+
 @pytest.mark.parametrize("angle", [0.0, 35.0, 180.0, -120.0])
 def test_velocity_follows_the_heading(angle):
     sea = make_sea("regular", height=3.0, period=8.0, heading=angle, **WATER)
