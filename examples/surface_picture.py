@@ -1,4 +1,4 @@
-"""Draw the surface of a finished run: all of it, and what the bodies throw back.
+"""Draw the surface of a finished run: all that was kept of it, and what the bodies throw back.
 
     python examples/surface_picture.py examples/tender_by_platform-run picture.png
 
@@ -18,7 +18,8 @@ def main(folder: str, picture: str, time: float | None = None) -> float:
     """Draw the end of a run, or another time; returns the highest scattered wave [m]."""
     run = bemwave.open_run(folder)
     time = run.times[-1] if time is None else time
-    (x0, y0), size = run.case.surface.centre, run.case.surface.extent
+    kept, surface = run.case.run.history_region, run.case.surface
+    (x0, y0), size = (kept.centre, kept.size) if kept else (surface.centre, surface.extent)
     x = x0 + size[0] * np.linspace(-0.5, 0.5, 181)
     y = y0 + size[1] * np.linspace(-0.5, 0.5, round(180 * size[1] / size[0]) + 1)
     plan = np.meshgrid(x, y)
