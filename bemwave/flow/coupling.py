@@ -8,6 +8,10 @@ Three zones are blended by windows. Close to the hulls the surface is a fine she
 which the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over
 the nodes of a coarser grid that carries only the long waves. In the outer two a few rows stand for
 all (interpolative decomposition: Cheng et al. 2005, SIAM J. Sci. Comput. 26:1389).
+
+All three end with the grid; the surface of the periodic water does not. Its mean, which is felt
+furthest, is put right: a potential that is the same all over moves nothing. Else a hull would draw
+in water for ever when something has raised the mean, and give off less than it displaces.
 """
 
 from __future__ import annotations
@@ -69,6 +73,12 @@ class Coupling:
         self._beyond = self._points.rows(chosen, at_beyond) * (
             area * COARSER**2 * beyond[self.beyond]
         )
+        self._by_mean = self._points.of_level() - self._of_level()
+
+    def _of_level(self) -> Array:
+        """(nodes + panels,) the three zones' answer to a potential of one all over."""
+        few = self._middle.sum(axis=1) + self._beyond.sum(axis=1)
+        return np.asarray(self._close.sum(axis=1) + self._spread @ few)
 
     def pull(self, potential: Array, spectrum: Complex) -> Array:
         """What a surface potential (nx ny, k) of half spectrum (k, ...) does at the hulls.
@@ -80,7 +90,9 @@ class Coupling:
         long = coarse.reshape(len(coarse), -1).T[self.beyond]
         few = self._middle @ potential[self.middle] + self._beyond @ long
         close, spread = self._close[: self.nodes], self._spread[: self.nodes]
-        return np.asarray(close @ potential[self.close] + spread @ few)
+        mean = spectrum[:, 0, 0].real / self.sheet.size
+        beyond = self._by_mean[: self.nodes, None] * mean
+        return np.asarray(close @ potential[self.close] + spread @ few + beyond)
 
     def push(self, load: Array, field: Array) -> Complex:
         """The transpose of `pull`: adds to a field (nx ny, k), and returns a spectrum to add."""
@@ -90,7 +102,9 @@ class Coupling:
         coarse = np.zeros((load.shape[1], self._coarse.size))
         coarse[:, self.beyond] = (self._beyond.T @ few).T
         spectrum = self._coarse.transform(coarse.reshape(-1, *self._coarse.shape))
-        return self.sheet.padded(spectrum, self._coarse)
+        made = self.sheet.padded(spectrum, self._coarse)
+        made[:, 0, 0] += load.T @ self._by_mean
+        return made
 
     def _fine_map(self) -> Array:
         """`pull` of the fine sheet, by the grid's nodes close to the hulls."""
@@ -137,6 +151,11 @@ class _Rule:
         )[: e.nodes]
         self.by_panel = sparse.csr_matrix((area, (number // 3, number)), shape=(count, 3 * count))
         self._weights = sparse.csr_matrix(sparse.vstack([self.by_hat, self.by_panel]))
+
+    def of_level(self) -> Array:
+        """(nodes + panels,) `pull` of a potential of one: no slope, and one on every panel."""
+        hats = self.by_hat.shape[0]
+        return np.append(np.zeros(hats), np.asarray(self.by_panel.sum(axis=1)))
 
     def of_triangles(self, nodes: Array, triangles: Ints, used: Ints) -> Array:
         """(nodes + panels, n) `pull` of hats on triangles of the surface, at some points."""
