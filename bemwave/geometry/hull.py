@@ -41,7 +41,9 @@ class Hull:
     place : Pose
         Body axes to earth axes. Body axes are level, x forward, y to port, z = 0 at still water.
     notes : tuple of str
-        What was merged, left out, cut, remeshed.
+        What was merged, cut, remeshed.
+    left_out : tuple of (str, float or None)
+        Parts left out, and how wide each is under water (`hull_file.width_under_water`), m.
     whole : SurfaceMesh, optional
         The whole body, topsides too, as its file has it: body axes, normals out of the hull.
     """
@@ -54,6 +56,7 @@ class Hull:
     centre_of_mass: FloatArray
     place: Pose
     notes: tuple[str, ...] = ()
+    left_out: tuple[tuple[str, float | None], ...] = ()
     whole: SurfaceMesh | None = None
 
     @property
@@ -213,7 +216,7 @@ def prepare_hull(
     mesh, notes = _meshed(wetted, before, size, source)
     if centre_of_mass is not None:
         centre_of_mass = floating.pose(np.array(centre_of_mass, dtype=np.float64)).tolist()
-    return place_hull(
+    hull = place_hull(
         name,
         mesh,
         before=before,
@@ -223,6 +226,7 @@ def prepare_hull(
         notes=[*floating.notes, *notes],
         whole=floating.mesh,
     )
+    return replace(hull, left_out=floating.left_out)
 
 
 def _meshed(

@@ -24,11 +24,13 @@ class Floating:
     """A whole hull put in the water: level axes, still water at z = 0, normals out of the hull.
 
     `pose` takes points of the file, after scale, to these axes. `notes` say what was changed.
+    `left_out` has the name of each part left out and its `width_under_water`.
     """
 
     mesh: SurfaceMesh
     pose: Pose
     notes: tuple[str, ...]
+    left_out: tuple[tuple[str, float | None], ...] = ()
 
 
 @dataclass(frozen=True)
@@ -89,10 +91,8 @@ def put_in_water(
         notes.append(f"{merged} points within {tolerance:.3g} m of others merged")
     if dropped:
         notes.append(f"{dropped} triangles without area dropped by the merging")
-    mesh = named_pieces(mesh)
-    if without:
-        mesh = _without(mesh, without, source)
-        notes.append(f"left out: {', '.join(without)}")
+    whole = named_pieces(mesh)
+    mesh = _without(whole, without, source) if without else whole
     if not len(mesh.triangles):
         raise InputError(f"{source}: no triangles are left; leave fewer parts out")
     odd = find_odd_size(
@@ -106,7 +106,12 @@ def put_in_water(
     turned = mesh.points @ rotation.T
     rise = 0.0 if draught is None else -draught - float(turned[:, 2].min())
     pose = Pose(rotation, np.array([0.0, 0.0, rise]))
-    return Floating(mesh.with_points(pose(mesh.points)), pose, tuple(notes))
+    parts = {name: whole.keep(whole.in_part(name)) for name in without}
+    left_out = tuple(
+        (name, width_under_water(part.with_points(pose(part.points))))
+        for name, part in parts.items()
+    )
+    return Floating(mesh.with_points(pose(mesh.points)), pose, tuple(notes), left_out)
 
 
 def wetted_part(hull: Floating, source: str, depth: float = math.inf) -> Wetted:
@@ -138,6 +143,24 @@ def wetted_part(hull: Floating, source: str, depth: float = math.inf) -> Wetted:
     if faults:
         raise InputError(f"{source}, under water: {'; also '.join(map(str, faults))}")
     return Wetted(mesh.flipped(), cut)
+
+
+def width_under_water(mesh: SurfaceMesh) -> float | None:
+    """Least extent in plan, in any direction, of what lies under z = 0, m; None if nothing does.
+
+    Of a shape with straight sides in plan the narrowest direction is square to one of them (the
+    convex hull's: Houle & Toussaint 1988, IEEE PAMI 10:761).
+    """
+    from scipy.spatial import ConvexHull, QhullError
+
+    plan = below(mesh, 0.0, 0.0).points[:, :2]
+    if not len(plan):
+        return None
+    try:
+        outward = ConvexHull(plan).equations[:, :2]
+    except QhullError:  # a sheet seen on edge
+        return 0.0
+    return float(np.ptp(plan @ outward.T, axis=0).min())
 
 
 def named_pieces(mesh: SurfaceMesh) -> SurfaceMesh:

@@ -40,7 +40,7 @@ class Inspection:
         The same before remeshing.
     faults : tuple of Fault
     notes : tuple of str
-        What was merged, left out, cut, remeshed.
+        What was merged, cut, remeshed.
     """
 
     path: Path

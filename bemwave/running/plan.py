@@ -11,6 +11,7 @@ import numpy as np
 
 from bemwave.case import Case
 from bemwave.frames import frame_times
+from bemwave.geometry.hull import Hull
 from bemwave.running.budget import GIGABYTE, budget, memory_allowed
 from bemwave.running.driving import start_up
 from bemwave.running.forecast import forecasts, trustworthy_from
@@ -119,6 +120,7 @@ def _bodies(s: Survey) -> _Lines:
             f"{len(hull.mesh.triangles)} panels, {h.length:.4g} x {h.beam:.4g} x "
             f"{h.draught:.4g} m, {h.volume:.4g} m3, waterplane {h.waterplane_area:.4g} m2"
         )
+        yield from _left_out(s, hull)
         for note in hull.notes:
             yield "", note
         if file is not None and (periods := file.periods(h.length / 2.0)) is not None:
@@ -132,6 +134,17 @@ def _bodies(s: Survey) -> _Lines:
             f"rides the surface, makes no waves: {h.length:.4g} x {h.beam:.4g} x "
             f"{h.draught:.4g} m, in surge and sway with the incident waves alone"
         )
+
+
+def _left_out(s: Survey, hull: Hull) -> _Lines:
+    """Parts left out: the thinner they are for the waves solved, the less is wrong by it."""
+    for name, width in hull.left_out:
+        told = "not under water" if width is None else f"{width:.3g} m wide under water"
+        if width is not None and math.isfinite(s.periods.shortest):
+            water = s.case.water
+            shortest = length_of_period(s.periods.shortest, water.depth, water.gravity)
+            told += f", {width / shortest:.2g} of the shortest solved wave ({shortest:.3g} m)"
+        yield "", f"left out: {name}, {told}"
 
 
 def _panels(s: Survey) -> _Lines:

@@ -246,7 +246,7 @@ BAD = {
     "standing and riding": (
         'form = "box"\nlength = 8.0\nbeam = 4.0\ndraught = 1.0',
         'form = "cylinder"\nradius = 2.0\nattitude = "follow"\ndraught = "bed"',
-        17, '[[body]] draught: got "bed", and what rides the surface stands on nothing; expected '
+        16, '[[body]] draught: got "bed", and what rides the surface stands on nothing; expected '
         "a number",
     ),
 }  # fmt: skip

@@ -14,7 +14,7 @@ from bemwave.geometry.faults import find_faults
 from bemwave.geometry.files import read_mesh
 from bemwave.geometry.forms import box, cylinder, sphere
 from bemwave.geometry.hull import prepare_hull
-from bemwave.geometry.hull_file import put_in_water
+from bemwave.geometry.hull_file import put_in_water, width_under_water
 from bemwave.geometry.hydrostatics import hydrostatics
 from bemwave.geometry.intersections import piercing_edges
 from bemwave.geometry.remesh import quality
@@ -37,6 +37,11 @@ def ball(radius=1.0, size=0.15):
 
 def moved(mesh, shift):
     return mesh.with_points(mesh.points + np.asarray(shift))
+
+
+def turned(mesh, angle):
+    c, s = math.cos(angle), math.sin(angle)
+    return mesh.with_points(mesh.points @ np.array([[c, -s, 0], [s, c, 0], [0, 0, 1]]).T)
 
 
 # the cut
@@ -194,6 +199,17 @@ def test_a_column_open_at_the_bed_is_taken():
 # parts
 
 
+def test_width_of_a_part_is_its_least_across_under_water():
+    plate = moved(closed_box(4.0, 0.12, 2.0, 0.5), [3.0, 1.0, -2.0])
+    for angle in (0.0, 0.3, 2.0):
+        assert width_under_water(turned(plate, angle)) == pytest.approx(0.12, rel=1e-9)
+    leg = moved(turned(plate, 0.3), [0.0, 0.0, 1.7])  # mostly above
+    assert width_under_water(leg) == pytest.approx(0.12, rel=1e-9)
+    assert width_under_water(moved(plate, [0.0, 0.0, 4.0])) is None
+    sheet = plate.with_points(plate.points * [1.0, 0.0, 1.0])
+    assert width_under_water(turned(sheet, 0.3)) == pytest.approx(0.0, abs=1e-12)
+
+
 def test_parts_are_left_out_by_piece_and_by_name():
     rudder = moved(closed_box(0.5, 0.1, 1.0, 0.2), [-4.0, 0, -1.0])
     whole = joined([closed_box().renamed("hull"), rudder.renamed("rudder")])
@@ -202,7 +218,9 @@ def test_parts_are_left_out_by_piece_and_by_name():
     by_piece = prepare_hull(nameless, "b", without=["piece2"])
     for hull in (by_name, by_piece):
         assert hull.hydrostatics.volume == pytest.approx(18.0, rel=1e-9)
-        assert any("left out" in note for note in hull.notes)
+        ((name, width),) = hull.left_out
+        assert name in ("rudder", "piece2")
+        assert width == pytest.approx(0.1, rel=1e-9)
     with pytest.raises(InputError, match="piece1, piece2"):
         prepare_hull(nameless, "b", without=["keel"])
     with pytest.raises(InputError, match="no triangles are left"):

@@ -3,14 +3,21 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 from matplotlib.figure import Figure
 
+import bemwave
 from bemwave import cli
 from bemwave.case import Case, read_case
+from bemwave.geometry.files import write_mesh
+from bemwave.geometry.forms import box
+from bemwave.geometry.surface_mesh import SurfaceMesh, joined
+from bemwave.geometry.topology import weld
 from bemwave.handoff import box_of
 from bemwave.handoff.box import box_points, box_volume
 from bemwave.running import plan
@@ -35,6 +42,15 @@ def case(**tables: Any) -> Case:
 def told(asked: Case) -> dict[str, str]:
     rows = (line.split("  ", 1) for line in plan(asked).splitlines())
     return {label: text.strip() for label, text in rows}
+
+
+def closed_box(name: str, size: Sequence[float], middle: Sequence[float]) -> SurfaceMesh:
+    """One part, normals out of it."""
+    length, beam, height = size
+    lower = box(length, beam, 0.5 * height, 0.3)
+    upper = lower.with_points(lower.points * [1.0, 1.0, -1.0]).flipped()
+    both = weld(joined([lower, upper]), 1e-9)[0].flipped()
+    return both.with_points(both.points + np.array(middle)).renamed(name)
 
 
 def test_open_water() -> None:
@@ -150,6 +166,22 @@ def test_the_picture_has_everything_to_scale_and_a_title_as_it_is(
         "frames",
     ]
     assert "waves 1" in [text.get_text() for text in axes.texts]
+
+
+def test_the_width_of_parts_left_out_is_told_in_wavelengths(tmp_path: Path) -> None:
+    parts = [
+        closed_box("hull", (3.0, 2.0, 1.6), (0.0, 0.0, 0.0)),
+        closed_box("rudder", (0.4, 0.06, 0.5), (-1.9, 0.0, -0.4)),
+        closed_box("mast", (0.3, 0.2, 0.5), (0.0, 0.0, 2.0)),
+    ]
+    write_mesh(joined(parts), tmp_path / "boat.obj")
+    body = {"name": "boat", "mesh": "boat.obj", "without": ["rudder", "mast"]}
+    wave = {"kind": "regular", "height": 0.1, "period": 2.0}
+    text = plan(case(body=[body], hump=[], waves=[wave]).placed(tmp_path))
+    length = 2.0 * math.pi / bemwave.wavenumber(2.0, 4.0)
+    told = f"{0.06 / length:.2g} of the shortest solved wave ({length:.3g} m)"
+    assert f"left out: rudder, 0.06 m wide under water, {told}" in text
+    assert "left out: mast, not under water" in text
 
 
 def test_the_files_that_a_run_reads_are_listed(tmp_path: Path) -> None:
