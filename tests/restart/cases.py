@@ -127,6 +127,18 @@ spacing = 0.1
 displacement_maps = true
 """
 
+RIDER = """\
+[[body]]
+name = "buoy"
+form = "cylinder"
+radius = 0.2
+draught = 0.2
+position = [1.0, 0.8]
+attitude = "follow"
+"""
+SEA_ALONE += RIDER
+MOVED_BY_FILE += RIDER
+
 PICTURES = (
     TANK.replace('["ply", "vtk"]', '["usd", "obj", "glb", "ply", "vtk"]')
     .replace("start = 2.0\nfps = 5", "start = 1.0\nfps = 5")
