@@ -17,6 +17,8 @@ water alone:
 
 X being the continuation of the nodes' values. S = X' E'' X is symmetric and M positive definite, so
 no mode of the water can grow, whatever hulls there are; where E is positive no wave is imaginary.
+For that, what quadrature beside waterlines makes of a potential that is the same all over, which
+moves nothing, is kept out of S by X' and X alike; so the surface rises by what hulls displace.
 """
 
 from __future__ import annotations
@@ -115,8 +117,11 @@ class GridFlow:
             return self._back(rise * spectrum), np.zeros((0, potential.shape[1]))
         own = self._back(self.sheet.rise * spectrum)
         u, left = self._coupling.potential(potential, spectrum, own, hull_flux)
-        load, lid, beyond = self._coupling.load(u, left, hull_flux)
+        mean = spectrum[:, 0, 0].real / self.sheet.size
+        beside = u - self._coupling.of_level * mean
+        load, lid, beyond = self._coupling.load(beside, left, hull_flux)
         made = beyond - self.sheet.rise * self._transform(lid)
+        made[:, 0, 0] = self._coupling.risen(hull_flux) - load.sum(axis=0)
         result = self._back(self._area * rise * spectrum + made) + load
         self.continuation.gather(result)
         result /= self._area
@@ -194,6 +199,7 @@ class _Bodies:
         self._by_line = -self._by_flux @ across
         self._by_given = -self._by_flux @ given[self._found]
         self._coupling = Coupling(sheet, e, images)
+        self._panel_area = e.hull_table[:, 28]
         self._on_line = sheet.interpolation(e.points[self._line, :2])
         self._from_line = sparse.csr_matrix(self._on_line.T)
         at, weight, hats = _lid_rule(e)
@@ -202,6 +208,13 @@ class _Bodies:
         self._lid = sparse.csr_matrix(weighted @ hats)
         self._lid_test = sparse.csr_matrix(self._lid.T)
         self.dry_mass = sparse.csr_matrix(weighted @ places)
+        self.of_level = self._of_level(sheet)
+
+    def _of_level(self, sheet: Sheet) -> Array:
+        """u (nodes, 1) of a potential of one all over: one; on bodies under water zero."""
+        level, still = np.ones((sheet.size, 1)), np.zeros((len(self._panel_area), 1))
+        spectrum = sheet.transform(level.reshape(1, *sheet.shape))
+        return self.potential(level, spectrum, np.zeros_like(level), still)[0]
 
     def potential(
         self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
@@ -215,6 +228,10 @@ class _Bodies:
         u[self._found] = self._by_flux @ pulled[self._found] + self._by_line @ u[self._line]
         u[self._found] += self._by_given @ hull_flux
         return u, self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
+
+    def risen(self, hull_flux: Array) -> Array:
+        """(k,) volume that comes up in a second, of what goes into the hulls [m^3/s]."""
+        return np.asarray(-self._panel_area @ hull_flux)
 
     def load(self, u: Array, left: Array, hull_flux: Array) -> tuple[Array, Array, Complex]:
         """What bodies add to A f: on nodes, as a field that A is still to be taken of, in waves."""
