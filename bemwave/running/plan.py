@@ -151,6 +151,9 @@ def _panels(s: Survey) -> _Lines:
     if s.mesh is None:
         yield "panels", "none: the sea is all there is"
         return
+    if math.isinf(s.periods.shortest):
+        yield "resolution", "no waves are solved: none are made, and none are scattered"
+        return
     found = forecasts(s)
     depth, gravity = s.case.water.depth, s.case.water.gravity
     shortest = length_of_period(s.periods.shortest, depth, gravity)

@@ -168,6 +168,13 @@ def test_the_picture_has_everything_to_scale_and_a_title_as_it_is(
     assert "waves 1" in [text.get_text() for text in axes.texts]
 
 
+@pytest.mark.parametrize("waves", [[], [{"kind": "regular", "height": 0.1, "period": 1.0}]])
+def test_a_body_at_rest_without_waves_that_it_scatters(waves: list[dict[str, Any]]) -> None:
+    body = {"name": "post", "form": "cylinder", "radius": 1.0, "draught": 1.0}
+    found = told(case(body=[body], hump=[], waves=waves))
+    assert found["resolution"].startswith("no waves are solved")
+
+
 def test_the_width_of_parts_left_out_is_told_in_wavelengths(tmp_path: Path) -> None:
     parts = [
         closed_box("hull", (3.0, 2.0, 1.6), (0.0, 0.0, 0.0)),
