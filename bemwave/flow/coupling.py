@@ -125,10 +125,15 @@ class Coupling:
         fine = np.column_stack([plan, np.zeros(len(plan))])
         to_fine = sparse.csr_matrix(_hat_projection(nx + 1, ny + 1) @ stencil[:, self.close])
         deep = self._points.at[:, 2] < -DEEP * sheet.spacing
-        rows = self._points.of_triangles(fine, triangles, np.flatnonzero(~deep))
+        # deep down, and so below the bed's images, the sum over nodes is as good,
+        # exp(-2 pi depth/spacing), and quicker
+        whole = sheet.depth < DEEP * sheet.spacing
+        shallow, nodes = np.flatnonzero(~deep), sheet.xy[self.close]
+        rows = self._points.of_triangles(fine, triangles, shallow, whole)
         maps = np.asarray((to_fine.T @ rows.T).T)
-        # deep down the sum over nodes is as good, exp(-2 pi depth/spacing), and quicker
-        maps += self._points.of_nodes(sheet.xy[self.close], np.flatnonzero(deep)) * sheet.spacing**2
+        maps += self._points.of_nodes(nodes, np.flatnonzero(deep)) * sheet.spacing**2
+        if not whole:
+            maps += self._points.of_nodes(nodes, shallow, mirrored=True) * sheet.spacing**2
         return np.ascontiguousarray(maps)
 
 
@@ -139,6 +144,9 @@ class _Rule:
         count = len(e.hull)
         around = images.of_surface_dipoles()
         self._around = (around.signs, around.shifts, around.weights)
+        here = around.shifts[:, 2] == 0.0
+        self._here = tuple(part[here] for part in self._around)
+        self._mirrored = tuple(part[~here] for part in self._around)
         self.at = np.einsum("qj,mjc->mqc", kernel.THREE[:, :3], e.points[e.hull]).reshape(-1, 3)
         self.normal = np.repeat(e.hull_table[:, 9:12], 3, axis=0)
         area = np.repeat(e.hull_table[:, 28] / 3.0, 3)
@@ -157,26 +165,34 @@ class _Rule:
         hats = self.by_hat.shape[0]
         return np.append(np.zeros(hats), np.asarray(self.by_panel.sum(axis=1)))
 
-    def of_triangles(self, nodes: Array, triangles: Ints, used: Ints) -> Array:
-        """(nodes + panels, n) `pull` of hats on triangles of the surface, at some points."""
+    def of_triangles(self, nodes: Array, triangles: Ints, used: Ints, whole: bool) -> Array:
+        """(nodes + panels, n) `pull` of hats on triangles of the surface, at some points.
+
+        `whole`: with the bed's images.
+        """
+        around = self._around if whole else self._here
         table = kernel.pack(nodes[triangles])
         curls = hat_curls(nodes[triangles], table)
         result = np.zeros((self._weights.shape[0], len(nodes)))
         for start in range(0, len(used), 192):
             part = used[start : start + 192]
             at = np.ascontiguousarray(self.at[part])
-            velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *self._around)[1]
+            velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *around)[1]
             slope = np.einsum("pcn,pc->pn", velocity, self.normal[part])
-            level = kernel.potential_at(at, table, triangles, len(nodes), *self._around)[1]
+            level = kernel.potential_at(at, table, triangles, len(nodes), *around)[1]
             self._add(result, part, slope, level)
         return result
 
-    def of_nodes(self, at: Array, used: Ints) -> Array:
-        """(nodes + panels, n) `pull` of dipoles at places (n, 2), per area, at some points."""
+    def of_nodes(self, at: Array, used: Ints, mirrored: bool = False) -> Array:
+        """(nodes + panels, n) `pull` of dipoles at places (n, 2), per area, at some points.
+
+        `mirrored`: of the bed's images alone.
+        """
+        around = self._mirrored if mirrored else self._around
         result = np.zeros((self._weights.shape[0], len(at)))
         for start in range(0, len(used), 192):
             part = used[start : start + 192]
-            maps = _surface_dipoles(self.at[part], self.normal[part], at, self._around)
+            maps = _surface_dipoles(self.at[part], self.normal[part], at, around)
             self._add(result, part, *maps)
         return result
 
@@ -240,7 +256,7 @@ def _hat_projection(nx: int, ny: int) -> sparse.csr_matrix:
 
 
 def _surface_dipoles(
-    points: Array, normals: Array, nodes: Array, around: tuple[Array, Array, Array]
+    points: Array, normals: Array, nodes: Array, around: tuple[Array, ...]
 ) -> tuple[Array, Array]:
     """(p, n) slope along normals and potential of -dG/dz' at nodes (n, 2) of z = 0."""
     slope, level = np.zeros((2, len(points), len(nodes)))

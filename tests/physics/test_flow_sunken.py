@@ -5,7 +5,7 @@ import math
 import numpy as np
 import pytest
 
-from bemwave.flow.grid import hull_elements
+from bemwave.flow.grid import body_elements
 from bemwave.flow.images import make_images
 from bemwave.flow.panels import PanelFlow, forms
 from bemwave.flow.samplers import PanelSamplers
@@ -15,6 +15,7 @@ from bemwave.geometry.forms import sphere
 from bemwave.geometry.hull import place_hull
 from bemwave.geometry.outline import Rectangle
 from bemwave.geometry.water_surface import structured_water
+from bemwave.geometry.waterplane import closed_bodies
 
 
 @pytest.mark.parametrize(("axis", "factor"), [(0, 1.5), (2, 3.0)])
@@ -22,7 +23,7 @@ def test_added_mass_of_a_sphere_under_still_water_at_high_frequency(axis, factor
     # 1/2 (1 - factor (a/2f)^3) of the displaced mass, f = 2a: the doublet and its first image of
     # opposite sign (Lamb, Hydrodynamics, art. 138, for a wall; from memory, sign changed here);
     # the next image changes it by (a/2f)^6, 2e-4
-    elements, _ = hull_elements([place_hull("ball", sphere(1.0, 2.0, 0.2))])
+    elements = body_elements(closed_bodies([place_hull("ball", sphere(1.0, 2.0, 0.2))]))
     energy, given = forms(elements, make_images(math.inf, True))
     normal = elements.hull_table[:, 9 + axis]
     potential = -np.linalg.solve(energy, given @ normal)
