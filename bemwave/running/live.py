@@ -9,9 +9,9 @@ import numpy.typing as npt
 
 from bemwave.case import Case
 from bemwave.flow.state import SurfaceState
+from bemwave.geometry.inside import inside
 from bemwave.handoff import HandoffSampler, free_points
 from bemwave.running.budget import refuse_too_large
-from bemwave.running.outputs import dry_places
 from bemwave.running.solution import STEPS_PER_PERIOD, Solution, nothing_solved
 from bemwave.running.survey import Survey, survey
 
@@ -41,7 +41,7 @@ class LiveState:
         plan = np.column_stack([at_x.ravel(), at_y.ravel(), np.zeros(at_x.size)])
         sampler = self._field.sampler(plan)
         column = free_points(plan).column
-        return sampler.at(self.solved).total.elevation[column].reshape(at_x.shape)
+        return sampler.elevation(self.solved)[column].reshape(at_x.shape)
 
 
 class LiveField:
@@ -62,9 +62,16 @@ class LiveField:
                 free_points(points),
                 self._surveyed.sea,
                 self._flow,
-                solid=lambda at: dry_places(self._surveyed, at),
+                solid=self._solid,
             )
         return self._samplers[key]
+
+    def _solid(self, points: Array) -> npt.NDArray[np.bool_]:
+        """Which points (n, 3) lie inside hulls, or straight over their waterplanes."""
+        within = np.zeros(len(points), dtype=bool)
+        for hull in self._surveyed.hulls:
+            within |= inside(hull.mesh, points)
+        return within
 
 
 def steps(case: Case) -> Iterator[LiveState]:

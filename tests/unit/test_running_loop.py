@@ -76,6 +76,28 @@ def test_live_steps_and_the_recorded_run_agree(tmp_path: Path) -> None:
     assert checked >= 1
 
 
+def test_live_steps_beside_a_hull_agree_with_the_recorded_run(tmp_path: Path) -> None:
+    grid = Case(
+        water={"depth": "deep"},
+        waves=[{"kind": "regular", "height": 0.05, "period": 1.8}],
+        surface={"size": [6.0, 5.0], "spacing": 0.25, "route": "grid", "absorber": 3.0},
+        body=[{"name": "ball", "form": "sphere", "radius": 0.5, "panel_size": 0.3}],
+        run={"duration": 1.2, "record_every": 0.1},
+    )
+    recorded = run(grid, tmp_path / "run")
+    places = np.array([[1.0, 0.2, -0.3], [0.1, 0.0, -0.2], [-1.2, 0.4, -0.1]])
+    for state in steps(grid):
+        if np.abs(recorded.times - state.time).min() < 1e-9:
+            one, other = state.velocity(places), recorded.velocity(places, state.time)
+            assert one == pytest.approx(other, abs=2e-6, nan_ok=True)
+            assert np.isnan(one).any(axis=1).tolist() == [False, True, False]
+            one = state.elevation([0.0, 1.0], [0.1, 0.2])
+            other = recorded.elevation([0.0, 1.0], [0.1, 0.2], state.time)
+            assert np.isnan(one).tolist() == [True, False]
+            assert one == pytest.approx(other, abs=2e-6, nan_ok=True)
+    assert state.time > 1.1
+
+
 def test_the_log_keeps_what_is_told_with_the_time_of_day(tmp_path: Path) -> None:
     with kept_in(tmp_path / "log.txt"):
         log.info("half way")
