@@ -23,6 +23,7 @@ from bemwave.flow.state import ARRAYS, SurfaceState
 from bemwave.geometry.files import read_mesh
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.waterplane import closed_bodies
 from bemwave.handoff import Flow, HandoffSampler, Scene, free_points
 from bemwave.handoff.box import Box
 from bemwave.handoff.fields import SurfaceMaps, on_surface
@@ -104,6 +105,8 @@ class Run:
     @cached_property
     def mesh(self) -> SurfaceMesh:
         """The panels; the water's part is called "water", a hull's as its body."""
+        if self.sheet is not None and not self.manifest.bodies:
+            return closed_bodies([])  # a file without triangles is no mesh
         mesh = read_mesh(self._whole(self.folder.mesh))
         return SurfaceMesh(mesh.points, mesh.triangles, mesh.part, self.manifest.part_names)
 

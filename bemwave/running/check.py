@@ -52,16 +52,15 @@ def _convergence(run: Run) -> Verdict:
     if run.history is None:
         return Verdict("convergence", 0.0, None, "info", "the sea alone: no panels")
     surface, home = run.case.surface, Path(run.manifest.notes["case_folder"])
-    surveyed = survey(coarser(run.case.placed(home)))
+    surveyed = survey(coarser(run.case.placed(home), run.manifest.route))
     scattered, share = scattered_sea(surveyed.sea, surface.spacing)
     surveyed = replace(surveyed, scattered=scattered, unscattered_share=share)
     with tempfile.TemporaryDirectory(prefix="bemwave-") as folder:
         coarse = solve(surveyed, RunFolder(Path(folder) / "run"))
-        side = np.linspace(-0.45, 0.45, 15)
-        x, y = np.meshgrid(
-            surface.centre[0] + side * surface.extent[0],
-            surface.centre[1] + side * surface.extent[1],
-        )
+        region, side = run.case.run.history_region, np.linspace(-0.45, 0.45, 15)
+        centre = surface.centre if region is None else region.centre
+        size = surface.extent if region is None else region.size
+        x, y = np.meshgrid(centre[0] + side * size[0], centre[1] + side * size[1])
         inside = np.vectorize(surface.contains)(x, y)
         times = run.times[len(run.times) // 2 :]
         fine = run.elevation(x[inside], y[inside], times)
@@ -70,13 +69,15 @@ def _convergence(run: Run) -> Verdict:
     return judged("convergence", figure, LIMIT, f"against {COARSER} x spacing; limit {PRACTICE}")
 
 
-def coarser(case: Case) -> Case:
-    """The same case on panels 1.5 times as large, without hand-offs and frames."""
+def coarser(case: Case, route: str) -> Case:
+    """The same case and route, 1.5 times as coarse, without hand-offs and frames."""
     tables = case.model_dump(exclude_unset=True, exclude_none=True)
     for key in ("handoff", "frames", "gauge"):
         tables.pop(key, None)
     surface = tables["surface"]
     surface.pop("mesh", None)
+    surface["route"] = route
+    tables["run"].pop("history_region", None)
     for key in ("spacing", "fine_spacing"):
         if key in surface:
             surface[key] *= COARSER

@@ -44,10 +44,15 @@ class Sampled:
 
 
 def refuse_unfit(survey: Survey) -> None:
-    """Raise InputError for what does not fit in memory, and for points that cannot be read."""
+    """Raise InputError for what does not fit in memory, or cannot be read or drawn."""
     refuse_too_large(survey)
     if survey.case.frames is not None:
         need_libraries(survey.case.frames)
+        if survey.sheet is not None and survey.case.frames.region is None:
+            raise InputError(
+                "[frames] was given without a region on route grid, which has no panels to draw; "
+                "expected [frames] region = { size = [along x, along y] } and a spacing"
+            )
     asked = list(sampled(survey))
     for one in asked:
         if one.points > MOST_POINTS:

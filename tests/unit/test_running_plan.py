@@ -113,7 +113,7 @@ def test_points_are_counted_as_they_are_made() -> None:
 
 def test_coarser_is_the_same_case_on_larger_panels_and_nothing_written() -> None:
     asked = read_case(DEMONSTRATION)
-    found = coarser(asked)
+    found = coarser(asked, "panels")
     assert found.surface.spacing == pytest.approx(1.5 * 3.4)
     assert found.surface.fine_spacing == pytest.approx(1.5 * 1.4)
     assert found.surface.mesh is None
