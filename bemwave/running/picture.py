@@ -24,7 +24,7 @@ def draw(survey: Survey, path: Path) -> None:
     axes.set_aspect("equal")
     _outline(axes, survey.outline, "absorber", facecolor="0.88", edgecolor="0.6")
     _outline(axes, useful_water(survey.case), "useful water", facecolor="white", edgecolor="0.3")
-    if survey.mesh is not None:
+    if survey.mesh is not None and survey.sheet is None:
         x, y = survey.water.points[:, 0], survey.water.points[:, 1]
         axes.triplot(x, y, survey.water.triangles, color="#88aacc", linewidth=0.3)
     for number, hull in enumerate(survey.hulls + survey.riders):

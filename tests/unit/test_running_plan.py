@@ -191,6 +191,12 @@ def test_the_width_of_parts_left_out_is_told_in_wavelengths(tmp_path: Path) -> N
     assert "left out: mast, not under water" in text
 
 
+def test_picture_of_a_grid(tmp_path: Path) -> None:
+    grid = {"size": [10.0, 8.0], "spacing": 0.8, "route": "grid"}
+    plan(case(surface=grid), picture=tmp_path / "plan.png")
+    assert (tmp_path / "plan.png").read_bytes().startswith(b"\x89PNG")
+
+
 def test_the_files_that_a_run_reads_are_listed(tmp_path: Path) -> None:
     rows = "frequency_rad_s,heading_deg,amplitude_m,phase_deg\n2.0,0,0.1,0\n"
     home = tmp_path / "case"
