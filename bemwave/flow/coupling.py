@@ -1,21 +1,24 @@
 """Between the gridded surface and hull panels: one linear map, and its transpose for the way back.
 
 `pull` takes the surface's potential to what its harmonic extension does at hulls, tested with the
-hats of hull nodes (normal derivative) and panel by panel (potential); `push` is the transpose, by
+hats of hull nodes (normal derivative) and panel by panel (potential); `push_far` and `push_near`
+are the transpose, by
 reciprocity what hulls do to the surface. That both are one map keeps the flow symmetric.
 
-Three zones are blended by windows. Close to the hulls the surface is a fine sheet of triangles on
-which the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over
-the nodes of a coarser grid that carries only the long waves. In the outer two a few rows stand for
-all (interpolative decomposition: Cheng et al. 2005, SIAM J. Sci. Comput. 26:1389).
+Zones are blended by windows. Close to the hulls the surface is a fine sheet of triangles on which
+the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over the
+nodes of ever coarser grids that carry only the long waves, so that a larger sea adds little. In
+these sums a few rows stand for all (interpolative decomposition: Cheng et al. 2005, SIAM J. Sci.
+Comput. 26:1389).
 
-All three end with the grid; the surface of the periodic water does not. Its mean, which is felt
+All zones end with the grid; the surface of the periodic water does not. Its mean, which is felt
 furthest, is put right: a potential that is the same all over moves nothing. Else a hull would draw
 in water for ever when something has raised the mean, and give off less than it displaces.
 """
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -26,7 +29,7 @@ from scipy.spatial import KDTree
 
 from bemwave.flow.elements import Elements, hat_curls
 from bemwave.flow.images import Images
-from bemwave.flow.sheet import Complex, Sheet
+from bemwave.flow.sheet import Complex, Sheet, touched
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.kernels import panels as kernel
 
@@ -39,7 +42,8 @@ CLOSE = 3.0, 11.0  # spacings from the hulls where the fine sheet gives way to n
 FAR = 10.0, 34.0  # and these to coarse nodes
 DEEP = 2.0  # spacings under which hulls see no cells, only nodes
 ACCURACY = 1e-6  # of the few rows that stand for all
-SAMPLE = 1200  # nodes by which they are chosen
+SAMPLE = 1200  # nodes of each zone by which they are chosen
+AT_ONCE = 2_000_000  # dipoles at points that are held in memory
 
 
 class Coupling:
@@ -53,58 +57,53 @@ class Coupling:
     """
 
     def __init__(self, sheet: Sheet, e: Elements, images: Images) -> None:
-        self.sheet, self._coarse = sheet, sheet.coarser(COARSER)
-        self.nodes = e.nodes
+        self.sheet, self.nodes = sheet, e.nodes
         self._points = _Rule(e, images)
         plan = KDTree(e.points[:, :2])
-        distance = np.asarray(plan.query(sheet.xy)[0]) / sheet.spacing
-        close, near = _window(distance, *CLOSE), _window(distance, *FAR)
-        self.close = np.flatnonzero(close > 0.0)
-        self._close = self._fine_map() * close[self.close]
-        middle = (1.0 - close) * near
-        self.middle = np.flatnonzero(middle > 0.0)
-        away = np.asarray(plan.query(self._coarse.xy)[0]) / sheet.spacing
-        beyond = 1.0 - _window(away, *FAR)
-        self.beyond = np.flatnonzero(beyond > 0.0)
-        at_middle, at_beyond = sheet.xy[self.middle], self._coarse.xy[self.beyond]
-        chosen, self._spread = self._points.stand_ins(at_middle, at_beyond)
-        area = sheet.spacing**2
-        self._middle = self._points.rows(chosen, at_middle) * (area * middle[self.middle])
-        self._beyond = self._points.rows(chosen, at_beyond) * (
-            area * COARSER**2 * beyond[self.beyond]
-        )
+        near, distance = _near(plan, sheet, sheet.spacing * CLOSE[1])
+        close = _window(distance / sheet.spacing, *CLOSE)
+        self.close = near[close > 0.0]
+        self._close = self._fine_map() * close[close > 0.0]
+        self._zones = _zones(sheet, plan)
+        chosen, self._spread = self._points.stand_ins(*(zone.xy for zone in self._zones))
+        self._few = [self._points.rows(chosen, zone.xy) * zone.weight for zone in self._zones]
+        self.near = self._close.sum(axis=1) + self._spread @ self._few[0].sum(axis=1)
         self._by_mean = self._points.of_level() - self._of_level()
 
     def _of_level(self) -> Array:
-        """(nodes + panels,) the three zones' answer to a potential of one all over."""
-        few = self._middle.sum(axis=1) + self._beyond.sum(axis=1)
+        """(nodes + panels,) the zones' answer to a potential of one all over."""
+        few = sum((rows.sum(axis=1) for rows in self._few), np.zeros(self._spread.shape[1]))
         return np.asarray(self._close.sum(axis=1) + self._spread @ few)
 
     def pull(self, potential: Array, spectrum: Complex) -> Array:
         """What a surface potential (nx ny, k) of half spectrum (k, ...) does at the hulls.
 
         (nodes, k): int hat d(phi)/dn over the hulls, normals into the bodies. The maps have further
-        rows, int phi over each panel, which only `push` has a use for.
+        rows, int phi over each panel, which only the way back has a use for.
         """
-        coarse = self._coarse.back(self.sheet.cropped(spectrum, self._coarse))
-        long = coarse.reshape(len(coarse), -1).T[self.beyond]
-        few = self._middle @ potential[self.middle] + self._beyond @ long
-        close, spread = self._close[: self.nodes], self._spread[: self.nodes]
+        few = self._few[0] @ potential[self._zones[0].nodes]
+        for zone, rows in zip(self._zones[1:], self._few[1:], strict=True):
+            coarse = zone.sheet.back(self.sheet.cropped(spectrum, zone.sheet))
+            few += rows @ coarse.reshape(len(coarse), -1).T[zone.nodes]
         mean = spectrum[:, 0, 0].real / self.sheet.size
+        close, spread = self._close[: self.nodes], self._spread[: self.nodes]
         beyond = self._by_mean[: self.nodes, None] * mean
         return np.asarray(close @ potential[self.close] + spread @ few + beyond)
 
-    def push(self, load: Array, field: Array) -> Complex:
-        """The transpose of `pull`: adds to a field (nx ny, k), and returns a spectrum to add."""
+    def push_far(self, load: Array, spectrum: Complex) -> None:
+        """The transpose of `pull` that waves carry: adds to a half spectrum (k, ...)."""
         few = self._spread.T @ load
+        for zone, rows in zip(self._zones[1:], self._few[1:], strict=True):
+            coarse = np.zeros((load.shape[1], zone.sheet.size))
+            coarse[:, zone.nodes] = (rows.T @ few).T
+            waves = zone.sheet.transform(coarse.reshape(-1, *zone.sheet.shape))
+            self.sheet.add_long(spectrum, waves, zone.sheet)
+        spectrum[:, 0, 0] += load.T @ self._by_mean
+
+    def push_near(self, load: Array, field: Array) -> None:
+        """And that which nodes near the hulls get: adds to a field (nx ny, k)."""
         field[self.close] += self._close.T @ load
-        field[self.middle] += self._middle.T @ few
-        coarse = np.zeros((load.shape[1], self._coarse.size))
-        coarse[:, self.beyond] = (self._beyond.T @ few).T
-        spectrum = self._coarse.transform(coarse.reshape(-1, *self._coarse.shape))
-        made = self.sheet.padded(spectrum, self._coarse)
-        made[:, 0, 0] += load.T @ self._by_mean
-        return made
+        field[self._zones[0].nodes] += self._few[0].T @ (self._spread.T @ load)
 
     def _fine_map(self) -> Array:
         """`pull` of the fine sheet, by the grid's nodes close to the hulls."""
@@ -135,6 +134,56 @@ class Coupling:
         if not whole:
             maps += self._points.of_nodes(nodes, shallow, mirrored=True) * sheet.spacing**2
         return np.ascontiguousarray(maps)
+
+
+@dataclass(frozen=True)
+class _Zone:
+    """Nodes of a sheet that a zone is a sum over.
+
+    Attributes
+    ----------
+    sheet : the grid or a coarser one.
+    nodes, weight : numbers of its nodes, and the area that each stands for [m^2].
+    """
+
+    sheet: Sheet
+    nodes: Ints
+    weight: Array
+
+    @property
+    def xy(self) -> Array:
+        """(n, 2) places of the nodes [m]."""
+        return self.sheet.at(self.nodes)
+
+
+def _zones(sheet: Sheet, plan: KDTree) -> list[_Zone]:
+    """Beyond the close one: of the grid, then of ever coarser ones, as far as it reaches."""
+    factors = [1, COARSER]
+    while 2.0 * FAR[1] * factors[-1] <= min(sheet.shape):
+        if any(n % (2 * COARSER * factors[-1]) for n in sheet.shape):
+            break
+        factors.append(COARSER * factors[-1])
+    zones, start = [], CLOSE
+    for factor in factors:
+        own, end = sheet.coarser(factor), (FAR[0] * factor, FAR[1] * factor)
+        outermost = factor == factors[-1]
+        nodes, distance = _near(plan, own, np.inf if outermost else sheet.spacing * end[1])
+        weight = 1.0 - _window(distance / sheet.spacing, *start)
+        if not outermost:
+            weight *= _window(distance / sheet.spacing, *end)
+        used = weight > 0.0
+        zones.append(_Zone(own, nodes[used], weight[used] * own.spacing**2))
+        start = end
+    return zones
+
+
+def _near(plan: KDTree, sheet: Sheet, reach: float) -> tuple[Ints, Array]:
+    """Nodes in a box about some places that leaves out none within reach, and their distance."""
+    (low, high), (x, y) = (plan.mins - reach, plan.maxes + reach), sheet.axes
+    rows = np.flatnonzero((low[0] <= x) & (x <= high[0]))
+    columns = np.flatnonzero((low[1] <= y) & (y <= high[1]))
+    nodes = (rows[:, None] * sheet.shape[1] + columns).ravel()
+    return nodes, np.asarray(plan.query(sheet.at(nodes))[0])
 
 
 class _Rule:
@@ -198,13 +247,14 @@ class _Rule:
 
     def rows(self, chosen: Ints, at: Array) -> Array:
         """(chosen, n) rows of `pull` of dipoles at places (n, 2) of the surface, per area."""
-        hats = self.by_hat.shape[0]
-        weights = self._weights[chosen]
-        used = np.unique(weights.indices)
-        slope, level = _surface_dipoles(self.at[used], self.normal[used], at, self._around)
-        weights = weights[:, used]
-        is_hat = (chosen < hats)[:, None]
-        return np.where(is_hat, np.asarray(weights @ slope), np.asarray(weights @ level))
+        is_hat = (chosen < self.by_hat.shape[0])[:, None]
+        used, weights = touched(self._weights[chosen])
+        result = np.empty((len(chosen), len(at)))
+        for part in np.array_split(np.arange(len(at)), 1 + len(at) * len(used) // AT_ONCE):
+            maps = _surface_dipoles(self.at[used], self.normal[used], at[part], self._around)
+            slope, level = (np.asarray(weights @ values) for values in maps)
+            result[:, part] = np.where(is_hat, slope, level)
+        return result
 
     def stand_ins(self, *places: Array) -> tuple[Ints, Array]:
         """Rows that stand for all at places of the surface, and all as sums of these."""

@@ -33,13 +33,14 @@ from bemwave.flow.coupling import Coupling
 from bemwave.flow.elements import Elements, solver_of
 from bemwave.flow.images import make_images
 from bemwave.flow.panels import forms
-from bemwave.flow.sheet import Complex, Sheet
+from bemwave.flow.sheet import Complex, Lines, Sheet, touched
 from bemwave.flow.waterplane import Continuation
 from bemwave.geometry.surface_mesh import SurfaceMesh
 from bemwave.geometry.waterplane import WATERPLANE
 from bemwave.kernels.panels import SEVEN
 
 Array = npt.NDArray[np.float64]
+Ints = npt.NDArray[np.int64]
 
 
 class GridFlow:
@@ -72,63 +73,71 @@ class GridFlow:
         self.elements = body_elements(bodies)
         self.continuation = Continuation(sheet, waterlines)
         self._area = sheet.spacing**2
-        if self.elements.nodes:
-            self._coupling = _Bodies(sheet, self.elements, progress)
+        self._bodies = None
+        self._near: Ints = np.zeros(0, dtype=np.int64)
         self.mass = sparse.csr_matrix(self._area * sparse.identity(sheet.size, format="csr"))
-        if waterlines:
-            self.mass = sparse.csr_matrix(self.mass - self._coupling.dry_mass)
-            self._make_mass(self.continuation)
+        if self.elements.nodes:
+            self._bodies = _Bodies(sheet, self.elements, progress)
+            if waterlines:
+                self._make_mass(self._bodies, self.continuation)
 
-    def _make_mass(self, continuation: Continuation) -> None:
-        """Factor M where it is not a multiple of one."""
-        ruled = np.unique(continuation.map.indices)
-        dry = self._coupling.dry_mass
-        touched = np.union1d(ruled, np.unique(dry.indices))
-        rows = np.union1d(touched, np.flatnonzero(continuation.inside))
-        self._near = np.setdiff1d(touched, np.flatnonzero(continuation.inside))
+    def _make_mass(self, bodies: _Bodies, continuation: Continuation) -> None:
+        """Take waterplanes off M, and factor it where it is not a multiple of one."""
+        self.mass = sparse.csr_matrix(self.mass - bodies.dry_mass)
+        weights = continuation.map
+        near = np.union1d(np.unique(weights.indices), bodies.on_lids)
+        inside = np.flatnonzero(continuation.inside)
+        rows = np.union1d(near, inside)
+        self._near = np.setdiff1d(near, inside)
         spread = sparse.identity(self.sheet.size, format="csr")[rows][:, self._near]
-        inside = sparse.csr_matrix(continuation.map[:, self._near])
-        at = np.searchsorted(rows, np.flatnonzero(continuation.inside))
+        at = np.searchsorted(rows, inside)
         place = sparse.csr_matrix(
             (np.ones(len(at)), (at, np.arange(len(at)))), shape=(len(rows), len(at))
         )
-        spread = spread + place @ inside
-        some = sparse.csr_matrix(self.mass[rows])
-        around = sparse.csr_matrix(some[:, rows])
-        local = spread.T @ (around @ spread)
-        self._solve_near = solver_of(sparse.csc_matrix(local))
+        spread = spread + place @ sparse.csr_matrix(weights[:, self._near])
+        around = sparse.csr_matrix(sparse.csr_matrix(self.mass[rows])[:, rows])
+        self._solve_near = solver_of(sparse.csc_matrix(spread.T @ (around @ spread)))
 
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
         """Vertical velocity of the surface, (nx ny, k) [m/s]."""
-        return self.answer(potential, hull_flux, self.sheet.rise)[0]
+        return self.answer(potential, hull_flux)[0]
 
     def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
         """`surface_flux` and `hull_potential` at once."""
-        return self.answer(potential, hull_flux, self.sheet.rise)
+        return self.answer(potential, hull_flux)
 
     def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
         """Potential at all nodes of hulls and waterplanes, (nodes, k) [m^2/s]."""
-        return self.answer(potential, hull_flux, self.sheet.rise)[1]
+        return self.answer(potential, hull_flux)[1]
 
-    def answer(self, potential: Array, hull_flux: Array, rise: Array) -> tuple[Array, Array]:
-        """Surface flux and hull potential, `rise` the symbol of the grid's own waves."""
-        spectrum = self._transform(potential)
-        if not self.elements.nodes:
-            return self._back(rise * spectrum), np.zeros((0, potential.shape[1]))
-        own = self._back(self.sheet.rise * spectrum)
-        u, left = self._coupling.potential(potential, spectrum, own, hull_flux)
+    def answer(
+        self, potential: Array, hull_flux: Array, share: Array | None = None
+    ) -> tuple[Array, Array]:
+        """Surface flux and hull potential; of the grid's own waves but a share (nx, ny/2 + 1)."""
+        # each field in one piece, for the transforms
+        potential = np.asfortranarray(potential)
+        spectrum = self.sheet.transform(potential.T.reshape(-1, *self.sheet.shape))
+        bodies = self._bodies
+        if bodies is None:
+            spectrum *= self.sheet.rise if share is None else share * self.sheet.rise
+            return self._back(spectrum), np.zeros((0, potential.shape[1]))
+        pulled = bodies.pulled(potential, spectrum)
         mean = spectrum[:, 0, 0].real / self.sheet.size
-        beside = u - self._coupling.of_level * mean
-        load, lid, beyond = self._coupling.load(beside, left, hull_flux)
-        made = beyond - self.sheet.rise * self._transform(lid)
-        made[:, 0, 0] = self._coupling.risen(hull_flux) - load.sum(axis=0)
-        result = self._back(self._area * rise * spectrum + made) + load
+        spectrum *= self.sheet.rise
+        u, left = bodies.potential(potential, pulled, spectrum, hull_flux)
+        if share is not None:
+            spectrum *= share
+        beside = u - bodies.of_level * mean
+        load, left = np.concatenate([beside, -hull_flux]) / self._area, left / self._area
+        bodies.add_waves(load, spectrum)
+        spectrum[:, 0, 0] = bodies.risen(hull_flux) / self._area - bodies.near(load, left)
+        result = self._back(spectrum)
+        bodies.add_near(load, left, result)
         self.continuation.gather(result)
-        result /= self._area
-        if self.continuation.inside.any():
-            near = self._area * np.asarray(result[self._near])
-            result[self._near] = self._solve_near(near)
-        return self.continuation(result), u
+        if len(self._near):
+            result[self._near] = self._solve_near(self._area * result[self._near])
+        self.continuation.fill(result)
+        return result, u
 
     def continued(self, field: Array) -> Array:
         """A field given on the water, (nx ny,) or (nx ny, k), continued through waterplanes."""
@@ -175,17 +184,16 @@ class GridFlow:
         """Steps of a length [s]."""
         return GridMarch(self, gravity, step, damping)
 
-    def _transform(self, fields: Array) -> Complex:
-        return self.sheet.transform(fields.T.reshape(-1, *self.sheet.shape))
-
-    def _back(self, spectra: Complex) -> Array:
-        return np.ascontiguousarray(self.sheet.back(spectra).reshape(len(spectra), -1).T)
+    def _back(self, spectrum: Complex) -> Array:
+        """(nx ny, k), each field in one piece."""
+        return np.asarray(self.sheet.back(spectrum).reshape(len(spectrum), -1).T)
 
 
 class _Bodies:
     """All that closed bodies add to the energy of the grid's own waves."""
 
     def __init__(self, sheet: Sheet, e: Elements, progress: Callable[[float], None]) -> None:
+        self._sheet = sheet
         images = make_images(sheet.depth, True, (), sheet.spacing * max(sheet.shape))
         energy, given = forms(e, images, progress=lambda share: progress(0.4 * share))
         self._count, free = e.nodes, e.free
@@ -199,32 +207,52 @@ class _Bodies:
         self._by_line = -self._by_flux @ across
         self._by_given = -self._by_flux @ given[self._found]
         self._coupling = Coupling(sheet, e, images)
-        self._panel_area = e.hull_table[:, 28]
-        self._on_line = sheet.interpolation(e.points[self._line, :2])
+        on_line = sheet.interpolation(e.points[self._line, :2])
+        self._at_line, self._on_line = touched(on_line)
         self._from_line = sparse.csr_matrix(self._on_line.T)
-        at, weight, hats = _lid_rule(e)
-        places = sheet.interpolation(at)
-        weighted = sparse.csr_matrix(places.T @ sparse.diags(weight))
-        self._lid = sparse.csr_matrix(weighted @ hats)
-        self._lid_test = sparse.csr_matrix(self._lid.T)
-        self.dry_mass = sparse.csr_matrix(weighted @ places)
+        self._panel_area = e.hull_table[:, 28]
+        self._make_lids(e)
         self.of_level = self._of_level(sheet)
 
     def _of_level(self, sheet: Sheet) -> Array:
         """u (nodes, 1) of a potential of one all over: one; on bodies under water zero."""
         level, still = np.ones((sheet.size, 1)), np.zeros((len(self._panel_area), 1))
         spectrum = sheet.transform(level.reshape(1, *sheet.shape))
-        return self.potential(level, spectrum, np.zeros_like(level), still)[0]
+        pulled = self.pulled(level, spectrum)
+        return self.potential(level, pulled, np.zeros_like(spectrum), still)[0]
+
+    def _make_lids(self, e: Elements) -> None:
+        """Nodes of the grid on waterplanes, and what these weigh."""
+        sheet, (at, weight, hats) = self._sheet, _lid_rule(e)
+        self.on_lids, places = touched(sheet.interpolation(at))
+        weighted = sparse.csr_matrix(places.T @ sparse.diags(weight))
+        self._lid = sparse.csr_matrix(weighted @ hats)
+        self._lid_test = sparse.csr_matrix(self._lid.T)
+        dry, shape = sparse.coo_matrix(weighted @ places), (sheet.size, sheet.size)
+        at_nodes = self.on_lids[dry.row], self.on_lids[dry.col]
+        self.dry_mass = sparse.csr_matrix((dry.data, at_nodes), shape=shape)
+        rows, columns = np.divmod(self.on_lids, sheet.shape[1])
+        used, row = np.unique(rows, return_inverse=True)
+        self._lines = Lines(sheet, used)
+        self._in_lines = (slice(None), row, columns)
+        self._count_lines = len(used)
+
+    def pulled(self, field: Array, spectrum: Complex) -> Array:
+        """-G f over hulls (nodes, k), of a field f and its spectrum."""
+        return -self._coupling.pull(field, spectrum)
 
     def potential(
-        self, field: Array, spectrum: Complex, own: Array, hull_flux: Array
+        self, field: Array, pulled: Array, rise: Complex, hull_flux: Array
     ) -> tuple[Array, Array]:
-        """u (nodes, k), and what waterlines are left with, of a field, its spectrum and its A f."""
-        pulled = -self._coupling.pull(field, spectrum)
+        """u (nodes, k), and what waterlines are left with; `rise` the spectrum of A f.
+
+        `pulled` gets what A f does on waterplanes.
+        """
         free = self._lid_test.shape[0]
-        pulled[:free] += self._lid_test @ own
+        if free:
+            pulled[:free] += self._lid_test @ self._lines.of(rise)[self._in_lines].T
         u = np.empty_like(pulled)
-        u[self._line] = self._on_line @ field
+        u[self._line] = self._on_line @ field[self._at_line]
         u[self._found] = self._by_flux @ pulled[self._found] + self._by_line @ u[self._line]
         u[self._found] += self._by_given @ hull_flux
         return u, self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
@@ -233,11 +261,25 @@ class _Bodies:
         """(k,) volume that comes up in a second, of what goes into the hulls [m^3/s]."""
         return np.asarray(-self._panel_area @ hull_flux)
 
-    def load(self, u: Array, left: Array, hull_flux: Array) -> tuple[Array, Array, Complex]:
-        """What bodies add to A f: on nodes, as a field that A is still to be taken of, in waves."""
-        load = self._from_line @ left
-        beyond = self._coupling.push(np.concatenate([u, -hull_flux]), load)
-        return load, self._lid @ u[: self._lid.shape[1]], beyond
+    def near(self, load: Array, left: Array) -> Array:
+        """(k,) sum over the grid of what `add_near` adds."""
+        return np.asarray(load.T @ self._coupling.near + left.sum(axis=0))
+
+    def add_waves(self, load: Array, spectrum: Complex) -> None:
+        """Add what a load of u and less the given flux does in waves, waterplanes' A u too."""
+        self._coupling.push_far(load, spectrum)
+        free = self._lid_test.shape[0]
+        if free:
+            lid = np.zeros((load.shape[1], self._count_lines, self._sheet.shape[1]))
+            lid[self._in_lines] = (self._lid @ load[:free]).T
+            waves = self._lines.spectrum(lid)
+            waves *= self._sheet.rise
+            spectrum -= waves
+
+    def add_near(self, load: Array, left: Array, field: Array) -> None:
+        """Add what it does on nodes, in place, and what waterlines are left with."""
+        self._coupling.push_near(load, field)
+        field[self._at_line] += self._from_line @ left
 
 
 class GridMarch:
@@ -252,11 +294,11 @@ class GridMarch:
     ) -> None:
         self._flow = flow
         half_turn = 0.5 * step * np.sqrt(gravity * flow.sheet.rise)
-        self._rise = flow.sheet.rise * np.sinc(half_turn / np.pi) ** 2
+        self._share = np.sinc(half_turn / np.pi) ** 2
         self._rate: Array | None = None
         if damping is not None:
             self._rate = damping.diagonal()[:, None] / flow.sheet.spacing**2
-            self._share = 1.0 / (1.0 + 0.5 * step * self._rate)
+            self._kept = 1.0 / (1.0 + 0.5 * step * self._rate)
 
     def given(self, fluxes: Sequence[Array]) -> Array:
         """(times, ...) to be passed on to `flux`, of the given flux (mB, times) of each part."""
@@ -264,13 +306,18 @@ class GridMarch:
 
     def flux(self, potential: Array, given: Array) -> Array:
         """(nx ny, parts) from the potential in the middle of a step."""
-        return self._flow.answer(potential, given, self._rise)[0]
+        return self._flow.answer(potential, given, self._share)[0]
 
     def damped(self, flux: Array, mean: Array) -> Array:
-        """Rate of the step's mean elevation: the flux less what the absorber takes, old and new."""
+        """Rate of the step's mean elevation: the flux less what the absorber takes, old and new.
+
+        The flux is changed to it in place.
+        """
         if self._rate is None:
             return flux
-        return np.asarray((flux - self._rate * mean) * self._share)
+        flux -= self._rate * mean
+        flux *= self._kept
+        return flux
 
 
 def body_elements(bodies: SurfaceMesh | None) -> Elements:

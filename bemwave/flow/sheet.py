@@ -12,8 +12,10 @@ from scipy import fft, sparse
 
 Array = npt.NDArray[np.float64]
 Complex = npt.NDArray[np.complex128]
+Ints = npt.NDArray[np.int64]
 
 STENCIL = 6  # nodes along each axis of an interpolation: fifth degree
+FEW_LINES = 64  # of a grid are summed sooner one by one than by a fast transform of all
 
 
 @dataclass(frozen=True)
@@ -46,12 +48,23 @@ class Sheet:
         east, north = self.west + self.spacing * nx, self.south + self.spacing * ny
         return self.west, east, self.south, north
 
+    @property
+    def axes(self) -> tuple[Array, Array]:
+        """(nx,) and (ny,) x and y of the nodes [m]."""
+        x = self.west + self.spacing * np.arange(self.shape[0], dtype=np.float64)
+        y = self.south + self.spacing * np.arange(self.shape[1], dtype=np.float64)
+        return x, y
+
     @cached_property
     def xy(self) -> Array:
         """(nx ny, 2) places of the nodes, j fastest [m]."""
-        x = self.west + self.spacing * np.arange(self.shape[0])
-        y = self.south + self.spacing * np.arange(self.shape[1])
-        return np.stack([g.ravel() for g in np.meshgrid(x, y, indexing="ij")], axis=1)
+        return np.stack([g.ravel() for g in np.meshgrid(*self.axes, indexing="ij")], axis=1)
+
+    def at(self, nodes: Ints) -> Array:
+        """(n, 2) places of some nodes by their numbers [m]."""
+        x, y = self.axes
+        row, column = np.divmod(nodes, self.shape[1])
+        return np.stack([x[row], y[column]], axis=1)
 
     @cached_property
     def wavenumbers(self) -> tuple[Array, Array, Array]:
@@ -98,13 +111,11 @@ class Sheet:
         kept[..., m + 1 :, :-1] = spectrum[..., -m + 1 :, : ny // 2]
         return np.asarray(kept * (coarse.size / self.size))
 
-    def padded(self, spectrum: Complex, coarse: Sheet) -> Complex:
-        """The transpose of `cropped` between fields: a coarser sheet's, spread over this one's."""
+    def add_long(self, spectrum: Complex, long: Complex, coarse: Sheet) -> None:
+        """The transpose of `cropped` between fields: adds a coarser sheet's, in place."""
         ny, m = coarse.shape[1], coarse.shape[0] // 2
-        wide = np.zeros((*spectrum.shape[:-2], self.shape[0], self.shape[1] // 2 + 1), complex)
-        wide[..., :m, : ny // 2] = spectrum[..., :m, :-1]
-        wide[..., -m + 1 :, : ny // 2] = spectrum[..., m + 1 :, :-1]
-        return wide
+        spectrum[..., :m, : ny // 2] += long[..., :m, :-1]
+        spectrum[..., -m + 1 :, : ny // 2] += long[..., m + 1 :, :-1]
 
     def interpolation(self, xy: Array, periodic: bool = True) -> sparse.csr_matrix:
         """(p, nx ny) from nodes to places (p, 2): Lagrange polynomials of fifth degree."""
@@ -122,6 +133,50 @@ class Sheet:
         return sparse.csr_matrix(
             (values.ravel(), (owner, number.ravel())), shape=(len(at), self.size)
         )
+
+
+class Lines:
+    """Some lines of constant x of a sheet: their share of a spectrum without a whole transform.
+
+    Parameters
+    ----------
+    sheet : the grid.
+    rows : (m,) numbers of the lines.
+    """
+
+    def __init__(self, sheet: Sheet, rows: Ints) -> None:
+        self._sheet, self._rows = sheet, rows
+        nx = sheet.shape[0]
+        self._few = len(rows) < FEW_LINES
+        turns = np.outer(rows, np.arange(nx)) % nx if self._few else np.zeros((0, 0))
+        self._waves = np.exp(2j * math.pi / nx * turns)
+        self._back = np.ascontiguousarray(self._waves.conj().T)
+
+    def of(self, spectrum: Complex) -> Array:
+        """(k, m, ny) the field there, of its half spectrum (k, nx, ny/2 + 1)."""
+        nx, ny = self._sheet.shape
+        if self._few:
+            along = self._waves @ spectrum / nx
+        else:
+            along = np.asarray(fft.ifft(spectrum, axis=1, workers=-1))[:, self._rows]
+        return np.asarray(fft.irfft(along, n=ny))
+
+    def spectrum(self, field: Array) -> Complex:
+        """(k, nx, ny/2 + 1) of a field (k, m, ny) that is zero off the lines."""
+        along = np.asarray(fft.rfft(field))
+        if self._few:
+            return np.asarray(self._back @ along)
+        whole = np.zeros((len(field), self._sheet.shape[0], along.shape[2]), dtype=complex)
+        whole[:, self._rows] = along
+        return np.asarray(fft.fft(whole, axis=1, overwrite_x=True, workers=-1))
+
+
+def touched(maps: sparse.csr_matrix) -> tuple[Ints, sparse.csr_matrix]:
+    """Numbers of the columns in which a matrix has entries, and what it is in these alone."""
+    columns = np.unique(maps.indices)
+    at = np.searchsorted(columns, maps.indices)
+    shape = (maps.shape[0], len(columns))
+    return columns.astype(np.int64), sparse.csr_matrix((maps.data, at, maps.indptr), shape=shape)
 
 
 def _lagrange(at: Array) -> Array:

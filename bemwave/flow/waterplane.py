@@ -35,7 +35,7 @@ _BIHARMONIC = (
 
 
 class Continuation:
-    """Continues fields through all waterplanes: a sparse map from nodes outside to those inside.
+    """Continues fields through all waterplanes: maps from nodes outside to those inside.
 
     Parameters
     ----------
@@ -56,28 +56,42 @@ class Continuation:
         self.inside = np.zeros(sheet.size, dtype=bool)
         for nodes in within:
             self.inside |= nodes
-        self._nodes = np.flatnonzero(self.inside)
-        rows = [
-            _rows(sheet, nodes, line, self.inside)
+        self._pieces = [
+            _continuation(sheet, nodes, line, self.inside)
             for nodes, line in zip(within, lines, strict=True)
         ]
-        full = sparse.csr_matrix((sheet.size, sheet.size))
-        for row in rows:
-            full = full + row
-        self.map = sparse.csr_matrix(full[self._nodes])
-        self._back = sparse.csr_matrix(self.map.T)
+
+    @property
+    def map(self) -> sparse.csr_matrix:
+        """(inside, nx ny) the values inside, in the order of their nodes."""
+        number = np.cumsum(self.inside) - 1
+        rows, columns, values = [], [], []
+        for nodes, outside, weights in self._pieces:
+            rows.append(np.repeat(number[nodes], len(outside)))
+            columns.append(np.tile(outside, len(nodes)))
+            values.append(weights.ravel())
+        shape = (int(self.inside.sum()), len(self.inside))
+        if not rows:
+            return sparse.csr_matrix(shape)
+        at = np.concatenate(rows), np.concatenate(columns)
+        return sparse.csr_matrix((np.concatenate(values), at), shape=shape)
 
     def __call__(self, field: Array) -> Array:
         """A copy of a field (nx ny, k), continued."""
-        result = field.copy()
-        result[self._nodes] = np.asarray(self.map @ field)
+        result = field.copy(order="K")
+        self.fill(result)
         return result
+
+    def fill(self, field: Array) -> None:
+        """Continue a field (nx ny, k), in place."""
+        for nodes, outside, weights in self._pieces:
+            field[nodes] = weights @ field[outside]
 
     def gather(self, load: Array) -> None:
         """Give loads (nx ny, k) inside to the nodes outside that rule there, in place."""
-        ruled = load[self._nodes]
-        load[self._nodes] = 0.0
-        load += np.asarray(self._back @ ruled)
+        for nodes, outside, weights in self._pieces:
+            load[outside] += weights.T @ load[nodes]
+            load[nodes] = 0.0
 
 
 def _dense_line(polygons: Sequence[Array], spacing: float) -> Array:
@@ -109,8 +123,10 @@ def _inside(sheet: Sheet, polygons: Sequence[Array], line: Array) -> Bools:
     return result
 
 
-def _rows(sheet: Sheet, inside: Bools, line: Array, others: Bools) -> sparse.csr_matrix:
-    """(nx ny, nx ny) with rows at the nodes of one waterplane."""
+def _continuation(
+    sheet: Sheet, inside: Bools, line: Array, others: Bools
+) -> tuple[Ints, Ints, Array]:
+    """Of one waterplane: the nodes inside, those outside that rule there, and by what weights."""
     distance = np.full(sheet.size, np.inf)
     low, high = line.min(axis=0), line.max(axis=0)
     reach = (REACH + 1.0) * sheet.spacing
@@ -127,10 +143,7 @@ def _rows(sheet: Sheet, inside: Bools, line: Array, others: Bools) -> sparse.csr
     core = _biharmonic(sheet, nodes[~ring], number, len(nodes) + len(outside))
     into, given = core[:, : len(nodes)], core[:, len(nodes) :]
     values[~ring] = -linalg.lstsq(into[:, ~ring], given + into[:, ring] @ values[ring])[0]
-    shape = (sheet.size, sheet.size)
-    return sparse.csr_matrix(
-        (values.ravel(), (np.repeat(nodes, len(outside)), np.tile(outside, len(nodes)))), shape
-    )
+    return nodes, outside, values
 
 
 def _parabolas(sheet: Sheet, nodes: Ints, outside: Ints) -> Array:

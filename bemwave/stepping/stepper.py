@@ -100,7 +100,8 @@ class Stepper:
         self._xy = flow.places
         self._march = flow.march(gravity, step, damping)
         self.count = 0
-        self._potentials = [np.zeros((len(self._xy), max(1, len(parts))))]
+        # each part in one piece: so routes take and give them
+        self._potentials = [np.zeros((len(self._xy), max(1, len(parts))), order="F")]
         self._mean = self._first_mean(elevation)
         self._given: Array = np.empty((0, 0, 0))
         self._heads: Array = np.empty((0, 0))
@@ -144,9 +145,15 @@ class Stepper:
             flux = self._march.flux(potential, given)
         if self.count == 0:
             flux *= 0.5  # what is given begins at t = 0: the first step sees half a stencil
-        self._mean = self._mean + dt * self._march.damped(flux, self._mean)
-        self._potentials.append(potential - g * dt * self._mean)
-        del self._potentials[:-STENCIL]
+        # in place: on a large grid new arrays cost as much as what is done with them
+        rate = self._march.damped(flux, self._mean)
+        rate *= dt
+        self._mean += rate
+        full = len(self._potentials) == STENCIL
+        moved = self._potentials.pop(0) if full else np.empty_like(potential)
+        np.multiply(self._mean, -g * dt, out=moved)
+        moved += potential
+        self._potentials.append(moved)
         self.count += 1
 
     def _begin_block(self, start: int) -> None:
@@ -173,12 +180,12 @@ class Stepper:
 
     def history(self) -> dict[str, Array]:
         """What `restore` needs to go on bit for bit, beside the count of steps."""
-        return {"potentials": np.array(self._potentials), "mean": self._mean}
+        return {"potentials": np.array(self._potentials), "mean": self._mean.copy()}
 
     def restore(self, history: dict[str, Array], count: int) -> None:
         """Go back to where `history()` was taken, after `count` steps."""
-        self._potentials = list(history["potentials"])
-        self._mean, self.count = history["mean"], count
+        self._potentials = [np.array(potential, order="F") for potential in history["potentials"]]
+        self._mean, self.count = np.array(history["mean"], order="F"), count
 
     def parts_at(self, time: float) -> tuple[Array, Array]:
         """Potential and its rate (free, parts) at any time among the kept steps."""
