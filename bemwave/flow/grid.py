@@ -42,6 +42,8 @@ from bemwave.kernels.panels import SEVEN
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
 
+ITERATIONS = 20  # for the quickest wave
+
 
 class GridFlow:
     """The flow map of a grid with hulls in it.
@@ -175,8 +177,23 @@ class GridFlow:
         return float(abs(energy[0, 1] - energy[1, 0]) / abs(energy[0, 0]))
 
     def fastest(self, gravity: float) -> float:
-        """The largest angular frequency of free waves on the grid [rad/s]."""
-        return float(np.sqrt(gravity * self.sheet.rise.max()))
+        """The largest angular frequency of free waves on the grid [rad/s].
+
+        Waterlines with edges longer than a spacing have quicker ones of their own, found by power
+        iteration from noise beside them.
+        """
+        largest = float(self.sheet.rise.max())
+        if len(self._near):
+            vector = np.zeros((self.sheet.size, 1))
+            vector[self._near, 0] = np.random.default_rng(1).standard_normal(len(self._near))
+            vector = self.continuation(vector)
+            still = np.zeros((len(self.elements.hull), 1))
+            for _ in range(ITERATIONS):
+                image = self.surface_flux(vector, still)
+                ratio = float(np.linalg.norm(image) / np.linalg.norm(vector))
+                vector = image / np.linalg.norm(image)
+            largest = max(largest, 1.05 * ratio)
+        return float(np.sqrt(gravity * largest))
 
     def march(
         self, gravity: float, step: float, damping: sparse.csc_matrix | None = None

@@ -35,7 +35,7 @@ from bemwave.waves import Sea
 Array = npt.NDArray[np.float64]
 
 # spacings of the grid; a pile's loads are right up to 2 and 4 % off at 2.4
-LARGEST_PANEL = 1.8
+LARGEST_PANEL = 1.5
 
 
 @dataclass(frozen=True)

@@ -184,7 +184,7 @@ BAD: dict[str, tuple[str, Files, str]] = {
         {}, "give [surface] spacing 1.04 m or less",
     ),
     "more triangles than fit": (
-        swap("spacing = 1.5", "spacing = 0.1", BARE),
+        swap("spacing = 1.5", 'spacing = 0.1\nroute = "panels"', BARE),
         {}, "[surface] spacing = 0.1 m makes",
     ),
     "a memory limit that is too small": (
