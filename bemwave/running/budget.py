@@ -10,7 +10,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bemwave.errors import InputError
-from bemwave.flow.coupling import CLOSE
+from bemwave.flow.coupling import CLOSE, FINER
 from bemwave.flow.elements import split
 from bemwave.flow.images import make_images
 from bemwave.flow.sheet import Sheet
@@ -20,7 +20,12 @@ from bemwave.running.solution import STEPS_PER_PERIOD
 from bemwave.running.survey import Survey
 
 GIGABYTE = 1e9
-BYTES_A_NODE = 700  # of the grid: states, transforms, what goes on far from hulls
+
+# bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
+_FIELDS, _PART, _SAMPLED = 380, 213, 120
+_OF_LIBRARIES = 0.12 * GIGABYTE
+_OF_KERNELS = 0.15 * GIGABYTE  # while they are loaded and integrate
+_POINTS = 192  # of hull panels that are integrated for at a time
 
 
 @dataclass(frozen=True)
@@ -48,7 +53,7 @@ def memory_of(survey: Survey) -> tuple[int, int, float]:
     if survey.mesh is None:
         return 0, 0, 0.2 * GIGABYTE
     if survey.sheet is not None:
-        return _on_grid(survey.mesh, survey.sheet)
+        return _on_grid(survey, survey.mesh, survey.sheet)
     e = split(survey.mesh, survey.closed, survey.mirrors, survey.case.water.depth)
     water, hull, free, nodes = len(e.water), len(e.hull), e.free, e.nodes
     layers = 2 if survey.closed else 1
@@ -58,12 +63,23 @@ def memory_of(survey: Survey) -> tuple[int, int, float]:
     return len(survey.mesh.triangles), free, 8.0 * max(assembling, stepping) + 0.3 * GIGABYTE
 
 
-def _on_grid(mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int, float]:
-    """The same on the grid: fields of its nodes, and dense maps between hulls and nodes near."""
-    panels, nodes = len(mesh.triangles), len(mesh.points)
-    near = (2.0 * CLOSE[1] + np.ptp(mesh.points[:, :2], axis=0) / sheet.spacing) if nodes else 0.0
-    dense = 3 * panels**2 + 4 * nodes**2 + (panels + nodes) * float(np.prod(near))
-    return panels, sheet.size, BYTES_A_NODE * sheet.size + 8.0 * dense + 0.4 * GIGABYTE
+def _on_grid(survey: Survey, mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int, float]:
+    """The same on the grid: fields of its nodes, and dense maps between hulls and nodes near.
+
+    These are made from a finer sheet round the hulls, which takes more than they do.
+    """
+    case, panels, nodes = survey.case, len(mesh.triangles), len(mesh.points)
+    near = 2.0 * CLOSE[1] + np.ptp(mesh.points[:, :2], axis=0) / sheet.spacing if nodes else 0.0
+    close = float(np.prod(near))
+    dense = 3 * panels**2 + 4 * nodes**2 + (panels + nodes) * close
+    fine = FINER**2 * close
+    assembling = 2 * (panels + nodes) * fine + 5 * _POINTS * fine + 3 * panels**2 + 4 * nodes**2
+    scattered = bool(survey.scattered.count or case.hump or case.pressure)
+    moved = any(body.attitude not in ("fixed", "follow") for body in case.body)
+    sampled = bool(case.gauge or case.handoff or case.frames)
+    a_node = _FIELDS + _PART * max(1, scattered + moved) + _SAMPLED * sampled
+    most = max(8.0 * assembling + _OF_KERNELS, 8.0 * dense + a_node * sheet.size)
+    return panels, sheet.size, most + _OF_LIBRARIES
 
 
 def memory_allowed(survey: Survey) -> float:

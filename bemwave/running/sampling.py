@@ -104,7 +104,7 @@ def _row(survey: Survey) -> float:
     if survey.mesh is None:
         return 0.0
     if survey.sheet is not None:
-        return 4 * 8.0 * 1.5 * len(survey.mesh.triangles)
+        return 8.0 * len(survey.mesh.triangles)  # of few rows' worth; measured
     hull = len(survey.mesh.triangles) - len(survey.water.triangles)
     return 4 * 8.0 * (len(survey.water.points) + 1.5 * hull)
 
