@@ -84,7 +84,7 @@ def driven(start, flow, damping):
 
 
 @pytest.mark.parametrize(
-    ("panel", "periods"), [(0.25, 21), pytest.param(0.2, 200, marks=pytest.mark.slow)]
+    ("panel", "periods"), [(0.25, 21), pytest.param(0.2, 200, marks=pytest.mark.long)]
 )
 @pytest.mark.parametrize("start", ["heave", "mound"])
 def test_after_forcing_stops_energy_never_grows_and_leaves(start, panel, periods):
@@ -147,7 +147,7 @@ def field(route, surface, panel):
     }
 
 
-@pytest.mark.slow
+@pytest.mark.long
 def test_both_routes_make_the_same_water(needs_gmsh):
     """A hemisphere in regular waves; the box is five spacings from it."""
     grid = field("grid", {"spacing": 0.25}, 0.25)

@@ -64,7 +64,7 @@ def test_coefficients_on_448_panels():
     assert largest_error((1.0, 10.0), 0.2, (1.0,), 1.5) < 0.02
 
 
-@pytest.mark.slow
+@pytest.mark.long
 @pytest.mark.parametrize("case", SERIES)
 def test_coefficients_on_finer_panels(case):
     assert largest_error(case, 0.15, (0.2, 0.6, 1.0), 1.5) < 0.015

@@ -38,7 +38,7 @@ def case(nodes, parts, sampled):
     return Case(**tables)
 
 
-@pytest.mark.slow
+@pytest.mark.long
 @pytest.mark.parametrize(
     "asked", [(256, 1, 0), (512, 2, 1), (1024, 1, 0), (1024, 2, 1)], ids=lambda a: f"{a[0]}-{a[1]}"
 )
