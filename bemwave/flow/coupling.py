@@ -2,8 +2,8 @@
 
 `pull` takes the surface's potential to what its harmonic extension does at hulls, tested with the
 hats of hull nodes (normal derivative) and panel by panel (potential); `push_far` and `push_near`
-are the transpose, by
-reciprocity what hulls do to the surface. That both are one map keeps the flow symmetric.
+are the transpose, by reciprocity what hulls do to the surface. That both are one map keeps the flow
+symmetric.
 
 Zones are blended by windows. Close to the hulls the surface is a fine sheet of triangles on which
 the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over the
