@@ -102,20 +102,19 @@ class GridFlow:
 
     def surface_flux(self, potential: Array, hull_flux: Array) -> Array:
         """Vertical velocity of the surface, (nx ny, k) [m/s]."""
-        return self.answer(potential, hull_flux)[0]
-
-    def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
-        """`surface_flux` and `hull_potential` at once."""
-        return self.answer(potential, hull_flux)
+        return self.both(potential, hull_flux)[0]
 
     def hull_potential(self, potential: Array, hull_flux: Array) -> Array:
         """Potential at all nodes of hulls and waterplanes, (nodes, k) [m^2/s]."""
-        return self.answer(potential, hull_flux)[1]
+        return self.both(potential, hull_flux)[1]
 
-    def answer(
+    def both(
         self, potential: Array, hull_flux: Array, share: Array | None = None
     ) -> tuple[Array, Array]:
-        """Surface flux and hull potential; of the grid's own waves but a share (nx, ny/2 + 1)."""
+        """`surface_flux` and `hull_potential` at once.
+
+        `share` (nx, ny/2 + 1): of the grid's own waves only so much.
+        """
         # each field in one piece, for the transforms
         potential = np.asfortranarray(potential)
         spectrum = self.sheet.transform(potential.T.reshape(-1, *self.sheet.shape))
@@ -323,7 +322,7 @@ class GridMarch:
 
     def flux(self, potential: Array, given: Array) -> Array:
         """(nx ny, parts) from the potential in the middle of a step."""
-        return self._flow.answer(potential, given, self._share)[0]
+        return self._flow.both(potential, given, self._share)[0]
 
     def damped(self, flux: Array, mean: Array) -> Array:
         """Rate of the step's mean elevation: the flux less what the absorber takes, old and new.

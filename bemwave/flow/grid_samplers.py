@@ -13,12 +13,11 @@ import numpy as np
 import numpy.typing as npt
 from scipy.spatial import KDTree
 
-from bemwave.errors import InputError
 from bemwave.flow.blocks import BlockMap
 from bemwave.flow.elements import Elements
 from bemwave.flow.extension import Extension, Order, Planes
 from bemwave.flow.images import make_images
-from bemwave.flow.samplers import influences
+from bemwave.flow.samplers import influences, under_water
 from bemwave.flow.sheet import Sheet
 from bemwave.flow.state import SurfaceState
 from bemwave.kernels import panels as kernel
@@ -63,13 +62,7 @@ class GridSamplers:
         ------
         InputError : if a point is above still water.
         """
-        points = np.asarray(points, dtype=np.float64).reshape(-1, 3)
-        if (points[:, 2] > 0.0).any():
-            raise InputError(
-                f"a point at z = {points[:, 2].max():g} was given; the solved field is sampled at "
-                "z <= 0: above still water use a crest rule"
-            )
-        return PointSampler(self, points)
+        return PointSampler(self, under_water(points))
 
     def surface_sampler(self, xy: Array) -> SurfaceSampler:
         """A sampler of the surface at places xy (n, 2)."""

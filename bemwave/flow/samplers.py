@@ -58,13 +58,7 @@ class PanelSamplers:
         ------
         InputError : if a point is above still water.
         """
-        points = np.asarray(points, dtype=np.float64).reshape(-1, 3)
-        if (points[:, 2] > 0.0).any():
-            raise InputError(
-                f"a point at z = {points[:, 2].max():g} was given; the solved field is sampled at "
-                "z <= 0: above still water use a crest rule"
-            )
-        return PointSampler(self, points)
+        return PointSampler(self, under_water(points))
 
     def surface_sampler(self, xy: Array) -> SurfaceSampler:
         """A sampler of the surface at places xy (n, 2)."""
@@ -73,6 +67,17 @@ class PanelSamplers:
     def recovery(self, xy: Array) -> Recovery:
         """Local polynomial fits of the surface's fields at places xy (n, 2)."""
         return recover(self.elements, xy, self.images)
+
+
+def under_water(points: Array) -> Array:
+    """The points (n, 3), refused if one is above still water."""
+    points = np.asarray(points, dtype=np.float64).reshape(-1, 3)
+    if (points[:, 2] > 0.0).any():
+        raise InputError(
+            f"a point at z = {points[:, 2].max():g} was given; the solved field is sampled at "
+            "z <= 0: above still water use a crest rule"
+        )
+    return points
 
 
 class SurfaceSampler:

@@ -69,7 +69,7 @@ class Solution:
         return self.flow.nodal(lambda xy: released_elevation(humps, xy)) if humps else None
 
     def _choose_step(self) -> float:
-        """A fortieth of the shortest period solved, within what the mesh's own waves allow."""
+        """A share of the shortest period solved, within what the mesh's own waves allow."""
         gravity, asked = self.survey.case.water.gravity, self.survey.case.run.step
         longest = LARGEST_TURN / self.flow.fastest(gravity)
         if asked != "auto":
