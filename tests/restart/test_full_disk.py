@@ -100,14 +100,14 @@ def test_a_disk_that_fills_up_at_random_moments(expected: Path, small_disk: Path
     (small_disk / "case.toml").write_text(CASE)
     rng, folder, full = np.random.default_rng(8), small_disk / "run", 0
     for _ in range(8):
-        stopped = command("run", "case.toml", "--out", "run", "--resume", cwd=small_disk)
-        wait_for(folder / "log.txt", "set up in", stopped)
-        time.sleep(rng.uniform(0.0, 0.6))
-        ballast = fill(small_disk, int(rng.integers(0, 40_000)))
-        stopped.wait(timeout=120)
-        if stopped.returncode != 0:
-            full += 1
-            assert_told(stopped, folder)
+        with command("run", "case.toml", "--out", "run", "--resume", cwd=small_disk) as stopped:
+            wait_for(folder / "log.txt", "set up in", stopped)
+            time.sleep(rng.uniform(0.0, 0.6))
+            ballast = fill(small_disk, int(rng.integers(0, 40_000)))
+            stopped.wait(timeout=120)
+            if stopped.returncode != 0:
+                full += 1
+                assert_told(stopped, folder)
         ballast.unlink()
         if stopped.returncode == 0:
             shutil.rmtree(folder)
