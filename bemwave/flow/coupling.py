@@ -1,9 +1,9 @@
 """Between the gridded surface and hull panels: one linear map, and its transpose for the way back.
 
 `pull` takes the surface's potential to what its harmonic extension does at hulls, tested with the
-hats of hull nodes (normal derivative) and panel by panel (potential); `push_far` and `push_near`
-are the transpose, by reciprocity what hulls do to the surface. That both are one map keeps the flow
-symmetric.
+hats of hull nodes (normal derivative) and panel by panel (potential); `push`, then `add_far` and
+`add_near`, are the transpose, by reciprocity what hulls do to the surface. That both are one map
+keeps the flow symmetric.
 
 Zones are blended by windows. Close to the hulls the surface is a fine sheet of triangles on which
 the grid's potential is interpolated; further off it is a sum over nodes; far away a sum over the
@@ -38,11 +38,12 @@ Ints = npt.NDArray[np.int64]
 
 FINER = 4  # cells of the fine sheet in one of the grid
 COARSER = 4  # cells of the grid in one of the coarse one
-CLOSE = 3.0, 11.0  # spacings from the hulls where the fine sheet gives way to nodes
+CLOSE = 3.0, 8.0  # spacings from the hulls where the fine sheet gives way to nodes
 FAR = 10.0, 34.0  # and these to coarse nodes
 DEEP = 2.0  # spacings under which hulls see no cells, only nodes
-ACCURACY = 1e-6  # of the few rows that stand for all
+ACCURACY = 1e-5  # of the few rows that stand for all
 SAMPLE = 1200  # nodes of each zone by which they are chosen
+FEW = 8  # columns of a product
 AT_ONCE = 2_000_000  # dipoles at points that are held in memory
 
 
@@ -57,53 +58,80 @@ class Coupling:
     """
 
     def __init__(self, sheet: Sheet, e: Elements, images: Images) -> None:
-        self.sheet, self.nodes = sheet, e.nodes
+        self.sheet = sheet
         self._points = _Rule(e, images)
         plan = KDTree(e.points[:, :2])
+        self._hats = self._points.by_hat.shape[0]
         near, distance = _near(plan, sheet, sheet.spacing * CLOSE[1])
         close = _window(distance / sheet.spacing, *CLOSE)
         self.close = near[close > 0.0]
         self._close = self._fine_map() * close[close > 0.0]
         self._zones = _zones(sheet, plan)
-        chosen, self._spread = self._points.stand_ins(*(zone.xy for zone in self._zones))
-        self._few = [self._points.rows(chosen, zone.xy) * zone.weight for zone in self._zones]
-        self.near = self._close.sum(axis=1) + self._spread @ self._few[0].sum(axis=1)
+        self._few, self._spread = [], []
+        for zone in self._zones:
+            chosen, spread = self._points.stand_ins(zone.xy)
+            self._few.append(self._points.rows(chosen, zone.xy) * zone.weight)
+            self._spread.append(spread)
         self._by_mean = self._points.of_level() - self._of_level()
+        self._ends = np.cumsum([len(self.close), *(len(rows) for rows in self._few)])
+        self.size = self._ends[-1]
+        self._sums = self._few[0].sum(axis=1)
 
     def _of_level(self) -> Array:
-        """(nodes + panels,) the zones' answer to a potential of one all over."""
-        few = sum((rows.sum(axis=1) for rows in self._few), np.zeros(self._spread.shape[1]))
-        return np.asarray(self._close.sum(axis=1) + self._spread @ few)
+        """(hull nodes + panels,) the zones' answer to a potential of one all over."""
+        answer = self._close.sum(axis=1)
+        for spread, rows in zip(self._spread, self._few, strict=True):
+            answer += spread @ rows.sum(axis=1)
+        return np.asarray(answer)
 
     def pull(self, potential: Array, spectrum: Complex) -> Array:
         """What a surface potential (nx ny, k) of half spectrum (k, ...) does at the hulls.
 
-        (nodes, k): int hat d(phi)/dn over the hulls, normals into the bodies. The maps have further
-        rows, int phi over each panel, which only the way back has a use for.
+        (hull nodes, k): int hat d(phi)/dn over the hulls, normals into the bodies. The maps have
+        further rows, int phi over each panel, which only the way back has a use for.
         """
-        few = self._few[0] @ potential[self._zones[0].nodes]
-        for zone, rows in zip(self._zones[1:], self._few[1:], strict=True):
+        count = self._hats
+        result = times(self._close[:count], potential[self.close])
+        fields = [potential[self._zones[0].nodes]]
+        for zone in self._zones[1:]:
             coarse = zone.sheet.back(self.sheet.cropped(spectrum, zone.sheet))
-            few += rows @ coarse.reshape(len(coarse), -1).T[zone.nodes]
+            fields.append(coarse.reshape(len(coarse), -1).T[zone.nodes])
+        for rows, spread, field in zip(self._few, self._spread, fields, strict=True):
+            result += times(spread[:count], times(rows, field))
         mean = spectrum[:, 0, 0].real / self.sheet.size
-        close, spread = self._close[: self.nodes], self._spread[: self.nodes]
-        beyond = self._by_mean[: self.nodes, None] * mean
-        return np.asarray(close @ potential[self.close] + spread @ few + beyond)
+        result += self._by_mean[:count, None] * mean
+        return result
 
-    def push_far(self, load: Array, spectrum: Complex) -> None:
+    def push(self, load: Array) -> Array:
+        """What `add_far` and `add_near` need of a load (hull nodes, k) or (hull nodes + panels, k).
+
+        (size, k): on the nodes close to hulls, and on the few rows of each zone. The mean of the
+        surface's answer is the caller's to give.
+        """
+        count = len(load)
+        parts = [times(self._close[:count].T, load)]
+        parts += [times(spread[:count].T, load) for spread in self._spread]
+        return np.concatenate(parts)
+
+    def add_far(self, pushed: Array, spectrum: Complex) -> None:
         """The transpose of `pull` that waves carry: adds to a half spectrum (k, ...)."""
-        few = self._spread.T @ load
-        for zone, rows in zip(self._zones[1:], self._few[1:], strict=True):
+        few = np.split(pushed, self._ends[1:-1])[1:]
+        for zone, rows, load in zip(self._zones[1:], self._few[1:], few, strict=True):
             coarse = np.zeros((load.shape[1], zone.sheet.size))
-            coarse[:, zone.nodes] = (rows.T @ few).T
+            coarse[:, zone.nodes] = times(rows.T, load).T
             waves = zone.sheet.transform(coarse.reshape(-1, *zone.sheet.shape))
             self.sheet.add_long(spectrum, waves, zone.sheet)
-        spectrum[:, 0, 0] += load.T @ self._by_mean
 
-    def push_near(self, load: Array, field: Array) -> None:
+    def add_near(self, pushed: Array, field: Array) -> None:
         """And that which nodes near the hulls get: adds to a field (nx ny, k)."""
-        field[self.close] += self._close.T @ load
-        field[self._zones[0].nodes] += self._few[0].T @ (self._spread.T @ load)
+        close, few = np.split(pushed, self._ends[:2])[:2]
+        field[self.close] += close
+        field[self._zones[0].nodes] += times(self._few[0].T, few)
+
+    def near(self, pushed: Array) -> Array:
+        """(k,) sum over the grid of what `add_near` adds."""
+        close, few = np.split(pushed, self._ends[:2])[:2]
+        return np.asarray(close.sum(axis=0) + self._sums @ few)
 
     def _fine_map(self) -> Array:
         """`pull` of the fine sheet, by the grid's nodes close to the hulls."""
@@ -205,17 +233,17 @@ class _Rule:
         shape = (len(e.points), 3 * count)
         self.by_hat = sparse.csr_matrix(
             (share.ravel(), (owner.ravel(), np.repeat(number, 3))), shape=shape
-        )[: e.nodes]
+        )[e.hull.min() : e.nodes]
         self.by_panel = sparse.csr_matrix((area, (number // 3, number)), shape=(count, 3 * count))
         self._weights = sparse.csr_matrix(sparse.vstack([self.by_hat, self.by_panel]))
 
     def of_level(self) -> Array:
-        """(nodes + panels,) `pull` of a potential of one: no slope, and one on every panel."""
+        """(hull nodes + panels,) `pull` of a potential of one: no slope, and one on every panel."""
         hats = self.by_hat.shape[0]
         return np.append(np.zeros(hats), np.asarray(self.by_panel.sum(axis=1)))
 
     def of_triangles(self, nodes: Array, triangles: Ints, used: Ints, whole: bool) -> Array:
-        """(nodes + panels, n) `pull` of hats on triangles of the surface, at some points.
+        """(hull nodes + panels, n) `pull` of hats on triangles of the surface, at some points.
 
         `whole`: with the bed's images.
         """
@@ -233,7 +261,7 @@ class _Rule:
         return result
 
     def of_nodes(self, at: Array, used: Ints, mirrored: bool = False) -> Array:
-        """(nodes + panels, n) `pull` of dipoles at places (n, 2), per area, at some points.
+        """(hull nodes + panels, n) `pull` of dipoles at places (n, 2), per area, at some points.
 
         `mirrored`: of the bed's images alone.
         """
@@ -256,17 +284,13 @@ class _Rule:
             result[:, part] = np.where(is_hat, slope, level)
         return result
 
-    def stand_ins(self, *places: Array) -> tuple[Ints, Array]:
+    def stand_ins(self, places: Array) -> tuple[Ints, Array]:
         """Rows that stand for all at places of the surface, and all as sums of these."""
         draw = np.random.default_rng(1)
-        sample = np.vstack(
-            [at[draw.choice(len(at), min(SAMPLE, len(at)), replace=False)] for at in places]
-        )
+        sample = places[draw.choice(len(places), min(SAMPLE, len(places)), replace=False)]
         count = self.by_hat.shape[0] + self.by_panel.shape[0]
         tried = self.rows(np.arange(count), sample)
         scale = np.linalg.norm(tried, axis=1)
-        touched = np.flatnonzero(scale)  # hats inside waterplanes have no part in hulls
-        tried, scale = tried[touched], scale[touched]
         # nearby nodes would drown those far off, and slopes potentials
         size = np.linalg.norm(tried / scale[:, None], axis=0)
         found: Any = interpolative.interp_decomp(
@@ -275,9 +299,7 @@ class _Rule:
         rank, order, coefficients = found
         sums = np.asarray(interpolative.reconstruct_interp_matrix(order, coefficients)).T
         chosen = np.asarray(order[:rank])
-        spread = np.zeros((count, rank))
-        spread[touched] = scale[:, None] * sums / scale[chosen]
-        return touched[chosen], spread
+        return chosen, scale[:, None] * sums / scale[chosen]
 
     def _add(self, result: Array, part: Ints, slope: Array, level: Array) -> None:
         hats = self.by_hat.shape[0]
@@ -285,6 +307,16 @@ class _Rule:
             some = sparse.csr_matrix(weights[:, part])
             rows = np.flatnonzero(np.diff(some.indptr))
             result[first + rows] += np.asarray(some[rows] @ values)
+
+
+def times(matrix: Array, columns: Array) -> Array:
+    """matrix @ columns (n, k); few of them one by one, for which BLAS rearranges no matrix."""
+    if columns.shape[1] > FEW:
+        return np.asarray(matrix @ columns)
+    result = np.empty((len(matrix), columns.shape[1]), order="F")
+    for k in range(columns.shape[1]):
+        result[:, k] = matrix @ columns[:, k]
+    return result
 
 
 def _window(distance: Array, start: float, end: float) -> Array:

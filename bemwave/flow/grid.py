@@ -29,7 +29,7 @@ import numpy as np
 import numpy.typing as npt
 from scipy import linalg, sparse
 
-from bemwave.flow.coupling import Coupling
+from bemwave.flow.coupling import Coupling, times
 from bemwave.flow.elements import Elements, solver_of
 from bemwave.flow.images import make_images
 from bemwave.flow.panels import forms
@@ -108,41 +108,46 @@ class GridFlow:
         """Potential at all nodes of hulls and waterplanes, (nodes, k) [m^2/s]."""
         return self.both(potential, hull_flux)[1]
 
-    def both(
-        self, potential: Array, hull_flux: Array, share: Array | None = None
-    ) -> tuple[Array, Array]:
-        """`surface_flux` and `hull_potential` at once.
+    def both(self, potential: Array, hull_flux: Array) -> tuple[Array, Array]:
+        """`surface_flux` and `hull_potential` at once."""
+        if self._bodies is None:
+            return self.moved(potential, hull_flux)
+        u, given = self._bodies.given(hull_flux)
+        surface, by_water = self.moved(potential, given)
+        return surface, by_water + u
 
-        `share` (nx, ny/2 + 1): of the grid's own waves only so much.
+    def given(self, hull_flux: Array) -> Array:
+        """What `moved` needs of given fluxes (mB, k): a column for each."""
+        return hull_flux if self._bodies is None else self._bodies.given(hull_flux)[1]
+
+    def moved(
+        self, potential: Array, given: Array, rise: Array | None = None
+    ) -> tuple[Array, Array]:
+        """`surface_flux`, and the hulls' potential but for that of the flux `given` alone.
+
+        `rise` (nx, ny/2 + 1): of A, if not the sheet's.
         """
         # each field in one piece, for the transforms
         potential = np.asfortranarray(potential)
         spectrum = self.sheet.transform(potential.T.reshape(-1, *self.sheet.shape))
+        rise = self.sheet.rise if rise is None else rise
         bodies = self._bodies
         if bodies is None:
-            spectrum *= self.sheet.rise if share is None else share * self.sheet.rise
+            spectrum *= rise
             return self._back(spectrum), np.zeros((0, potential.shape[1]))
         pulled = bodies.pulled(potential, spectrum)
         mean = spectrum[:, 0, 0].real / self.sheet.size
-        spectrum *= self.sheet.rise
-        u, left = bodies.potential(potential, pulled, spectrum, hull_flux)
-        if share is not None:
-            spectrum *= share
-        beside = u - bodies.of_level * mean
-        load, left = np.concatenate([beside, -hull_flux]) / self._area, left / self._area
-        bodies.add_waves(load, spectrum)
-        spectrum[:, 0, 0] = bodies.risen(hull_flux) / self._area - bodies.near(load, left)
+        spectrum *= rise
+        u, left = bodies.potential(potential, pulled, spectrum)
+        pushed = bodies.push(u - bodies.of_level * mean, left) + given
+        bodies.add_waves(pushed, spectrum, rise)
         result = self._back(spectrum)
-        bodies.add_near(load, left, result)
+        bodies.add_near(pushed, result)
         self.continuation.gather(result)
         if len(self._near):
             result[self._near] = self._solve_near(self._area * result[self._near])
         self.continuation.fill(result)
         return result, u
-
-    def continued(self, field: Array) -> Array:
-        """A field given on the water, (nx ny,) or (nx ny, k), continued through waterplanes."""
-        return self.continuation(field)
 
     @property
     def places(self) -> Array:
@@ -209,12 +214,11 @@ class _Bodies:
     """All that closed bodies add to the energy of the grid's own waves."""
 
     def __init__(self, sheet: Sheet, e: Elements, progress: Callable[[float], None]) -> None:
-        self._sheet = sheet
+        self._sheet, self._area = sheet, sheet.spacing**2
         images = make_images(sheet.depth, True, (), sheet.spacing * max(sheet.shape))
         energy, given = forms(e, images, progress=lambda share: progress(0.4 * share))
-        self._count, free = e.nodes, e.free
-        line = np.unique(e.hull)
-        self._line = line[line < free]
+        self._count, self._first = e.nodes, int(e.hull.min())
+        self._line = np.arange(self._first, e.free)
         self._found = np.setdiff1d(np.arange(e.nodes), self._line)
         factor = linalg.cho_factor(energy[np.ix_(self._found, self._found)], lower=True)
         self._energy_line, self._given_line = energy[self._line], given[self._line]
@@ -228,14 +232,16 @@ class _Bodies:
         self._from_line = sparse.csr_matrix(self._on_line.T)
         self._panel_area = e.hull_table[:, 28]
         self._make_lids(e)
+        sizes = [self._coupling.size, len(self.on_lids), len(self._line)]
+        self._ends = np.cumsum(sizes)
         self.of_level = self._of_level(sheet)
 
     def _of_level(self, sheet: Sheet) -> Array:
         """u (nodes, 1) of a potential of one all over: one; on bodies under water zero."""
-        level, still = np.ones((sheet.size, 1)), np.zeros((len(self._panel_area), 1))
+        level = np.ones((sheet.size, 1))
         spectrum = sheet.transform(level.reshape(1, *sheet.shape))
         pulled = self.pulled(level, spectrum)
-        return self.potential(level, pulled, np.zeros_like(spectrum), still)[0]
+        return self.potential(level, pulled, np.zeros_like(spectrum))[0]
 
     def _make_lids(self, e: Elements) -> None:
         """Nodes of the grid on waterplanes, and what these weigh."""
@@ -255,11 +261,11 @@ class _Bodies:
 
     def pulled(self, field: Array, spectrum: Complex) -> Array:
         """-G f over hulls (nodes, k), of a field f and its spectrum."""
-        return -self._coupling.pull(field, spectrum)
+        pulled = np.zeros((self._count, field.shape[1]))
+        pulled[self._first :] = -self._coupling.pull(field, spectrum)
+        return pulled
 
-    def potential(
-        self, field: Array, pulled: Array, rise: Complex, hull_flux: Array
-    ) -> tuple[Array, Array]:
+    def potential(self, field: Array, pulled: Array, rise: Complex) -> tuple[Array, Array]:
         """u (nodes, k), and what waterlines are left with; `rise` the spectrum of A f.
 
         `pulled` gets what A f does on waterplanes.
@@ -269,40 +275,55 @@ class _Bodies:
             pulled[:free] += self._lid_test @ self._lines.of(rise)[self._in_lines].T
         u = np.empty_like(pulled)
         u[self._line] = self._on_line @ field[self._at_line]
-        u[self._found] = self._by_flux @ pulled[self._found] + self._by_line @ u[self._line]
-        u[self._found] += self._by_given @ hull_flux
-        return u, self._energy_line @ u - pulled[self._line] + self._given_line @ hull_flux
+        u[self._found] = times(self._by_flux, pulled[self._found])
+        u[self._found] += times(self._by_line, u[self._line])
+        return u, times(self._energy_line, u) - pulled[self._line]
 
-    def risen(self, hull_flux: Array) -> Array:
-        """(k,) volume that comes up in a second, of what goes into the hulls [m^3/s]."""
-        return np.asarray(-self._panel_area @ hull_flux)
+    def given(self, hull_flux: Array) -> tuple[Array, Array]:
+        """u (nodes, k) of a given flux alone, and what it pushes."""
+        u = np.zeros((self._count, hull_flux.shape[1]))
+        u[self._found] = times(self._by_given, hull_flux)
+        left = times(self._energy_line, u) + times(self._given_line, hull_flux)
+        pushed = self.push(np.concatenate([u, -hull_flux]), left)
+        # what goes into the hulls comes up
+        pushed[-1] -= self._panel_area @ hull_flux / self._area
+        return u, pushed
 
-    def near(self, load: Array, left: Array) -> Array:
-        """(k,) sum over the grid of what `add_near` adds."""
-        return np.asarray(load.T @ self._coupling.near + left.sum(axis=0))
+    def push(self, load: Array, left: Array) -> Array:
+        """What a load of u and less the given flux does to the surface, before it is spread.
 
-    def add_waves(self, load: Array, spectrum: Complex) -> None:
-        """Add what a load of u and less the given flux does in waves, waterplanes' A u too."""
-        self._coupling.push_far(load, spectrum)
-        free = self._lid_test.shape[0]
-        if free:
-            lid = np.zeros((load.shape[1], self._count_lines, self._sheet.shape[1]))
-            lid[self._in_lines] = (self._lid @ load[:free]).T
+        (size, k): of the coupling, on nodes of waterplanes, on waterlines, `left` there, and the
+        volume that comes up in a second, to be made good by the mean.
+        """
+        free = self._lid.shape[1]
+        pushed = self._coupling.push(load[self._first :])
+        near = -self._coupling.near(pushed) - left.sum(axis=0)
+        parts = [pushed, self._lid @ load[:free], left, near[None, :]]
+        return np.asarray(np.concatenate(parts) / self._area)
+
+    def add_waves(self, pushed: Array, spectrum: Complex, rise: Array) -> None:
+        """Add what is pushed and goes out in waves, waterplanes' A u too; `rise` is that of A."""
+        far, on_lids, _, mean = np.split(pushed, self._ends)
+        self._coupling.add_far(far, spectrum)
+        if len(on_lids):
+            lid = np.zeros((pushed.shape[1], self._count_lines, self._sheet.shape[1]))
+            lid[self._in_lines] = on_lids.T
             waves = self._lines.spectrum(lid)
-            waves *= self._sheet.rise
+            waves *= rise
             spectrum -= waves
+        spectrum[:, 0, 0] = mean
 
-    def add_near(self, load: Array, left: Array, field: Array) -> None:
-        """Add what it does on nodes, in place, and what waterlines are left with."""
-        self._coupling.push_near(load, field)
+    def add_near(self, pushed: Array, field: Array) -> None:
+        """Add the rest, on nodes and waterlines, in place."""
+        near, _, left, _ = np.split(pushed, self._ends)
+        self._coupling.add_near(near, field)
         field[self._at_line] += self._from_line @ left
 
 
 class GridMarch:
     """The surface flux of a step, averaged over it so that leapfrog is exact for free waves.
 
-    Of the grid's own waves A becomes A_dt = 2 (1 - cos w dt)/(g dt^2); what hulls add is of the
-    second order, (w dt)^2/12.
+    A becomes A_dt = 2 (1 - cos w dt)/(g dt^2); what hulls add is of the second order, (w dt)^2/12.
     """
 
     def __init__(
@@ -310,7 +331,7 @@ class GridMarch:
     ) -> None:
         self._flow = flow
         half_turn = 0.5 * step * np.sqrt(gravity * flow.sheet.rise)
-        self._share = np.sinc(half_turn / np.pi) ** 2
+        self._rise = flow.sheet.rise * np.sinc(half_turn / np.pi) ** 2
         self._rate: Array | None = None
         if damping is not None:
             self._rate = damping.diagonal()[:, None] / flow.sheet.spacing**2
@@ -318,11 +339,11 @@ class GridMarch:
 
     def given(self, fluxes: Sequence[Array]) -> Array:
         """(times, ...) to be passed on to `flux`, of the given flux (mB, times) of each part."""
-        return np.stack([flux.T for flux in fluxes], axis=2)
+        return np.stack([self._flow.given(flux).T for flux in fluxes], axis=2)
 
     def flux(self, potential: Array, given: Array) -> Array:
         """(nx ny, parts) from the potential in the middle of a step."""
-        return self._flow.both(potential, given, self._share)[0]
+        return self._flow.moved(potential, given, self._rise)[0]
 
     def damped(self, flux: Array, mean: Array) -> Array:
         """Rate of the step's mean elevation: the flux less what the absorber takes, old and new.
@@ -339,15 +360,15 @@ class GridMarch:
 def body_elements(bodies: SurfaceMesh | None) -> Elements:
     """The closed surfaces of hulls and waterplanes as elements.
 
-    `free` are the nodes on z = 0 inside and on waterlines, `below` all others.
+    `free` are the nodes on z = 0, those inside waterlines before those on them; `below` all others.
     """
     if bodies is None:
         empty, none = np.zeros((0, 3), dtype=np.int64), np.zeros(0, dtype=np.int64)
         return Elements(np.zeros((0, 3)), empty, empty, 0, 0, 0, none, none)
     is_lid = bodies.part == bodies.part_names.index(WATERPLANE)
-    on_lid = np.unique(bodies.triangles[is_lid])
-    below = np.setdiff1d(np.arange(len(bodies.points)), on_lid)
-    order = np.concatenate([on_lid, below])
+    on_lid, on_hull = (np.unique(bodies.triangles[part]) for part in (is_lid, ~is_lid))
+    inside, below = np.setdiff1d(on_lid, on_hull), np.setdiff1d(on_hull, on_lid)
+    order = np.concatenate([inside, np.intersect1d(on_lid, on_hull), below])
     number = np.empty(len(order), dtype=np.int64)
     number[order] = np.arange(len(order))
     return Elements(

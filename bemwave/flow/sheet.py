@@ -149,14 +149,16 @@ class Lines:
         nx = sheet.shape[0]
         self._few = len(rows) < FEW_LINES
         turns = np.outer(rows, np.arange(nx)) % nx if self._few else np.zeros((0, 0))
-        self._waves = np.exp(2j * math.pi / nx * turns)
-        self._back = np.ascontiguousarray(self._waves.conj().T)
+        angle = 2.0 * math.pi / nx * turns
+        # cosines, then sines: a real product takes less than one of complex numbers
+        self._waves = np.concatenate([np.cos(angle), np.sin(angle)])
 
     def of(self, spectrum: Complex) -> Array:
         """(k, m, ny) the field there, of its half spectrum (k, nx, ny/2 + 1)."""
         nx, ny = self._sheet.shape
         if self._few:
-            along = self._waves @ spectrum / nx
+            cosines, sines = np.split((self._waves @ spectrum.view(float)).view(complex), 2, axis=1)
+            along = (cosines + 1j * sines) / nx
         else:
             along = np.asarray(fft.ifft(spectrum, axis=1, workers=-1))[:, self._rows]
         return np.asarray(fft.irfft(along, n=ny))
@@ -165,7 +167,8 @@ class Lines:
         """(k, nx, ny/2 + 1) of a field (k, m, ny) that is zero off the lines."""
         along = np.asarray(fft.rfft(field))
         if self._few:
-            return np.asarray(self._back @ along)
+            both = np.concatenate([along, -1j * along], axis=1)
+            return np.asarray((self._waves.T @ both.view(float)).view(complex))
         whole = np.zeros((len(field), self._sheet.shape[0], along.shape[2]), dtype=complex)
         whole[:, self._rows] = along
         return np.asarray(fft.fft(whole, axis=1, overwrite_x=True, workers=-1))

@@ -110,7 +110,7 @@ class AtFrequency:
         return np.asarray(fft.ifft2(self._sea * spectrum, workers=-1)).ravel()[self._water]
 
     def _continued(self, potential: Complex) -> Complex:
-        return _whole(self._flow.continued(_parts(self._spread(potential)[:, None])))[:, 0]
+        return _whole(self._flow.continuation(_parts(self._spread(potential)[:, None])))[:, 0]
 
     def _spread(self, potential: Complex) -> Complex:
         field = np.zeros(self._flow.sheet.size, dtype=complex)

@@ -62,7 +62,7 @@ def test_the_flow_is_symmetric_and_no_mode_grows(flow):
     # kinetic energy is a quadratic form: symmetric, and positive but for the mean of the grid
     draw = np.random.default_rng(3)
     none = np.zeros((len(flow.elements.hull), 6))
-    fields = flow.continued(draw.standard_normal((flow.sheet.size, 6)))
+    fields = flow.continuation(draw.standard_normal((flow.sheet.size, 6)))
     energy = fields.T @ (flow.mass @ flow.surface_flux(fields, none))
     assert np.abs(energy - energy.T).max() < 1e-10 * np.abs(energy).max()
     assert np.linalg.eigvalsh(energy).min() > 0.0

@@ -57,10 +57,10 @@ def water_and_ball(panel):
 
 def energy_over(flow, stepper, until):
     """Times, and the energy per density that free steps keep to the last bit [m^5/s^2]."""
-    still = np.zeros((len(flow.elements.hull), 1))
     kept, times = [], []
     # g E'ME/2 + phi_n' M A_dt phi_n+1/2; A_dt as the steps themselves have it
     march = flow.march(G, stepper.step)
+    still = march.given([np.zeros((len(flow.elements.hull), 1))])[0]
     while stepper.time < until:
         stepper.advance()
         history = stepper.history()
@@ -79,7 +79,7 @@ def driven(start, flow, damping):
         ends = 3.0 * PERIOD
         return Stepper(flow, G, STEP, [Heave(flow, ends)], damping=damping), ends
     away = flow.sheet.xy - [1.4, 1.4]
-    mound = flow.continued(np.exp(-(away**2).sum(axis=1) / (2.0 * 0.6**2)))
+    mound = flow.continuation(np.exp(-(away**2).sum(axis=1) / (2.0 * 0.6**2)))
     return Stepper(flow, G, STEP, [], damping=damping, elevation=mound), 0.0
 
 
