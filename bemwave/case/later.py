@@ -31,14 +31,8 @@ def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
             yield f'{where} attitude = "floating"', 'write attitude = "fixed" or "forced"'
         if body.thin:
             yield f"{where} thin", "take it out"
-    yield from _run_not_yet(case)
     yield from _handoff_not_yet(case)
     yield from _frames_not_yet(case)
-
-
-def _run_not_yet(case: Case) -> Iterator[tuple[str, str]]:
-    if case.run.precision != "double":
-        yield '[run] precision = "single"', "take it out"
 
 
 def _handoff_not_yet(case: Case) -> Iterator[tuple[str, str]]:

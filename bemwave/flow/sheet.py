@@ -157,7 +157,8 @@ class Lines:
         """(k, m, ny) the field there, of its half spectrum (k, nx, ny/2 + 1)."""
         nx, ny = self._sheet.shape
         if self._few:
-            cosines, sines = np.split((self._waves @ spectrum.view(float)).view(complex), 2, axis=1)
+            pairs = spectrum.view(spectrum.real.dtype)
+            cosines, sines = np.split((self._waves @ pairs).view(complex), 2, axis=1)
             along = (cosines + 1j * sines) / nx
         else:
             along = np.asarray(fft.ifft(spectrum, axis=1, workers=-1))[:, self._rows]

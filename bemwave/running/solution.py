@@ -59,6 +59,7 @@ class Solution:
             patches=self.driving.patches,
             damping=self.damping,
             elevation=self._released(),
+            precision=np.float32 if survey.case.run.precision == "single" else np.float64,
         )
         self._loads = [self._loads_on(number) for number in range(len(survey.hulls))]
         progress(1.0)

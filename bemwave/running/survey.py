@@ -132,6 +132,7 @@ def survey(case: Case) -> Survey:
     check_layout(hulls + riders, useful_water(case))
     _refuse_without_waterplane(riders)
     route = choose(case, hulls, _expected_triangles(case, periods, hulls))
+    _refuse_single_on_panels(case, route)
     layer = _layer(case, periods, behind(route[0], closed))
     outline = _outline(case, 0.0 if layer is None else layer.width)
     solved = bool(hulls or case.hump or case.pressure or case.wavemaker)
@@ -312,6 +313,14 @@ def _refuse_on_panels(case: Case) -> None:
         raise InputError(
             "[run] history_region was given on route panels; expected it on the grid alone, whose "
             "surface is large: take it out, for panels record the whole surface"
+        )
+
+
+def _refuse_single_on_panels(case: Case, route: tuple[str, str]) -> None:
+    if case.run.precision == "single" and route[0] == "panels":
+        raise InputError(
+            f'[run] precision = "single" was given, and the route is panels ({route[1]}); expected '
+            '"double" there: write that, or [surface] route = "grid"'
         )
 
 

@@ -19,7 +19,7 @@ flow map. The columns of phi are parts of the solved field kept apart (scattered
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 import numpy.typing as npt
@@ -82,6 +82,7 @@ class Stepper:
     patches : pressure patches; they belong to the first part.
     damping : (free, free) sparse int nu hat hat [m^2/s], or None.
     elevation : (free,) at t = 0, of the first part, at rest; None: still water.
+    precision : of the state that is kept; the grid's transforms are made in the same.
     """
 
     def __init__(
@@ -94,6 +95,7 @@ class Stepper:
         patches: Sequence[PressurePatch] = (),
         damping: sparse.csc_matrix | None = None,
         elevation: Array | None = None,
+        precision: type[np.floating[Any]] = np.float64,
     ) -> None:
         self.flow, self.gravity, self.step, self.parts = flow, gravity, step, parts
         self.patches = patches
@@ -101,7 +103,8 @@ class Stepper:
         self._march = flow.march(gravity, step, damping)
         self.count = 0
         # each part in one piece: so routes take and give them
-        self._potentials = [np.zeros((len(self._xy), max(1, len(parts))), order="F")]
+        shape = (len(self._xy), max(1, len(parts)))
+        self._potentials = [np.zeros(shape, dtype=precision, order="F")]
         self._mean = self._first_mean(elevation)
         self._given: Array = np.empty((0, 0, 0))
         self._heads: Array = np.empty((0, 0))
@@ -137,7 +140,7 @@ class Stepper:
         given = self._given[self.count - start]
         if self.patches:
             head = self._heads[self.count - start]
-            moving = potential.copy()
+            moving = potential.copy(order="F")
             moving[:, 0] -= g * dt**2 / 12.0 * head
             flux = self._march.flux(moving, given)
             flux[:, 0] += head

@@ -16,7 +16,6 @@ LATER: dict[str, dict[str, Any]] = {
     "current": {"water": {"depth": 10.0, "current": [0.5, 0.0]}},
     "path": {"body": [SPHERE | {"path": 2.0}]},
     'attitude = "floating"': {"body": [SPHERE | {"attitude": "floating", "free": ["heave"]}]},
-    'precision = "single"': {"run": {"duration": 20.0, "precision": "single"}},
     'axes = "body:buoy"': {"body": [SPHERE], "handoff": [{"box": BOX, "axes": "body:buoy"}]},
     'format = "csv"': {"handoff": [{"box": BOX, "format": "csv"}]},
     'layout = "lattice"': {"handoff": [{"box": BOX, "layout": "lattice"}]},

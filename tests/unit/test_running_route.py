@@ -12,6 +12,7 @@ from bemwave.geometry.hull import place_hull
 from bemwave.geometry.surface_mesh import joined
 from bemwave.geometry.topology import weld
 from bemwave.running.route import FEW_TRIANGLES, MOST_TRIANGLES, choose
+from bemwave.running.survey import survey
 
 MANY = FEW_TRIANGLES + 1
 
@@ -149,3 +150,11 @@ def test_what_fits_neither_is_refused_with_both_reasons():
     assert text.startswith("no route takes this case: the water between near and far is 2 m")
     assert "about 20001 triangles, where 20000 fit" in text
     assert "spacing 0.5 m or less" in text
+
+
+def test_single_precision_is_the_grid_s():
+    small = {"water": {"depth": 40.0}, "surface": {"size": [20.0, 20.0], "spacing": 2.0}}
+    asked = Case(**small, run={"duration": 10.0, "precision": "single"})
+    told = r'precision = "single" was given, and the route is panels \(about \d+ triangles; .*\); '
+    with pytest.raises(InputError, match=told + 'expected "double" there: write that, or'):
+        survey(asked)
