@@ -3,8 +3,8 @@
 Points close together see what is far from all of them alike. For blocks far from the sources a few
 sources stand in for all, chosen at a sample of the points (interpolative decomposition: Cheng et
 al. 2005, SIAM J. Sci. Comput. 26:1389). Nearer, every row is reckoned, and those of a block are
-spanned by a basis found by random sums of its columns (Halko, Martinsson & Tropp 2011, SIAM Review
-53:217, algorithm 4.2).
+spanned by a basis found by random sums of its columns, some at a time, of what those before leave
+(Martinsson & Voronin 2016, SIAM J. Sci. Comput. 38:S485, algorithm randQB_b).
 """
 
 from __future__ import annotations
@@ -24,6 +24,7 @@ Rows = Callable[[Array, Ints], Array]
 LARGEST = 500  # points of a block all of whose rows are reckoned
 FAR = 0.25  # of its own extent a block is from the sources to count as far
 SAMPLE = 250  # of its points, by which the stand-ins are chosen
+AT_ONCE = 40  # sums of columns
 MANY = 150  # stand-ins: then better in halves
 ACCURACY = 3e-6  # of a block, as the root of the sum of squares
 
@@ -101,17 +102,18 @@ class BlockMap:
     def _by_basis(self, numbers: Ints) -> list[Floats]:
         """Two thin matrices, or the block itself where they would not be thin."""
         matrix = self._matrix(numbers, np.arange(len(self._weights)))
-        weighted = matrix * self._weights
-        size = np.linalg.norm(weighted)
+        left = matrix * self._weights
+        size = np.linalg.norm(left)
         random = np.random.default_rng(1)
-        rank = 32
-        while rank < min(matrix.shape) // 3:
-            sums = weighted @ random.standard_normal((len(self._weights), rank))
-            basis = np.linalg.qr(sums)[0]
-            inner = basis.T @ weighted
-            if np.linalg.norm(weighted - basis @ inner) <= ACCURACY * size:
-                return [_single(basis), _single(inner / self._weights)]
-            rank = 3 * rank // 2
+        basis: list[Array] = []
+        inner: list[Array] = []
+        while len(basis) * AT_ONCE < min(matrix.shape) // 3:
+            sums = left @ random.standard_normal((len(self._weights), AT_ONCE))
+            basis.append(np.linalg.qr(sums)[0])
+            inner.append(basis[-1].T @ left)
+            left -= basis[-1] @ inner[-1]
+            if np.linalg.norm(left) <= ACCURACY * size:
+                return [_single(np.hstack(basis)), _single(np.vstack(inner) / self._weights)]
         return [_single(matrix)]
 
 
