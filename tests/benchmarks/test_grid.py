@@ -7,6 +7,7 @@ steps at once, and counts with its share. What is compared is timed in turn, and
 counts.
 """
 
+import itertools
 import math
 import time
 
@@ -16,6 +17,7 @@ from scipy import fft
 
 from bemwave.case import Case
 from bemwave.flow.grid import GridFlow
+from bemwave.flow.grid_samplers import GridSamplers
 from bemwave.flow.sheet import Sheet
 from bemwave.geometry.forms import sphere
 from bemwave.geometry.hull import place_hull
@@ -43,8 +45,8 @@ def least(works, rounds=ROUNDS):
     return [taken[work] for work in works]
 
 
-def times_at(side):
-    """Seconds of a pair, an evaluation of surface flux and a step; with one part and an absorber"""
+def heaving(side):
+    """A grid, its flow round a hemisphere in heave, the flux given, and steps with an absorber."""
     hull = place_hull("ball", sphere(RADIUS, 0.0, PANEL), position=(0.3, 0.4))
     assert len(hull.mesh.triangles) == pytest.approx(1000, rel=0.05)
     sheet = Sheet(-side / 2, -side / 2, 1.0, (side, side))
@@ -58,6 +60,12 @@ def times_at(side):
         [MovingParts(heave, [Oscillation(0.1, 4.0, Ramp(0.0))])],
         damping=flow.damping(lambda xy: rim / side),
     )
+    return sheet, flow, heave, stepper
+
+
+def times_at(side):
+    """Seconds of a pair, an evaluation of surface flux and a step."""
+    _, flow, heave, stepper = heaving(side)
     for _ in range(BLOCK):
         stepper.advance()
     field = stepper.parts_at(stepper.time)[0]
@@ -124,3 +132,28 @@ def test_against_panels(benchmark):
     )
     benchmark.extra_info["panels over grid"] = round(panels / grid, 1)
     assert grid < panels
+
+
+def test_sampling_against_a_step(benchmark):
+    """Velocities at 20 000 points of a box about a hull, of a state just reached, at 1024^2."""
+    sheet, flow, _, stepper = heaving(1024)
+    for _ in range(BLOCK):
+        stepper.advance()
+    # a box of 40 by 30 by 20 spacings, five from the hull: its sides and its bottom
+    x, y, z = np.arange(-20.0, 20.1, 0.4), np.arange(-15.0, 15.1, 0.4), np.arange(-20.0, 0.1, 0.4)
+    faces = [np.meshgrid([s], y, z) for s in (-20.0, 20.0)]
+    faces += [np.meshgrid(x, [s], z) for s in (-15.0, 15.0)] + [np.meshgrid(x, y, [-20.0])]
+    points = np.vstack([np.stack([c.ravel() for c in face], axis=1) for face in faces])
+    points = np.random.default_rng(1).choice(points, 20_000, replace=False)
+    sampler = GridSamplers(sheet, flow.elements).sampler(points)
+    at = itertools.count(1)
+
+    def sample():
+        sampler.velocity(states[next(at) % len(states)])
+
+    states = [stepper.state(stepper.time - 0.01 * n) for n in range(4)]
+    step, sampled = least([stepper.advance, sample])
+    benchmark.pedantic(sample, rounds=3)
+    print(f"\n{len(points)} points take {sampled / step:.2g} steps")
+    benchmark.extra_info["steps"] = round(sampled / step, 2)
+    assert sampled <= step
