@@ -12,6 +12,7 @@ import numpy as np
 from bemwave.case import Case
 from bemwave.checks import judge
 from bemwave.checks.verdicts import PRACTICE, judged
+from bemwave.errors import InputError
 from bemwave.records import Run, RunFolder, Verdict, open_run, refuse_links, write_checks
 from bemwave.running.loop import solve
 from bemwave.running.sea import scattered_sea
@@ -52,7 +53,12 @@ def _convergence(run: Run) -> Verdict:
     if run.history is None:
         return Verdict("convergence", 0.0, None, "info", "the sea alone: no panels")
     surface, home = run.case.surface, Path(run.manifest.notes["case_folder"])
-    surveyed = survey(coarser(run.case.placed(home), run.manifest.route))
+    try:
+        surveyed = survey(coarser(run.case.placed(home), run.manifest.route))
+    except InputError as error:
+        raise InputError(
+            f"--convergence solves the case again with {COARSER} times its sizes, and then: {error}"
+        ) from error
     scattered, share = scattered_sea(surveyed.sea, surface.spacing)
     surveyed = replace(surveyed, scattered=scattered, unscattered_share=share)
     with tempfile.TemporaryDirectory(prefix="bemwave-") as folder:

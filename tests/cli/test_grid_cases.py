@@ -10,6 +10,7 @@ import pytest
 import bemwave
 from bemwave.cli import status_of
 from bemwave.errors import InputError
+from bemwave.running.check import check
 
 WATER = """\
 [water]
@@ -164,3 +165,13 @@ def test_what_the_grid_cannot_hold_is_told_in_one_sentence_and_nothing_is_writte
     assert told.out == ""
     assert status == 2
     assert list(tmp_path.iterdir()) == [case]
+
+
+def test_convergence_says_when_the_coarser_grid_does_not_take_the_case(tmp_path):
+    short = WATER.partition("[[gauge]]")[0].replace("3.0\nrecord", "1.0\nrecord")
+    case = tmp_path / "case.toml"
+    case.write_text(short + WAVES + BALL)
+    bemwave.run(bemwave.read_case(case), tmp_path / "run")
+    told = r"^--convergence solves the case again with 1.5 times its sizes, and then: .*waterplane"
+    with pytest.raises(InputError, match=told):
+        check(tmp_path / "run", convergence=True)
