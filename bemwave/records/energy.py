@@ -21,7 +21,7 @@ _SERIES = {
 }
 
 
-class EnergyFile:
+class EnergyFile(SeriesFile):
     """Writes energy.nc at `times` (n,) s; `keep` records of an interrupted run are kept."""
 
     def __init__(self, path: Path, times: npt.ArrayLike, keep: int | None = None) -> None:
@@ -35,21 +35,12 @@ class EnergyFile:
             },
             times=np.asarray(times, dtype=np.float64),
         )
-        self._file = SeriesFile(path, layout, keep)
+        super().__init__(path, layout, keep)
 
-    def append(self, time: float, energy: float, power_in: float, power_absorbed: float) -> None:
+    def add(self, time: float, energy: float, power_in: float, power_absorbed: float) -> None:
         """Add a record: J, W, W."""
         values = {"energy": energy, "power_in": power_in, "power_absorbed": power_absorbed}
-        self._file.append(time, values)
-
-    @property
-    def count(self) -> int:
-        """Number of records given so far."""
-        return self._file.count
-
-    def flush(self) -> None:
-        """Put every record given so far on the disk."""
-        self._file.flush()
+        self.append(time, values)
 
 
 @dataclass(frozen=True)

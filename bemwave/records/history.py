@@ -35,7 +35,7 @@ _RATES = {
 }
 
 
-class HistoryFile:
+class HistoryFile(SeriesFile):
     """Writes history.nc.
 
     Parameters
@@ -76,20 +76,11 @@ class HistoryFile:
             },
             times=np.asarray(times, dtype=np.float64),
         )
-        self._file = SeriesFile(path, layout, keep)
+        super().__init__(path, layout, keep)
 
-    def append(self, state: SurfaceState) -> None:
+    def add(self, state: SurfaceState) -> None:
         """Add a state."""
-        self._file.append(state.time, {name: getattr(state, name) for name in ARRAYS})
-
-    @property
-    def count(self) -> int:
-        """Number of records given so far."""
-        return self._file.count
-
-    def flush(self) -> None:
-        """Put every record given so far on the disk."""
-        self._file.flush()
+        self.append(state.time, {name: getattr(state, name) for name in ARRAYS})
 
 
 class History:

@@ -28,7 +28,7 @@ RIDING = (
 _SOURCE = f"bemwave {__version__}, linear potential theory"
 
 
-class BodiesFile:
+class BodiesFile(SeriesFile):
     """Writes bodies.nc.
 
     Parameters
@@ -88,9 +88,9 @@ class BodiesFile:
             times=np.asarray(times, dtype=np.float64),
         )
         self._count = len(names)
-        self._file = SeriesFile(path, layout, keep)
+        super().__init__(path, layout, keep)
 
-    def append(
+    def add(
         self,
         time: float,
         motion: ArrayLike,
@@ -111,19 +111,10 @@ class BodiesFile:
         none = np.full((self._count, len(MODES)), np.nan)
         values: dict[str, Any] = {name: forces.get(name, none) for name in FORCES}
         values |= {"motion": in_degrees(motion), "velocity": in_degrees(velocity)}
-        self._file.append(time, values)
-
-    @property
-    def count(self) -> int:
-        """Number of records given so far."""
-        return self._file.count
-
-    def flush(self) -> None:
-        """Put every record given so far on the disk."""
-        self._file.flush()
+        self.append(time, values)
 
 
-class GaugesFile:
+class GaugesFile(SeriesFile):
     """Writes gauges.nc.
 
     Parameters
@@ -167,9 +158,9 @@ class GaugesFile:
             attributes={"title": "Wave gauges", "source": _SOURCE, "caution": CAUTION},
             times=np.asarray(times, dtype=np.float64),
         )
-        self._file = SeriesFile(path, layout, keep)
+        super().__init__(path, layout, keep)
 
-    def append(self, time: float, elevation: ArrayLike, incident_elevation: ArrayLike) -> None:
+    def add(self, time: float, elevation: ArrayLike, incident_elevation: ArrayLike) -> None:
         """Add a record: (gauges,) m; NaN on or inside a waterline."""
         total = np.asarray(elevation, dtype=np.float64)
         values = {
@@ -177,16 +168,7 @@ class GaugesFile:
             "incident_elevation": incident_elevation,
             "gap": self._decks - total,
         }
-        self._file.append(time, values)
-
-    @property
-    def count(self) -> int:
-        """Number of records given so far."""
-        return self._file.count
-
-    def flush(self) -> None:
-        """Put every record given so far on the disk."""
-        self._file.flush()
+        self.append(time, values)
 
 
 def in_degrees(modes: ArrayLike) -> NDArray[np.float64]:

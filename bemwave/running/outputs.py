@@ -14,6 +14,7 @@ from bemwave.flow.samplers import PanelSamplers
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.inside import inside
 from bemwave.handoff import Handoff, Scene
+from bemwave.handoff.netcdf import SeriesFile
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
 from bemwave.records.energy import EnergyFile, Ledger, read_energy
 from bemwave.running.driving import start_up
@@ -44,8 +45,25 @@ class Output(Protocol):
         """Put every instant written so far on the disk."""
 
 
-class HistoryOutput:
+class _FileOutput:
+    """An output into a file of records."""
+
+    _file: SeriesFile
+
+    @property
+    def count(self) -> int:
+        """See `Output`."""
+        return self._file.count
+
+    def flush(self) -> None:
+        """See `Output`."""
+        self._file.flush()
+
+
+class HistoryOutput(_FileOutput):
     """history.nc, at every record."""
+
+    _file: HistoryFile
 
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         run = solution.survey.case.run
@@ -57,38 +75,26 @@ class HistoryOutput:
         places = np.column_stack([nodes, np.zeros(len(nodes))])
         self._file = HistoryFile(folder.history, self.times, places, flow.hull_places, panels, keep)
 
-    @property
-    def count(self) -> int:
-        """See `Output`."""
-        return self._file.count
-
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
-        self._file.append(state if self._part is None else state.at(self._part))
-
-    def flush(self) -> None:
-        """See `Output`."""
-        self._file.flush()
+        self._file.add(state if self._part is None else state.at(self._part))
 
 
-class EnergyOutput:
+class EnergyOutput(_FileOutput):
     """energy.nc."""
+
+    _file: EnergyFile
 
     def __init__(self, solution: Solution, folder: RunFolder, keep: int | None) -> None:
         self.times = fine_times(solution.survey)
         self._solution = solution
-        self._energy = EnergyFile(folder.energy, self.times, keep)
+        self._file = EnergyFile(folder.energy, self.times, keep)
         kept = read_energy(folder.energy)
         columns = (kept.times, kept.energy, kept.power_in, kept.power_absorbed)
         self._rows = list(zip(*columns, strict=True))
         self._guard = GrowthGuard(solution)
         for time, energy, power_in, _ in self._rows:
             self._guard.check(time, energy, power_in)
-
-    @property
-    def count(self) -> int:
-        """See `Output`."""
-        return self._energy.count
 
     @property
     def figure(self) -> str:
@@ -102,15 +108,13 @@ class EnergyOutput:
         energy, power_in, absorbed = self._solution.energy(state)
         self._guard.check(state.time, energy, power_in)
         self._rows.append((state.time, energy, power_in, absorbed))
-        self._energy.append(*self._rows[-1])
-
-    def flush(self) -> None:
-        """See `Output`."""
-        self._energy.flush()
+        self._file.add(*self._rows[-1])
 
 
-class BodiesOutput:
+class BodiesOutput(_FileOutput):
     """bodies.nc: the bodies that the water flows round, then those that ride it, without loads."""
+
+    _file: BodiesFile
 
     def __init__(
         self,
@@ -125,11 +129,6 @@ class BodiesOutput:
         names = [hull.name for hull in survey.hulls + survey.riders]
         self._file = BodiesFile(folder.bodies, self.times, names, keep)
 
-    @property
-    def count(self) -> int:
-        """See `Output`."""
-        return self._file.count
-
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
         motion, velocity = np.zeros((2, 0, 6))
@@ -141,15 +140,13 @@ class BodiesOutput:
             loads = {name: np.vstack([load, none]) for name, load in given.items()}
         motion = np.vstack([motion, *(rider.motion(state) for rider in self._riders)])
         velocity = np.vstack([velocity, *(rider.velocity(state) for rider in self._riders)])
-        self._file.append(state.time, motion, velocity, loads)
-
-    def flush(self) -> None:
-        """See `Output`."""
-        self._file.flush()
+        self._file.add(state.time, motion, velocity, loads)
 
 
-class GaugesOutput:
+class GaugesOutput(_FileOutput):
     """gauges.nc."""
+
+    _file: GaugesFile
 
     def __init__(
         self,
@@ -168,20 +165,11 @@ class GaugesOutput:
         names = [gauge.name for gauge in gauges]
         self._file = GaugesFile(folder.gauges, self.times, names, xy, decks, keep)
 
-    @property
-    def count(self) -> int:
-        """See `Output`."""
-        return self._file.count
-
     def write(self, state: SurfaceState) -> None:
         """See `Output`."""
         incident = np.where(self._dry, np.nan, self._incident.elevation(state.time))
         solved = 0.0 if self._solved is None else self._solved.elevation(state)
-        self._file.append(state.time, incident + solved, incident)
-
-    def flush(self) -> None:
-        """See `Output`."""
-        self._file.flush()
+        self._file.add(state.time, incident + solved, incident)
 
 
 class HandoffOutput:

@@ -106,8 +106,8 @@ def write_run(path):
     shapes = projected(bell, elements), projected(rise, elements)
     out = HistoryFile(folder.history, np.arange(9) * 0.25, nodes, hull_nodes, panels)
     for time in np.arange(9) * 0.25:
-        out.append(state_at(time, shapes, len(hull_nodes), len(panels)))
-        bodies.append(time, np.zeros((1, 6)), velocity_at(time), {})
+        out.add(state_at(time, shapes, len(hull_nodes), len(panels)))
+        bodies.add(time, np.zeros((1, 6)), velocity_at(time), {})
     out.flush()
     bodies.flush()
     return folder

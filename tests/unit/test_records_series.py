@@ -35,7 +35,7 @@ def written(tmp_path, times):
     path = tmp_path / "history.nc"
     out = HistoryFile(path, times, np.zeros((5, 3)), np.zeros((2, 3)), np.zeros((3, 3)))
     for time in times:
-        out.append(state_at(time))
+        out.add(state_at(time))
     out.flush()
     return path
 
@@ -99,7 +99,7 @@ def test_bodies_have_names_and_degrees(tmp_path):
     out = BodiesFile(path, [0.5], ["tender", "rig"])
     motion = np.zeros((2, 6))
     motion[1] = [1, 2, 3, 0.1, 0.2, math.pi]
-    out.append(0.5, motion, 2 * motion, {"force": 10 * motion})
+    out.add(0.5, motion, 2 * motion, {"force": 10 * motion})
     out.flush()
     with netCDF4.Dataset(path) as file:
         assert list(file["body"][:]) == ["tender", "rig"]
@@ -115,13 +115,13 @@ def test_bodies_have_names_and_degrees(tmp_path):
     with xarray.open_dataset(path) as opened:
         assert opened["force"].sel(body="rig", mode="heave").item() == 30.0
     with pytest.raises(ValueError, match="lift"):
-        out.append(1.0, motion, motion, {"lift": motion})
+        out.add(1.0, motion, motion, {"lift": motion})
 
 
 def test_gauges_have_names_and_gaps(tmp_path):
     path = tmp_path / "gauges.nc"
     out = GaugesFile(path, [0.0], ["bow", "inside"], [[1, 2], [3, 4]], [4.0, np.nan])
-    out.append(0.0, [0.25, np.nan], [0.5, 0.125])
+    out.add(0.0, [0.25, np.nan], [0.5, 0.125])
     out.flush()
     with netCDF4.Dataset(path) as file:
         assert list(file["name"][:]) == ["bow", "inside"]
