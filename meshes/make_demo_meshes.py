@@ -31,7 +31,7 @@ PLATFORM_PANEL = 2.2
 PLATFORM_POSITION, PLATFORM_HEADING = (-12.5, 0.0), 0.0
 
 OFFSHORE = {"spacing": 26.0, "column_radius": 3.5, "pontoon": 4.0, "draught": 9.0}
-OFFSHORE_PANEL = 2.6
+OFFSHORE_PANEL = 2.1
 
 
 def main():
