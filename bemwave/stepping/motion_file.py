@@ -18,6 +18,7 @@ Array = npt.NDArray[np.float64]
 HEADER = ("t", "surge", "sway", "heave", "roll", "pitch", "yaw")
 DEGREE = 5  # quintic: a tenth of a period between rows then leaves .1 % in the acceleration
 STILL = 1e-9  # m/s; less is rounding
+SAMPLES = 2**12, 2**20  # of the motions for their periods, at least and at most
 
 
 class MotionFile:
@@ -52,6 +53,7 @@ class MotionFile:
         _check_times(path, times, duration)
         units = np.array([1.0] * 3 + [math.pi / 180.0] * 3)
         self._duration = duration
+        self._closest = float(np.diff(times).min())
         self._spline = make_interp_spline(times, rows[:, 1:] * units, k=DEGREE)
         self.moved = tuple(np.flatnonzero(rows[:, 1:].any(axis=0)).tolist())
 
@@ -71,7 +73,8 @@ class MotionFile:
         -------
         None where nothing moves.
         """
-        count = 4096
+        # no coarser than the rows: quick motions of a long run would look slow
+        count = int(np.clip(2.0 * self._duration / self._closest, *SAMPLES))
         times = np.linspace(0.0, self._duration, count, endpoint=False)
         velocity = self.derivative(times, 1) * ([1.0] * 3 + [arm] * 3)
         velocity -= velocity.mean(axis=0)

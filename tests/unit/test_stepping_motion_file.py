@@ -76,6 +76,14 @@ def test_the_periods_are_those_of_the_motion(tmp_path):
     assert MotionFile(still, 240.0).periods(arm=1.0) is None
 
 
+def test_the_periods_of_a_long_run_are_those_of_its_motion(tmp_path):
+    """Six hours: far more periods than a fixed number of samples would show."""
+    t = np.arange(0.0, 21600.1, 0.1 * PERIOD)
+    long = write(tmp_path / "m.csv", t, heave=0.3 * np.sin(W * t))
+    assert MotionFile(long, 21600.0).periods(arm=1.0) == pytest.approx((PERIOD, PERIOD), rel=0.01)
+
+
+
 def test_a_case_with_a_file_is_driven_and_stepped_by_it(tmp_path):
     t = np.arange(0.0, 20.1, 0.25)
     write(tmp_path / "m.csv", t, heave=0.1 * np.sin(np.pi * t))
