@@ -126,21 +126,22 @@ class Solution:
 
     def loads(self, time: float) -> dict[str, Array]:
         """Loads on the bodies (bodies, 6), named as in bodies.nc [N, N m]."""
-        shape = (len(self.survey.hulls), 6)
+        shape = (len(self.survey.hulls), 6)  # none, where all there is rides a hump's waves
         loads = {f"force_{part}": np.zeros(shape) for part in ("scattered", "radiated")}
         if self.driving.parts:
             rate = self.stepper.wetted_parts(time)
             for k, part in enumerate(self.driving.parts):
-                loads[f"force_{part}"] = np.array([load.solved(rate[:, k]) for load in self._loads])
+                solved = [load.solved(rate[:, k]) for load in self._loads]
+                loads[f"force_{part}"] = np.reshape(solved, shape)
         at = np.array([time])
-        loads["force_incident"] = np.array([load.incident(at)[0] for load in self._loads])
+        incident = [load.incident(at)[0] for load in self._loads]
+        loads["force_incident"] = np.reshape(incident, shape)
         water, motion = self.survey.case.water, self.motions(time)[0]
-        loads["force_restoring"] = -np.array(
-            [
-                stiffness(hull, water.density, water.gravity) @ displaced
-                for hull, displaced in zip(self.survey.hulls, motion, strict=True)
-            ]
-        )
+        restoring = [
+            stiffness(hull, water.density, water.gravity) @ displaced
+            for hull, displaced in zip(self.survey.hulls, motion, strict=True)
+        ]
+        loads["force_restoring"] = -np.reshape(restoring, shape)
         loads["force"] = sum(loads.values(), np.zeros(shape))
         return loads
 

@@ -217,6 +217,8 @@ start = 3.0
 every = 0.1
 """
 
+GRID_HUMP += RIDER
+
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
 CASES = {
     "tank": TANK,

@@ -7,10 +7,13 @@ import math
 import numpy as np
 import pytest
 
+from bemwave.case import Case
 from bemwave.geometry.forms import box
 from bemwave.geometry.hull import place_hull
+from bemwave.running import run
 from bemwave.running.riding import Rider
 from bemwave.waves import make_sea
+from tests.restart.cases import arrays_of
 
 LENGTH, BEAM = 4.0, 2.0
 WATER = {"depth": 30.0, "density": 1025.0, "gravity": 9.80665}
@@ -74,3 +77,20 @@ def test_velocity_is_the_rate_of_the_motion(height, state_at, flow_of):
     later, before = (rider.motion(state_at(7.0 + s)) for s in (step, -step))
     rate = (later - before) / (2.0 * step)
     assert rider.velocity(state_at(7.0)) == pytest.approx(rate, abs=1e-6)
+
+
+def test_where_nothing_else_is_it_rides_a_hump(tmp_path):
+    buoy = {"name": "buoy", "form": "cylinder", "radius": 0.2, "draught": 0.2}
+    case = Case(
+        water={"depth": 1.0},
+        surface={"size": [4.0, 3.0], "spacing": 0.4, "absorber": 2.0},
+        hump=[{"height": 0.1, "width": 0.8}],
+        body=[buoy | {"attitude": "follow"}],
+        gauge=[{"position": [0.0, 0.0]}],
+        run={"duration": 0.5},
+    )
+    run(case, tmp_path / "run")
+    bodies, gauges = (arrays_of(tmp_path / "run" / f"{name}.nc") for name in ("bodies", "gauges"))
+    assert bodies["motion"][:, 0, 2] == pytest.approx(gauges["elevation"][:, 0], abs=5e-3)
+    assert gauges["elevation"][:, 0].min() < 0.08 < gauges["elevation"][:, 0].max()
+    assert np.isnan(bodies["force"]).all()
