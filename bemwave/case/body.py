@@ -21,15 +21,15 @@ from bemwave.case.values import (
     Table,
     Text,
     keys_for,
+    not_negative,
+    number,
+    positive,
 )
 
-_plain = Field(strict=True, allow_inf_nan=False)
-_above_0 = Field(strict=True, gt=0, allow_inf_nan=False)
-_from_0 = Field(strict=True, ge=0, allow_inf_nan=False)
 _csv = Field(strict=True, pattern=r"(?i)\.csv$")
 
 Path = Annotated[
-    Literal["fixed"] | Annotated[float, _plain] | Annotated[str, _csv],
+    Literal["fixed"] | Annotated[float, number] | Annotated[str, _csv],
     expecting('"fixed", a speed in m/s, or the name of a .csv file with t, x, y, heading'),
 ]
 Attitude = Annotated[
@@ -39,11 +39,11 @@ Attitude = Annotated[
     ),
 ]
 Draught = Annotated[
-    Literal["bed"] | Annotated[float, _above_0],
+    Literal["bed"] | Annotated[float, positive],
     expecting('a number above 0, or for a cylinder "bed"'),
 ]
-_number6 = Annotated[float, _plain]
-_from_06 = Annotated[float, _from_0]
+_number6 = Annotated[float, number]
+_from_06 = Annotated[float, not_negative]
 Six = Annotated[
     tuple[_number6, _number6, _number6, _number6, _number6, _number6],
     expecting("six numbers, surge to yaw"),

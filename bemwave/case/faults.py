@@ -5,6 +5,7 @@ A `Fault` knows the path of its key, such as ("body", 0, "draught"); only the re
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from difflib import get_close_matches
@@ -18,6 +19,9 @@ from pydantic_core import ErrorDetails, PydanticCustomError
 from bemwave.errors import InputError
 
 Path = tuple[str | int, ...]
+
+# sizes of a case's numbers, in whatever unit: beyond them squares and products overflow
+SMALLEST, LARGEST = 1e-12, 1e15
 
 
 @dataclass(frozen=True)
@@ -129,7 +133,7 @@ def _translate(entry: ErrorDetails, root: type[BaseModel]) -> list[Fault]:
     if kind == "faults":
         return [Fault(path + fault.path, fault.text) for fault in context["faults"]]
     if kind == "expected":
-        text = f"got {shown(given)}, expected {context['text']}"
+        text = f"got {shown(given)}, expected {context['text']}{_size(given)}"
     elif kind == "missing":
         text = _missing(path, root)
     elif kind == "extra_forbidden":
@@ -143,6 +147,15 @@ def _translate(entry: ErrorDetails, root: type[BaseModel]) -> list[Fault]:
     else:
         text = f"got {shown(given)}: {entry['msg']}"
     return [Fault(path, text)]
+
+
+def _size(given: object) -> str:
+    """What else to say of a number that is absurd."""
+    numbers = given if isinstance(given, list | tuple) else [given]
+    sizes = [abs(n) for n in numbers if isinstance(n, int | float) and n]
+    if any(size < SMALLEST or LARGEST < size < math.inf for size in sizes):
+        return f", and no number smaller than {SMALLEST:g} or larger than {LARGEST:g}"
+    return ""
 
 
 def _missing(path: Path, root: type[BaseModel]) -> str:

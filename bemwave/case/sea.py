@@ -19,12 +19,12 @@ from bemwave.case.values import (
     Side,
     Table,
     keys_for,
+    not_negative,
 )
 
 SpectrumName = Literal["jonswap", "pierson-moskowitz", "tma"]
-_from_0 = Field(strict=True, ge=0, allow_inf_nan=False)
 Band = Annotated[
-    tuple[Annotated[float, _from_0], Annotated[float, _from_0]],
+    tuple[Annotated[float, not_negative], Annotated[float, not_negative]],
     expecting("two numbers of 0 or more, [lowest, highest], in peak frequencies"),
 ]
 Seed = Annotated[

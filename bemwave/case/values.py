@@ -7,15 +7,16 @@ from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
 
-from bemwave.case.faults import Fault, expecting
+from bemwave.case.faults import LARGEST, SMALLEST, Fault, expecting
 
-_number = Field(strict=True, allow_inf_nan=False)
-_positive = Field(strict=True, allow_inf_nan=False, gt=0)
-_not_negative = Field(strict=True, allow_inf_nan=False, ge=0)
+number = Field(strict=True, allow_inf_nan=False, ge=-LARGEST, le=LARGEST)
+positive = Field(strict=True, allow_inf_nan=False, ge=SMALLEST, le=LARGEST)
+not_negative = Field(strict=True, allow_inf_nan=False, ge=0, le=LARGEST)
 
 
 def _deep(value: Any) -> Any:
-    return math.inf if value == "deep" else value
+    endless = isinstance(value, int | float) and value > LARGEST
+    return math.inf if value == "deep" or endless else value
 
 
 def _pair(value: Any) -> Any:
@@ -23,59 +24,63 @@ def _pair(value: Any) -> Any:
     return (value, value) if isinstance(value, int | float) else value
 
 
-Number = Annotated[float, _number, expecting("a number")]
-Positive = Annotated[float, _positive, expecting("a number above 0")]
-NotNegative = Annotated[float, _not_negative, expecting("a number of 0 or more")]
-Count = Annotated[int, Field(strict=True, ge=1), expecting("a whole number of 1 or more")]
-Whole = Annotated[int, Field(strict=True, ge=0), expecting("a whole number of 0 or more")]
+Number = Annotated[float, number, expecting("a number")]
+Positive = Annotated[float, positive, expecting("a number above 0")]
+NotNegative = Annotated[float, not_negative, expecting("a number of 0 or more")]
+Count = Annotated[
+    int, Field(strict=True, ge=1, le=10**6), expecting("a whole number from 1 to a million")
+]
+Whole = Annotated[
+    int, Field(strict=True, ge=0, le=10**9), expecting("a whole number from 0 to 1e9")
+]
 Flag = Annotated[bool, Field(strict=True), expecting("true or false")]
 Text = Annotated[str, Field(strict=True), expecting("a text in quotes")]
 FileName = Annotated[str, Field(strict=True, min_length=1), expecting("the name of a file")]
 Name = Annotated[
     str,
-    Field(strict=True, pattern=r"^[A-Za-z0-9][A-Za-z0-9_-]*$"),
-    expecting("a name of letters, digits, - and _ (it names files)"),
+    Field(strict=True, pattern=r"^[A-Za-z0-9][A-Za-z0-9_-]*$", max_length=100),
+    expecting("a name of letters, digits, - and _, 100 at most (it names files)"),
 ]
 
 Depth = Annotated[
     float,
-    Field(strict=True, gt=0),
+    Field(strict=True, ge=SMALLEST),
     BeforeValidator(_deep),
     expecting('a number above 0 in metres, or "deep"'),
 ]
 AutoPositive = Annotated[
-    Literal["auto"] | Annotated[float, _positive], expecting('a number above 0, or "auto"')
+    Literal["auto"] | Annotated[float, positive], expecting('a number above 0, or "auto"')
 ]
 AutoNotNegative = Annotated[
-    Literal["auto"] | Annotated[float, _not_negative],
+    Literal["auto"] | Annotated[float, not_negative],
     expecting('a number of 0 or more, or "auto"'),
 ]
 Point = Annotated[
-    tuple[Annotated[float, _number], Annotated[float, _number]], expecting("two numbers [x, y]")
+    tuple[Annotated[float, number], Annotated[float, number]], expecting("two numbers [x, y]")
 ]
 Point3 = Annotated[
-    tuple[Annotated[float, _number], Annotated[float, _number], Annotated[float, _number]],
+    tuple[Annotated[float, number], Annotated[float, number], Annotated[float, number]],
     expecting("three numbers [x, y, z]"),
 ]
 Focus = Annotated[
-    tuple[Annotated[float, _number], Annotated[float, _number], Annotated[float, _number]],
+    tuple[Annotated[float, number], Annotated[float, number], Annotated[float, number]],
     expecting("three numbers [x, y, t]"),
 ]
 Size = Annotated[
-    tuple[Annotated[float, _positive], Annotated[float, _positive]],
+    tuple[Annotated[float, positive], Annotated[float, positive]],
     expecting("two numbers above 0, [along x, along y]"),
 ]
 SizeOrDiameter = Annotated[
-    Annotated[float, _positive] | tuple[Annotated[float, _positive], Annotated[float, _positive]],
+    Annotated[float, positive] | tuple[Annotated[float, positive], Annotated[float, positive]],
     expecting("two numbers above 0, [along x, along y], or for a circle its diameter"),
 ]
 Spacing = Annotated[
-    tuple[Annotated[float, _positive], Annotated[float, _positive]],
+    tuple[Annotated[float, positive], Annotated[float, positive]],
     BeforeValidator(_pair),
     expecting("a number above 0, or two, [horizontal, vertical]"),
 ]
 Radii = Annotated[
-    tuple[Annotated[float, _positive], Annotated[float, _positive], Annotated[float, _positive]],
+    tuple[Annotated[float, positive], Annotated[float, positive], Annotated[float, positive]],
     expecting("three numbers above 0, [about x, about y, about z]"),
 ]
 Mode = Literal["surge", "sway", "heave", "roll", "pitch", "yaw"]

@@ -124,8 +124,7 @@ def budget(survey: Survey) -> Budget:
     # five products for the step's map, and where walls close the water a factor of the sheet's V
     flops = 10 * nodes**3 + (triangles**3 / 3 if survey.closed else 0)
     assembly = _assembly_seconds(survey) + product * flops
-    step = max(survey.periods.shortest / STEPS_PER_PERIOD["panels"], 1e-3)
-    steps = survey.case.run.duration / step
+    steps = _steps(survey)
     # a step and a state read off are about four products bound by memory, 8 bytes an entry
     stepping = steps * 4 * nodes**2 * 8 / 1.5e10
     return Budget(triangles, nodes, memory, assembly, stepping)
@@ -139,11 +138,16 @@ def _grid_budget(survey: Survey, sheet: Sheet, panels: int, memory: float) -> Bu
         start = clock.perf_counter()
         sheet.back(sheet.transform(field))
         pair = min(pair, clock.perf_counter() - start)
-    step = survey.periods.shortest / STEPS_PER_PERIOD["grid"]
-    steps = survey.case.run.duration / max(step, 1e-3)
+    steps = _steps(survey)
     # the bed's images are sums over nodes, which cost little beside the fine sheet: measured
     a_panel = 0.005 if math.isinf(sheet.depth) else 0.01
     return Budget(panels, sheet.size, memory, panels * a_panel, steps * 8.0 * pair)
+
+
+def _steps(survey: Survey) -> float:
+    """How many are taken, about: the mesh's own quick waves may ask for more."""
+    run, step = survey.case.run, survey.periods.shortest / STEPS_PER_PERIOD[survey.route[0]]
+    return run.duration / (max(step, 1e-3) if run.step == "auto" else float(run.step))
 
 
 def _seconds_per_flop() -> float:

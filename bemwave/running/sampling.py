@@ -13,12 +13,14 @@ from bemwave.flow.images import make_images
 from bemwave.frames.writer import frame_times, need_libraries
 from bemwave.handoff import box_of
 from bemwave.handoff.box import Box
-from bemwave.handoff.delivery import instants
+from bemwave.handoff.delivery import INSTANTS_PER_PERIOD, instants
 from bemwave.handoff.point_list import read_points
 from bemwave.running.budget import GIGABYTE, memory_allowed, memory_of, refuse_too_large
 from bemwave.running.survey import Survey
 
-MOST_POINTS = 5_000_000  # of a hand-off or a frame; more is a slip of the pen
+# of a hand-off or a frame, and of any file of records; more is a slip of the pen
+MOST_POINTS = 5_000_000
+MOST_INSTANTS = 10_000_000
 
 # rough costs, measured on one core
 _INFLUENCE = 1.2e-7  # s, of a triangle on velocity and pressure at a point, each image
@@ -46,6 +48,7 @@ class Sampled:
 def refuse_unfit(survey: Survey) -> None:
     """Raise InputError for what does not fit in memory, or cannot be read or drawn."""
     refuse_too_large(survey)
+    _refuse_endless(survey)
     if survey.case.frames is not None:
         need_libraries(survey.case.frames)
         if survey.sheet is not None and survey.case.frames.region is None:
@@ -69,6 +72,27 @@ def refuse_unfit(survey: Survey) -> None:
             f"sample; expected at most {allowed / GIGABYTE:.1f} GB: {most.where} makes "
             f"{most.points} points, give it a larger spacing or raise [run] memory_limit"
         )
+
+
+def _refuse_endless(survey: Survey) -> None:
+    """Raise InputError for more instants than any file should hold; counted, not yet made."""
+    run, kept = survey.case.run, survey.periods.kept
+    often = {
+        f"[run] record_every = {run.record_every:g} s": run.duration / run.record_every,
+        f"the shortest waves, of {kept:.3g} s,": INSTANTS_PER_PERIOD * run.duration / kept,
+    }
+    for entry in survey.case.handoff:
+        every = kept / INSTANTS_PER_PERIOD if entry.every == "auto" else float(entry.every)
+        where = f'[[handoff]] "{entry.name}" every = {every:.3g} s'
+        often[where] = (entry.end - entry.start) / every
+    if (frames := survey.case.frames) is not None:
+        often[f"[frames] fps = {frames.fps:g}"] = (frames.end - frames.start) * frames.fps
+    for where, count in often.items():
+        if count > MOST_INSTANTS:
+            raise InputError(
+                f"{where} in {run.duration:g} s makes {count:.2g} instants; expected at most "
+                f"{MOST_INSTANTS:.0e}: give fewer, or a shorter run"
+            )
 
 
 def sampling_memory(survey: Survey) -> float:

@@ -171,8 +171,18 @@ BAD = {
     ),
     "name that is no file name": (
         'name = "near"', 'name = "../near"',
-        23, '[[handoff]] name: got "../near", expected a name of letters, digits, - and _ (it '
-        "names files)",
+        23, '[[handoff]] name: got "../near", expected a name of letters, digits, - and _, 100 '
+        "at most (it names files)",
+    ),
+    "larger than anything": (
+        "spacing = 1.5", "spacing = 1e300",
+        10, "[surface] spacing: got 1e+300, expected a number above 0, and no number smaller than "
+        "1e-12 or larger than 1e+15",
+    ),
+    "nearly nothing": (
+        "height = 0.3", "height = 1e-300",
+        6, "[[waves]] height: got 1e-300, expected a number above 0, and no number smaller than "
+        "1e-12 or larger than 1e+15",
     ),
     "gauge outside the surface": (
         "position = [8.0, 0.0]", "position = [8.0, 16.0]",

@@ -14,6 +14,7 @@ from matplotlib.figure import Figure
 import bemwave
 from bemwave import cli
 from bemwave.case import Case, read_case
+from bemwave.errors import InputError
 from bemwave.geometry.files import write_mesh
 from bemwave.geometry.forms import box
 from bemwave.geometry.surface_mesh import SurfaceMesh, joined
@@ -21,6 +22,7 @@ from bemwave.geometry.topology import weld
 from bemwave.handoff import box_of
 from bemwave.handoff.box import box_points, box_volume
 from bemwave.running import plan
+from bemwave.running.budget import budget
 from bemwave.running.check import coarser
 from bemwave.running.sampling import sampled, sampling_memory
 from bemwave.running.survey import survey
@@ -208,3 +210,29 @@ def test_the_files_that_a_run_reads_are_listed(tmp_path: Path) -> None:
     lines = [line.split("  ", 1)[-1].strip() for line in plan(asked).splitlines()]
     first = lines.index(f"../swell.csv, which is {tmp_path / 'swell.csv'}")
     assert lines[first + 1] == "waves.csv"
+
+
+@pytest.mark.parametrize(
+    ("tables", "where"),
+    [
+        ({"run": {"duration": 10.0, "record_every": 1e-7}}, r"\[run\] record_every = 1e-07 s"),
+        (
+            {"wavemaker": [{"side": "x_min", "kind": "flap", "stroke": 0.1, "period": 1e-6}]},
+            "the shortest waves, of 1e-06 s,",
+        ),
+        ({"frames": {"fps": 1e7}}, r"\[frames\] fps = 1e\+07"),
+        (
+            {"handoff": [{"box": {"size": [2, 2], "bottom": -1, "top": 1}, "every": 1e-7}]},
+            r'\[\[handoff\]\] "handoff1" every = 1e-07 s',
+        ),
+    ],
+)
+def test_more_instants_than_a_file_should_hold_are_refused(tables: Any, where: str) -> None:
+    walls = {"surface": {"size": [10.0, 8.0], "spacing": 0.8, "edges": "wall"}}
+    with pytest.raises(InputError, match=where + r" in 10 s makes \S+ instants; expected at most"):
+        plan(case(**walls, **tables))
+
+
+def test_a_shorter_step_takes_its_time() -> None:
+    steps = [budget(survey(case(run={"duration": 10.0, "step": s}))).stepping for s in (0.01, 1e-4)]
+    assert steps[1] == pytest.approx(100.0 * steps[0])
