@@ -28,6 +28,7 @@ from bemwave.stepping.damped_line import Behind, Waves, returned
 Array = npt.NDArray[np.float64]
 
 LIMIT = 0.005  # reflected, and passed on: what a layer of automatic width keeps to
+WIDEST = 10.0  # of the longest waves: a given width beyond it is a slip of the pen
 
 _STRENGTHS = np.geomspace(0.3, 8.0, 26)  # tried, over the waves' frequency
 
@@ -85,7 +86,7 @@ def layer_for(
     Raises
     ------
     InputError
-        If the spacing is too large for the waves, or no layer of up to three wavelengths keeps
+        If the spacing is too large for the waves, or the width absurd for them, or no layer of up to three wavelengths keeps
         within the limit.
 
     Examples
@@ -95,6 +96,12 @@ def layer_for(
     """
     waves = Waves(wavelength, depth, gravity)
     if width is not None:
+        if not spacing <= width <= WIDEST * wavelength:
+            raise InputError(
+                f"[surface] absorber = {width:g} m was given for waves of up to {wavelength:.3g} m "
+                f"and a spacing of {spacing:g} m; expected a width from {spacing:g} to "
+                f'{WIDEST * wavelength:.3g} m, or "auto"'
+            )
         return _tuned(width, waves, spacing, behind)
     first = math.ceil(wavelength / spacing * (1.0 - 1e-9))
     for cells in range(first, 3 * first + 1, max(1, first // 16)):

@@ -158,3 +158,9 @@ def test_a_limit_out_of_reach_is_refused():
 def test_wavelength_of_the_frequency_used():
     """The computation's frequency belongs to the wavelength by linear dispersion."""
     assert float(wavenumber(2 * math.pi / frequency(0.2), 0.2)) == pytest.approx(2 * math.pi)
+
+
+@pytest.mark.parametrize("width", [1e-5, 1e5])
+def test_an_absurd_width_is_refused(width):
+    with pytest.raises(InputError, match=r"absorber = \S+ m was .* from 2.5 to 400 m, or"):
+        layer_for(40.0, math.inf, 9.81, 2.5, width=width)
