@@ -86,8 +86,8 @@ def layer_for(
     Raises
     ------
     InputError
-        If the spacing is too large for the waves, or the width absurd for them, or no layer of up to three wavelengths keeps
-        within the limit.
+        If the spacing is too large for the waves, or the width absurd for them, or no layer of up
+        to three wavelengths keeps within the limit.
 
     Examples
     --------
