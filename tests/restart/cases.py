@@ -219,6 +219,34 @@ every = 0.1
 
 GRID_HUMP += RIDER
 
+GRID_MOVED = (
+    GRID.replace('depth = "deep"', "depth = 3.0")
+    .replace(
+        'attitude = "forced"\nforced = { mode = "heave", amplitude = 0.03, period = 1.8 }',
+        'attitude = "motions.csv"',
+    )
+    .replace("[run]\n", "[run]\nhistory_region = { size = [4.0, 3.0] }\n")
+    .replace("start = 3.0\nfps = 5", "start = 2.0\nfps = 5")
+    .replace(
+        'formats = ["ply"]', 'formats = ["usd", "obj", "vtk", "glb"]\ndisplacement_maps = true'
+    )
+    + """\
+[[handoff]]
+name = "cells"
+points = "cells.csv"
+start = 2.0
+every = 0.1
+crest = "cut"
+place = { up = "y", heading = 30.0 }
+[[pressure]]
+head = 0.01
+width = 0.6
+centre = [-2.0, 0.0]
+velocity = [0.5, 0.2]
+"""
+    + RIDER.replace("[1.0, 0.8]", "[1.0, -1.5]")
+)
+
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
 CASES = {
     "tank": TANK,
@@ -228,6 +256,7 @@ CASES = {
     "pictures": PICTURES,
     "grid": GRID,
     "hump on the grid": GRID_HUMP,
+    "grid, moved by file": GRID_MOVED,
 }
 
 
@@ -241,6 +270,8 @@ def write_case(name: str, folder: Path) -> Path:
             for t in np.arange(0.0, 4.25, 0.25)
         ]
         (folder / "motions.csv").write_text("\n".join(rows) + "\n")
+    if "cells.csv" in CASES[name]:
+        (folder / "cells.csv").write_text("x,y,z\n1.5,0.5,-0.3\n1.5,0.5,0.01\n-1.5,0.0,-0.1\n")
     return folder / "case.toml"
 
 
