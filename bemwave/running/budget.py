@@ -21,6 +21,9 @@ from bemwave.running.survey import Survey
 
 GIGABYTE = 1e9
 
+INSTANTS_PER_PERIOD = 20  # at gauges, and for loads and energy, in the shortest period of all
+_INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and write them: measured
+
 # bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
 _FIELDS, _PART, _SAMPLED = 380, 213, 120
 _OF_LIBRARIES = 0.12 * GIGABYTE
@@ -126,7 +129,7 @@ def budget(survey: Survey) -> Budget:
     assembly = _assembly_seconds(survey) + product * flops
     steps = _steps(survey)
     # a step and a state read off are about four products bound by memory, 8 bytes an entry
-    stepping = steps * 4 * nodes**2 * 8 / 1.5e10
+    stepping = steps * 4 * nodes**2 * 8 / 1.5e10 + instants_between(survey) * _INSTANT
     return Budget(triangles, nodes, memory, assembly, stepping)
 
 
@@ -141,7 +144,16 @@ def _grid_budget(survey: Survey, sheet: Sheet, panels: int, memory: float) -> Bu
     steps = _steps(survey)
     # the bed's images are sums over nodes, which cost little beside the fine sheet: measured
     a_panel = 0.005 if math.isinf(sheet.depth) else 0.01
-    return Budget(panels, sheet.size, memory, panels * a_panel, steps * 8.0 * pair)
+    stepping = steps * 8.0 * pair + instants_between(survey) * _INSTANT
+    return Budget(panels, sheet.size, memory, panels * a_panel, stepping)
+
+
+def instants_between(survey: Survey) -> int:
+    """How many intervals gauges, loads and energy have: of every record, whole ones."""
+    run = survey.case.run
+    records = round(run.duration / run.record_every)
+    wanted = survey.periods.kept / INSTANTS_PER_PERIOD
+    return records * max(1, math.ceil(run.record_every / wanted - 1e-9))
 
 
 def _steps(survey: Survey) -> float:

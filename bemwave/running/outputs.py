@@ -17,6 +17,7 @@ from bemwave.handoff import Handoff, Scene
 from bemwave.handoff.netcdf import SeriesFile
 from bemwave.records import BodiesFile, GaugesFile, HistoryFile, RunFolder
 from bemwave.records.energy import EnergyFile, Ledger, read_energy
+from bemwave.running.budget import instants_between
 from bemwave.running.driving import start_up
 from bemwave.running.faults import GrowthGuard
 from bemwave.running.frames_output import FramesOutput
@@ -26,7 +27,6 @@ from bemwave.running.survey import Survey
 
 Array = npt.NDArray[np.float64]
 
-INSTANTS_PER_PERIOD = 20  # at gauges, and for loads and energy, in the shortest period of all
 
 
 class Output(Protocol):
@@ -244,11 +244,8 @@ def recorded(survey: Survey) -> npt.NDArray[np.int64] | None:
 
 def fine_times(survey: Survey) -> Array:
     """Instants of gauges, loads and energy: every record, and enough between to draw waves."""
-    run = survey.case.run
-    records = round(run.duration / run.record_every)
-    wanted = survey.periods.kept / INSTANTS_PER_PERIOD
-    between = max(1, math.ceil(run.record_every / wanted - 1e-9))
-    return np.linspace(0.0, run.duration, records * between + 1)
+    return np.linspace(0.0, survey.case.run.duration, instants_between(survey) + 1)
+
 
 
 def dry_places(survey: Survey, xy: Array) -> npt.NDArray[np.bool_]:

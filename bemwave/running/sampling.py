@@ -15,7 +15,13 @@ from bemwave.handoff import box_of
 from bemwave.handoff.box import Box
 from bemwave.handoff.delivery import INSTANTS_PER_PERIOD, instants
 from bemwave.handoff.point_list import read_points
-from bemwave.running.budget import GIGABYTE, memory_allowed, memory_of, refuse_too_large
+from bemwave.running.budget import (
+    GIGABYTE,
+    instants_between,
+    memory_allowed,
+    memory_of,
+    refuse_too_large,
+)
 from bemwave.running.survey import Survey
 
 # of a hand-off or a frame, and of any file of records; more is a slip of the pen
@@ -77,9 +83,9 @@ def refuse_unfit(survey: Survey) -> None:
 def _refuse_endless(survey: Survey) -> None:
     """Raise InputError for more instants than any file should hold; counted, not yet made."""
     run, kept = survey.case.run, survey.periods.kept
-    often = {
+    often: dict[str, float] = {
         f"[run] record_every = {run.record_every:g} s": run.duration / run.record_every,
-        f"the shortest waves, of {kept:.3g} s,": INSTANTS_PER_PERIOD * run.duration / kept,
+        f"the shortest waves, of {kept:.3g} s,": instants_between(survey),
     }
     for entry in survey.case.handoff:
         every = kept / INSTANTS_PER_PERIOD if entry.every == "auto" else float(entry.every)
