@@ -36,6 +36,8 @@ from bemwave.kernels import panels as kernel
 
 Array = npt.NDArray[np.float64]
 
+BLOCK = 256  # rows of a layer that are copied at a time
+
 
 class PanelFlow:
     """The flow map of one boundary mesh, factored once.
@@ -304,8 +306,12 @@ def _add_images_left_out(
 
 
 def _sandwich(left: sparse.csr_matrix, layer: Array, right: sparse.csr_matrix) -> Array:
-    """left' layer right, dense."""
-    product: Array = left.T @ (right.T @ layer.T).T
+    """left' layer right, dense; by blocks of rows, for scipy copies what it is given transposed."""
+    half = np.empty((len(layer), right.shape[1]))
+    for start in range(0, len(layer), BLOCK):
+        rows = slice(start, start + BLOCK)
+        half[rows] = (right.T @ layer[rows].T).T
+    product: Array = left.T @ half
     return product
 
 

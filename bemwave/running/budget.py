@@ -27,6 +27,7 @@ _INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and writ
 # bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
 _FIELDS, _PART, _SAMPLED = 380, 213, 120
 _OF_LIBRARIES = 0.12 * GIGABYTE
+_ON_PANELS = 0.25 * GIGABYTE  # libraries and kernels together, measured
 _OF_KERNELS = 0.2 * GIGABYTE  # while they are loaded and integrate
 _POINTS = 192  # of hull panels that are integrated for at a time
 
@@ -48,22 +49,30 @@ class Budget:
 
 
 def memory_of(survey: Survey) -> tuple[int, int, float]:
-    """Triangles, surface unknowns and peak memory [bytes] of a surveyed case.
-
-    Counted in dense matrices of float64: single layers while the energy form is assembled, then
-    the flow map, its step and their temporaries.
-    """
+    """Triangles, surface unknowns and peak memory [bytes] of a surveyed case."""
     if survey.mesh is None:
         return 0, 0, 0.2 * GIGABYTE
     if survey.sheet is not None:
         return _on_grid(survey, survey.mesh, survey.sheet)
-    e = split(survey.mesh, survey.closed, survey.mirrors, survey.case.water.depth)
-    water, hull, free, nodes = len(e.water), len(e.hull), e.free, e.nodes
-    layers = 2 if survey.closed else 1
-    assembling = layers * water**2 + water * nodes + nodes**2 + water * hull * layers
-    assembling += 2 * hull**2 + (3 * water * nodes if survey.closed else 0)
-    stepping = 5 * free**2 + 3 * free * hull + 2 * e.below * free
-    return len(survey.mesh.triangles), free, 8.0 * max(assembling, stepping) + 0.3 * GIGABYTE
+    return _on_panels(survey, survey.mesh)
+
+
+def _on_panels(survey: Survey, mesh: SurfaceMesh) -> tuple[int, int, float]:
+    """The same on panels: dense matrices of float64, as many as `flow/panels.py` has at a time."""
+    e = split(mesh, survey.closed, survey.mirrors, survey.case.water.depth)
+    water, hull, nodes, free = len(e.water), len(e.hull), e.nodes, e.free
+    layers = 2 if survey.closed or survey.mirrors else 1  # whose images' weights differ
+    most = [
+        layers * water**2 + water * nodes + 2 * nodes**2,
+        2 * hull**2 + hull * nodes + 2 * nodes**2,
+        7 * free**2 + 2 * free * hull + e.below * (free + hull),  # the map of a step
+    ]
+    if survey.closed:
+        factor = water**2 + 2 * water * hull
+        most[1] += factor
+        most += [3 * water**2 + nodes**2]
+        most += [factor + 3 * water * nodes + 5 * hull * nodes + nodes**2]
+    return len(mesh.triangles), free, 8.0 * max(most) + _ON_PANELS
 
 
 def _on_grid(survey: Survey, mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int, float]:
