@@ -27,6 +27,8 @@ from bemwave.stepping.motion_file import FileMotion
 
 Array = npt.NDArray[np.float64]
 
+AT_ONCE = 1e-9  # s: the rates of a shorter start-up would overflow
+
 
 @dataclass(frozen=True)
 class Driving:
@@ -51,7 +53,7 @@ def start_up(survey: Survey) -> Ramp:
     """The ramp of the case: two of its longest or peak periods where it is left open."""
     asked = survey.case.run.ramp
     if asked != "auto":
-        return Ramp(float(asked))
+        return Ramp(float(asked) if float(asked) > AT_ONCE else 0.0)
     periods = survey.periods
     known = [p for p in (periods.peak, periods.longest) if math.isfinite(p)]
     return Ramp(2.0 * max(known, default=0.0))
