@@ -18,6 +18,7 @@ PANELS_PER_WAVELENGTH = 6.0
 
 SHORTEST_DRAWN = 2.5  # squares of the frames in the shortest wave added to them
 SHORTEST_GRAVITY_WAVE = 0.1  # m; below, surface tension matters (common practice, no source)
+LEAST_LOOP = 3.0  # energy periods: no frequency near that of the energy moves by over a sixth
 
 
 def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
@@ -27,7 +28,8 @@ def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
 
     Raises
     ------
-    InputError : if a table cannot be read, or waves cross a channel between two walls.
+    InputError : if a table cannot be read, the loop is too short for the sea, or waves cross a
+        channel between two walls.
     """
     water = case.water
     sea = Sea.still(water.depth, water.density, water.gravity)
@@ -42,6 +44,7 @@ def incident_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
             gravity=water.gravity,
             stream=number,
         )
+    _refuse_short_loop(sea, case)
     return _reflected(_looped(sea, case), mirrors)
 
 
@@ -76,6 +79,21 @@ def added_sea(case: Case, mirrors: tuple[Mirror, ...]) -> Sea:
 def _looped(sea: Sea, case: Case) -> Sea:
     loop = 0.0 if case.frames is None else case.frames.loop
     return sea.looped(loop) if loop > 0.0 and sea.count else sea
+
+
+def _refuse_short_loop(sea: Sea, case: Case) -> None:
+    """Frequencies are moved to multiples of 2 pi/loop: too few of these hold no sea."""
+    loop = 0.0 if case.frames is None else case.frames.loop
+    if loop == 0.0 or not sea.count:
+        return
+    period = 2.0 * math.pi * sea.moment(-1) / sea.moment(0)
+    if loop < LEAST_LOOP * period:
+        raise InputError(
+            f"[frames] loop = {loop:g} s was given for waves of {period:.3g} s (energy period); "
+            f"expected at least {LEAST_LOOP:g} of them, {LEAST_LOOP * period:.3g} s, or their "
+            "frequencies would move too far and too few be left: write a longer loop, or take it "
+            "out"
+        )
 
 
 def _reflected(sea: Sea, mirrors: tuple[Mirror, ...]) -> Sea:

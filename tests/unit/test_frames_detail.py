@@ -7,6 +7,7 @@ import pytest
 from scipy.integrate import quad
 
 from bemwave.case import Case
+from bemwave.errors import InputError
 from bemwave.frames import MovingSurface, grid_sheet
 from bemwave.frames.shelter import shelter
 from bemwave.running.frames_output import moving_surface, note_on, shares
@@ -169,6 +170,20 @@ def test_a_looping_sea_is_the_same_after_its_loop():
         again = wavenumber_of_frequency(sea.frequency, DEPTH, 9.80665)
         np.testing.assert_allclose(sea.wavenumber, again)
     assert incident_sea(looped, ()).significant_height == pytest.approx(HEIGHT)
+
+
+def test_a_loop_of_fewer_than_three_energy_periods_is_refused():
+    # the energy period 2 pi m(-1)/m(0) of the case's spectrum over its band, by quadrature
+    w = np.linspace(0.5 * PEAK, 2.0 * PEAK, 4001)
+    density = jonswap(w, HEIGHT, PERIOD, 3.3)
+    period = 2.0 * np.pi * np.trapezoid(density / w, w) / np.trapezoid(density, w)
+    assert incident_sea(case({"loop": 3.03 * period}), ()).count > 100
+    with pytest.raises(InputError, match=r"loop = 15.* expected at least 3 of them, 16.* longer"):
+        incident_sea(case({"loop": 2.97 * period}), ())
+    regular = {"kind": "regular", "height": 0.5, "period": 5.0}
+    assert incident_sea(case({"loop": 15.1}, waves=regular), ()).count == 1
+    with pytest.raises(InputError, match=r"waves of 5 s"):
+        incident_sea(case({"loop": 14.9}, waves=regular), ())
 
 
 def test_a_sea_of_one_slow_wave_still_moves_in_a_short_loop():
