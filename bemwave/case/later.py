@@ -32,7 +32,6 @@ def _not_yet(case: Case) -> Iterator[tuple[str, str]]:
         if body.thin:
             yield f"{where} thin", "take it out"
     yield from _handoff_not_yet(case)
-    yield from _frames_not_yet(case)
 
 
 def _handoff_not_yet(case: Case) -> Iterator[tuple[str, str]]:
@@ -47,10 +46,3 @@ def _handoff_not_yet(case: Case) -> Iterator[tuple[str, str]]:
         for switch in ("average", "balance"):
             if getattr(handoff, switch):
                 yield f"{where} {switch} = true", "take it out"
-
-
-def _frames_not_yet(case: Case) -> Iterator[tuple[str, str]]:
-    if case.frames is None:
-        return
-    if case.frames.waterline == "skirt" and case.frames.region is None:
-        yield '[frames] waterline = "skirt" without a region', 'give a region, or write "cut"'

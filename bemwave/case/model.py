@@ -247,9 +247,7 @@ class Case(Table):
         run, surface = info.data.get("run"), info.data.get("surface")
         if frames is None or run is None or surface is None:
             return frames
-        waterline = "cut" if frames.region is None else "skirt"
-        defaults = {"end": run.duration, "spacing": surface.spacing, "waterline": waterline}
-        return _filled(frames, defaults)
+        return _filled(frames, {"end": run.duration, "spacing": surface.spacing})
 
     @model_validator(mode="after")
     def _check(self) -> Self:

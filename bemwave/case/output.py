@@ -126,7 +126,7 @@ class Handoff(Table):
 class Frames(Table):
     """The surface as meshes for a renderer.
 
-    Filled in from the case: `end`, `spacing`, and `waterline`, "skirt" with a region.
+    Filled in from the case: `end` and `spacing`.
     """
 
     fps: Positive = 24.0
@@ -143,14 +143,13 @@ class Frames(Table):
     detail: Flag = True
     horizontal_displacement: Flag = False
     shading: Flag = False
-    waterline: Literal["skirt", "cut"] = "cut"
+    waterline: Literal["skirt", "cut"] = "skirt"
     loop: NotNegative = 0.0
     displacement_maps: Flag = False
 
     @model_validator(mode="after")
     def _check(self) -> Self:
-        cut = self.waterline == "cut" and "waterline" in self.model_fields_set
-        if self.displacement_maps and (self.region is None or cut):
+        if self.displacement_maps and (self.region is None or self.waterline == "cut"):
             given = "no region" if self.region is None else 'waterline = "cut"'
             text = f'got true with {given}, expected a region of squares: waterline = "skirt"'
             refuse([Fault(("displacement_maps",), text)])

@@ -10,19 +10,22 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from bemwave.errors import InputError, NotYetError
+from bemwave.case.output import Frames as Entry
+from bemwave.errors import InputError
 from bemwave.geometry.hull import Hull
 from bemwave.geometry.inside import inside
 from bemwave.geometry.outline import Rectangle
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.topology import attached
 from bemwave.geometry.water_surface import water_surface
+from bemwave.geometry.waterplane import WATERPLANE, closed_bodies
 
 Array = NDArray[np.float64]
 Bools = NDArray[np.bool_]
 Ints = NDArray[np.int64]
 
-SKIRT_CELLS = 3  # how far the surface goes on under a hull
+SKIRT_CELLS = 3  # squares or panels: how far the surface goes on under a hull
 BLOCK = 512  # places whose distances are held at a time
 
 
@@ -57,15 +60,44 @@ class Sheet:
     squares: Squares | None = None
 
 
-def solver_sheet(water: SurfaceMesh, waterline: Literal["skirt", "cut"]) -> Sheet:
-    """Make a sheet of the solver's own water panels: its waterlines are holes."""
-    if waterline == "skirt":
-        raise NotYetError(
-            'not yet: [frames] waterline = "skirt" without a region; give [frames] region and '
-            'spacing, or write waterline = "cut"'
-        )
-    plan = water.points[:, :2].copy()
-    return Sheet(water, np.zeros(len(plan), dtype=bool), plan)
+def solver_sheet(
+    water: SurfaceMesh, waterline: Literal["skirt", "cut"], hulls: Sequence[Hull] = ()
+) -> Sheet:
+    """Make a sheet of the solver's own water panels; waterlines are holes in it, or have skirts.
+
+    Raises
+    ------
+    InputError : if a waterline is too narrow for a skirt.
+    """
+    lines = [polygon for hull in hulls for polygon in hull.polygons()]
+    mesh = water
+    for skirt in _skirts(hulls) if waterline == "skirt" else ():
+        mesh, _ = attached(mesh, skirt, np.ones(len(skirt.points), dtype=bool))
+    plan = mesh.points[:, :2].copy()
+    under = np.arange(len(plan)) >= len(water.points)
+    if under.any():
+        plan[under] = nearest_on(lines, plan[under])
+    return Sheet(mesh, under, plan)
+
+
+def _skirts(hulls: Sequence[Hull]) -> list[SurfaceMesh]:
+    return [_skirt(hull) for hull in hulls if hull.waterlines]
+
+
+def _skirt(hull: Hull) -> SurfaceMesh:
+    """What of a waterplane is near its waterline, in triangles as large as the edges there."""
+    try:
+        closed = closed_bodies([hull])
+    except InputError as error:
+        raise InputError(f'{error}, or write [frames] waterline = "cut"') from None
+    plane = closed.keep(closed.in_part(WATERPLANE)).flipped()
+    lines, plan = hull.polygons(), plane.points[:, :2]
+    edge = np.median(
+        [np.linalg.norm(e) for line in lines for e in np.diff(line, axis=0, append=line[:1])]
+    )
+    distance = np.linalg.norm(nearest_on(lines, plan) - plan, axis=1)
+    near = (distance < SKIRT_CELLS * edge)[plane.triangles]
+    return plane.keep(np.asarray(near.any(axis=1))).renamed("water")
 
 
 def cut_sheet(
@@ -83,14 +115,29 @@ def cut_sheet(
     ------
     InputError : if a waterline crosses the region's edge.
     """
-    low, high = np.array(centre) - np.array(size) / 2, np.array(centre) + np.array(size) / 2
-    region = Rectangle(low[0], high[0], low[1], high[1])
-    seen = [hull for hull in hulls if _reaches_into(hull, region)]
-    mesh = water_surface(region, spacing, seen, spacing)
+    region = _rectangle(centre, size)
+    mesh = water_surface(region, spacing, _within(region, hulls), spacing)
     plan = mesh.points[:, :2].copy()
     if solved_in is not None:
         plan[~solved_in(plan)] = np.nan
     return Sheet(mesh, np.zeros(len(plan), dtype=bool), plan)
+
+
+def _rectangle(centre: tuple[float, float], size: tuple[float, float]) -> Rectangle:
+    (x, y), (across, up) = centre, size
+    return Rectangle(x - across / 2, x + across / 2, y - up / 2, y + up / 2)
+
+
+def _within(region: Rectangle, hulls: Sequence[Hull]) -> list[Hull]:
+    return [hull for hull in hulls if _reaches_into(hull, region)]
+
+
+def refuse_waterlines(entry: Entry, hulls: Sequence[Hull]) -> None:
+    """Raise InputError for waterlines that cannot be drawn as [frames] asks."""
+    if entry.region is None and entry.waterline == "skirt":
+        _skirts(hulls)
+    if entry.region is not None and entry.waterline == "cut":
+        _within(_rectangle(entry.region.centre, entry.region.size), hulls)
 
 
 def _reaches_into(hull: Hull, region: Rectangle) -> bool:

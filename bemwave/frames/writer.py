@@ -224,6 +224,6 @@ def sheet_of(
     See `grid_sheet` for `solved_in`.
     """
     if entry.region is None:
-        return solver_sheet(water, entry.waterline)
+        return solver_sheet(water, entry.waterline, hulls)
     make = cut_sheet if entry.waterline == "cut" else grid_sheet
     return make(entry.region.centre, entry.region.size, entry.spacing, hulls, solved_in)

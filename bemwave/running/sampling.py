@@ -10,7 +10,7 @@ from numba import get_num_threads
 
 from bemwave.errors import InputError
 from bemwave.flow.images import make_images
-from bemwave.frames.writer import frame_times, need_libraries
+from bemwave.frames import frame_times, need_libraries, refuse_waterlines
 from bemwave.handoff import box_of
 from bemwave.handoff.box import Box
 from bemwave.handoff.delivery import INSTANTS_PER_PERIOD, instants
@@ -62,6 +62,7 @@ def refuse_unfit(survey: Survey) -> None:
                 "[frames] was given without a region on route grid, which has no panels to draw; "
                 "expected [frames] region = { size = [along x, along y] } and a spacing"
             )
+        refuse_waterlines(survey.case.frames, survey.hulls)
     asked = list(sampled(survey))
     for one in asked:
         if one.points > MOST_POINTS:

@@ -21,7 +21,6 @@ LATER: dict[str, dict[str, Any]] = {
     'layout = "lattice"': {"handoff": [{"box": BOX, "layout": "lattice"}]},
     "average": {"handoff": [{"box": BOX, "average": True}]},
     "balance": {"handoff": [{"box": BOX, "balance": True}]},
-    'waterline = "skirt" without a region': {"frames": {"waterline": "skirt"}},
 }
 
 

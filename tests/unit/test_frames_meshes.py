@@ -5,8 +5,9 @@ import numpy as np
 import pytest
 import pyvista
 
+from bemwave.case import Case
 from bemwave.case.output import Frames as Entry
-from bemwave.errors import InputError, NotYetError
+from bemwave.errors import InputError
 from bemwave.frames import (
     DrawnBody,
     FrameWriter,
@@ -18,9 +19,13 @@ from bemwave.frames import (
 )
 from bemwave.geometry import forms
 from bemwave.geometry.hull import place_hull
+from bemwave.geometry.outline import Rectangle
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.geometry.pose import Pose
 from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.topology import boundary_loops
+from bemwave.geometry.water_surface import water_surface
+from bemwave.running import run
 from bemwave.waves import Sea
 
 INCIDENT = Sea.of([1.1], [0.3], [0.5], [0.2], depth=20.0)
@@ -142,8 +147,42 @@ def test_without_a_region_the_solver_s_panels_are_drawn(tmp_path, flow_of, state
     got = meshio.read(tmp_path / "surface_00001.ply")
     np.testing.assert_array_equal(got.cells_dict["triangle"], PLANE.triangles)
     np.testing.assert_allclose(got.points[:, :2], PLANE.points[:, :2])
-    with pytest.raises(NotYetError, match="without a region"):
-        sheet_of(Entry(waterline="skirt"), PLANE, [], None)
+
+
+@pytest.mark.usefixtures("needs_gmsh")
+def test_without_a_region_the_panels_go_on_under_a_hull_as_a_skirt_too():
+    pontoon = place_hull("pontoon", forms.box(10.0, 8.0, 2.0, 0.5), position=(3.0, -2.0))
+    water = water_surface(Rectangle(-12.0, 18.0, -14.0, 10.0), 1.5, [pontoon], 0.5)
+    cut = sheet_of(Entry(waterline="cut"), water, [pontoon], None)
+    np.testing.assert_array_equal(cut.mesh.triangles, water.triangles)
+    sheet = sheet_of(Entry(), water, [pontoon], None)
+    count = len(water.points)  # the panels' points come first and stay
+    np.testing.assert_array_equal(sheet.mesh.points[:count], water.points)
+    assert sheet.under_hull.tolist() == [k >= count for k in range(len(sheet.mesh.points))]
+    assert (sheet.mesh.area_vectors[:, 2] > 0.0).all()
+    # one hole is left, within the waterplane: nothing gapes at the waterline
+    loops = [sheet.mesh.points[loop, :2] for loop in boundary_loops(sheet.mesh.triangles)]
+    inner = min(loops, key=lambda loop: np.ptp(loop, axis=0).max())
+    assert len(loops) == 2
+    half = np.abs(inner - [3.0, -2.0]).max(axis=0)
+    assert (half < np.array([5.0, 4.0]) - 2 * 0.5).all()
+    assert (half > np.array([5.0, 4.0]) - 5 * 0.5).all()
+    for place, at in zip(sheet.mesh.points[count:, :2], sheet.solved_at[count:], strict=True):
+        off = np.array([5.0, 4.0]) - np.abs(place - [3.0, -2.0])  # from the sides
+        assert np.linalg.norm(at - place) == pytest.approx(off.min())
+
+
+def test_a_waterline_that_cannot_be_drawn_is_refused_before_anything_is_written(tmp_path):
+    case = Case(
+        water={"depth": 20.0},
+        surface={"size": [24.0, 20.0], "spacing": 2.0},
+        body=[{"name": "buoy", "form": "cylinder", "radius": 2.0, "draught": 2.0}],
+        frames={"waterline": "cut", "region": {"size": [20.0, 3.0]}},
+        run={"duration": 4.0},
+    )
+    with pytest.raises(InputError, match='cuts through the waterline of "buoy"'):
+        run(case, tmp_path / "out")
+    assert not list(tmp_path.iterdir())
 
 
 def test_a_moving_body_has_a_file_for_each_frame_and_a_fixed_one_has_one(
