@@ -178,7 +178,7 @@ def test_a_loop_of_fewer_than_three_energy_periods_is_refused():
     density = jonswap(w, HEIGHT, PERIOD, 3.3)
     period = 2.0 * np.pi * np.trapezoid(density / w, w) / np.trapezoid(density, w)
     assert incident_sea(case({"loop": 3.03 * period}), ()).count > 100
-    with pytest.raises(InputError, match=r"loop = 16.* expected at least 3 of them, 16.7 s.* longer"):
+    with pytest.raises(InputError, match=r"loop = 16.* expected at least 3 of them, 16.7 s"):
         incident_sea(case({"loop": 2.97 * period}), ())
     regular = {"kind": "regular", "height": 0.5, "period": 5.0}
     assert incident_sea(case({"loop": 15.1}, waves=regular), ()).count == 1
