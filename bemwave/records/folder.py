@@ -34,6 +34,11 @@ class RunFolder:
         return self.path / "mesh.vtp"
 
     @property
+    def riders(self) -> Path:
+        """The bodies that ride the surface: they have no panels."""
+        return self.path / "riders.vtp"
+
+    @property
     def sea(self) -> Path:
         """The incident waves."""
         return self.path / "sea.nc"

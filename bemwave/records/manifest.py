@@ -67,7 +67,8 @@ class Manifest:
     mirrors : walls that are images, as (axis, position) pairs.
     sheet : west and south corner, spacing [m] and shape of the grid, on that route.
     part_names : names of the parts of mesh.vtp, in order.
-    bodies : where each body rests, by name; see `Rest`.
+    bodies : where each body that the water flows round rests, by name; see `Rest`.
+    riders : the same of those that ride the surface.
     shortest_period, peak_period : s, of what the field holds.
     status : how far the run is.
     started, ended : times of day, UTC.
@@ -86,6 +87,7 @@ class Manifest:
     peak_period: float
     sheet: Mapping[str, Any] | None = None
     bodies: Mapping[str, Rest] = field(default_factory=dict)
+    riders: Mapping[str, Rest] = field(default_factory=dict)
     status: Status = "running"
     versions: Mapping[str, str] = field(default_factory=lambda: versions_now())
     started: str = field(default_factory=lambda: now())
@@ -132,7 +134,8 @@ def read_manifest(path: Path) -> Manifest:
         content["part_names"] = tuple(content["part_names"])
         for period in _PERIODS:
             content[period] = math.inf if content[period] is None else content[period]
-        content["bodies"] = {name: Rest(**rest) for name, rest in content["bodies"].items()}
+        for group in ("bodies", "riders"):
+            content[group] = {name: Rest(**rest) for name, rest in content[group].items()}
         return Manifest(**content)
     except FileNotFoundError:
         raise InputError(

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
@@ -31,7 +31,7 @@ from bemwave.handoff.netcdf import read_times, reading
 from bemwave.handoff.plan import grid_quadrature, water_quadrature
 from bemwave.records.folder import RunFolder, checksums
 from bemwave.records.history import History, cubic_in_time
-from bemwave.records.manifest import Manifest, read_manifest
+from bemwave.records.manifest import Manifest, Rest, read_manifest
 from bemwave.records.series import in_radians
 from bemwave.waves import Sea
 from bemwave.waves.at_points import SeaAtPoints
@@ -149,10 +149,16 @@ class Run:
     @cached_property
     def hulls(self) -> tuple[Hull, ...]:
         """The bodies that the water flows round, at rest, in the order of the case."""
-        return tuple(
-            rest.hull(name, self.mesh.keep(self.mesh.in_part(name)))
-            for name, rest in self.manifest.bodies.items()
-        )
+        return _at_rest(self.manifest.bodies, self.mesh)
+
+    @cached_property
+    def riders(self) -> tuple[Hull, ...]:
+        """The bodies that ride the surface and make no waves, at rest, in the order of the case."""
+        riders = self.manifest.riders
+        if not riders:
+            return ()
+        mesh = read_mesh(self._whole(self.folder.riders))
+        return _at_rest(riders, SurfaceMesh(mesh.points, mesh.triangles, mesh.part, tuple(riders)))
 
     @cached_property
     def scene(self) -> Scene:
@@ -299,6 +305,11 @@ class Run:
                     f"the field was asked for at ({x:g}, {y:g}), outside the useful water of "
                     f"{self.folder.path}; expected a place inside [surface] size"
                 )
+
+
+def _at_rest(bodies: Mapping[str, Rest], mesh: SurfaceMesh) -> tuple[Hull, ...]:
+    """Hulls of a mesh that has a part for each of them."""
+    return tuple(rest.hull(name, mesh.keep(mesh.in_part(name))) for name, rest in bodies.items())
 
 
 def open_run(path: str | Path) -> Run:

@@ -93,7 +93,7 @@ def _map(
         )
         if run.case.surface.outline == "circle":
             _clip(shown, axes, run)
-        for hull in run.hulls:
+        for hull in run.hulls + run.riders:
             for loop in hull.polygons():
                 axes.fill(*loop.T, color=light("hull"), linewidth=0.0, zorder=3)
         if guides:

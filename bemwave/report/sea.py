@@ -79,6 +79,9 @@ def _view_notes(material: Material, film: Film) -> Iterator[str]:
             "Hulls: red under still water, as solved. The grey walls above are only drawn: the "
             "solver knows no shape there."
         )
+    if material.run.riders:
+        names = ", ".join(hull.name for hull in material.run.riders)
+        yield f"Only riding the surface, making no waves: {names}."
     period = material.run.manifest.peak_period
     interval = float(np.diff(film.times).max()) if len(film.times) > 1 else 0.0
     if interval > period / 8.0:

@@ -19,7 +19,7 @@ def setup(material: Material) -> Section:
         Table("The run.", ("", ""), list(_run_rows(material))),
         Table("The water.", ("", ""), list(_water_rows(run))),
     ]
-    if run.hulls:
+    if run.case.body:
         blocks.append(_body_table(run))
     if run.manifest.inputs:
         rows = [(name, digest) for name, digest in run.manifest.inputs.items()]
@@ -96,7 +96,8 @@ def _water_rows(run: Run) -> Iterator[tuple[str, str]]:
 
 def _body_table(run: Run) -> Table:
     rows = []
-    for body, hull in zip(run.case.solved_bodies, run.hulls, strict=False):
+    bodies = run.case.solved_bodies + run.case.riding_bodies
+    for body, hull in zip(bodies, run.hulls + run.riders, strict=True):
         here = hull.hydrostatics
         rows.append(
             (

@@ -40,7 +40,7 @@ def water_json(run: Run, film: Film, limit: float, bodies: Bodies | None) -> str
         "heights": packed(heights),
         "shown": packed(film.inside.astype("u1")),
         "colours": packed(table(WATER)),
-        "bodies": [_body(hull, film, limit, bodies) for hull in run.hulls],
+        "bodies": [_body(hull, film, limit, bodies) for hull in run.hulls + run.riders],
         "boxes": list(_boxes(run)),
         "gauges": [{"name": g.name, "place": list(g.position)} for g in run.case.gauge],
     }

@@ -22,6 +22,7 @@ from bemwave.checks import judge
 from bemwave.errors import InputError, RunError
 from bemwave.flow.sheet import Sheet
 from bemwave.flow.state import SurfaceState
+from bemwave.geometry.surface_mesh import joined
 from bemwave.geometry.vtp_files import write_vtp
 from bemwave.records import (
     Manifest,
@@ -167,10 +168,14 @@ def _begin(
         shortest_period=surveyed.periods.kept,
         peak_period=surveyed.periods.peak,
         bodies={hull.name: Rest.of(hull) for hull in surveyed.hulls},
+        riders={hull.name: Rest.of(hull) for hull in surveyed.riders},
         notes=notes,
     )
     with whole(folder.mesh) as beside:
         write_vtp(mesh, beside)
+    if surveyed.riders:
+        with whole(folder.riders) as beside:
+            write_vtp(joined([hull.mesh for hull in surveyed.riders]), beside)
     with whole(folder.sea) as beside:
         write_sea(surveyed.sea, beside)
     if before is not None:

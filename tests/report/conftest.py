@@ -17,12 +17,20 @@ BUOY = {
     "attitude": "forced",
     "forced": {"mode": "heave", "amplitude": 0.1, "period": 2.0},
 }
+MARK = {
+    "name": "mark",
+    "form": "cylinder",
+    "radius": 0.3,
+    "draught": 0.3,
+    "position": [2.0, 1.2],
+    "attitude": "follow",
+}
 CASE = {
     "title": TITLE,
     "water": {"depth": "deep"},
     "waves": [{"kind": "regular", "height": 0.2, "period": 2.0}],
     "surface": {"size": [7.0, 5.0], "spacing": 0.6},
-    "body": [BUOY],
+    "body": [MARK, BUOY],
     "run": {"duration": 6.0, "record_every": 0.1},
     "gauge": [{"name": "ahead", "position": [-2.0, 0.0]}, {"name": "over", "position": [0.0, 0.0]}],
     "handoff": [

@@ -156,15 +156,25 @@ def test_the_view_holds_the_runs_own_surface(page: Path, finished: Path) -> None
 
 def test_a_hull_moves_as_it_moved(page: Path, finished: Path) -> None:
     water = water_of(page)
-    (body,) = water["bodies"]
+    body, rider = water["bodies"]
     poses = np.array(body["poses"]).reshape(-1, 3, 4)
     with netCDF4.Dataset(finished / "bodies.nc") as file:
         heave = np.interp(water["times"], file["time"][:], file["motion"][:, 0, 2])
     np.testing.assert_allclose(poses[:, 2, 3], heave, atol=1e-5)
     np.testing.assert_allclose(poses[:, :, :3], np.broadcast_to(np.eye(3), (len(poses), 3, 3)))
     points = array(body["points"], "<f4").reshape(-1, 3)
-    hull = bemwave.open_run(finished).hulls[0]
+    run = bemwave.open_run(finished)
+    (hull,), (mark,) = run.hulls, run.riders
     np.testing.assert_allclose(points, hull.mesh.points, atol=1e-6)
+    # a body that rides the surface goes up and down with the water round it
+    assert (body["name"], rider["name"]) == (hull.name, mark.name) == ("buoy", "mark")
+    assert mark.polygons()[0].mean(axis=0) == pytest.approx([2.0, 1.2], abs=1e-6)
+    points = array(rider["points"], "<f4").reshape(-1, 3)
+    np.testing.assert_allclose(points, mark.mesh.points, atol=1e-6)
+    poses = np.array(rider["poses"]).reshape(-1, 3, 4)
+    heave = poses[:, 2] @ [2.0, 1.2, 0.0, 1.0]  # where its middle goes
+    level = run.elevation([1.65, 2.35], 1.2, water["times"]).mean(axis=1)
+    assert np.std(heave - level) < 0.1 * np.std(level)
 
 
 def test_the_command_says_where_the_page_is(own: Path, capsys: pytest.CaptureFixture[str]) -> None:
