@@ -14,6 +14,7 @@ from bemwave.records.series import MODES
 from bemwave.report.colours import light
 from bemwave.report.figures import Figure, drawn
 from bemwave.report.series import Bodies, Delivery, Gauge
+from bemwave.report.words import number
 
 Array = npt.NDArray[np.float64]
 
@@ -83,12 +84,12 @@ def _gauges(start: int, gauges: Sequence[Gauge], since: float, folder: Path) -> 
 
 
 def load_figures(
-    number: int, name: str, bodies: Bodies, since: float, folder: Path
+    place: int, name: str, bodies: Bodies, since: float, folder: Path
 ) -> Iterator[Figure]:
     """Forces and moments on one body; none of one that rides the surface."""
-    if not np.isfinite(bodies.forces["force"][:, number]).any():
+    if not np.isfinite(bodies.forces["force"][:, place]).any():
         return
-    parts = {key: values[:, number] for key, values in bodies.forces.items() if key in _FORCE_NAMES}
+    parts = {key: values[:, place] for key, values in bodies.forces.items() if key in _FORCE_NAMES}
     parts = {key: values for key, values in parts.items() if np.nan_to_num(values).any()}
     for first, kind, unit in ((0, "forces", "N"), (3, "moments", "N m")):
         modes = range(first, first + 3)
@@ -96,32 +97,35 @@ def load_figures(
         scale, prefixed = _scale(float(largest), unit)
         rows = {k: v[:, modes] / scale for k, v in parts.items()}
         yield _three(
-            f"{kind}-{number + 1}",
+            f"{kind}-{place + 1}",
             f"{kind.capitalize()} of the water on {name}, about its centre of mass, in its axes.",
             bodies.times,
             rows,
             [f"{MODES[m]}, {prefixed}" for m in modes],
             since,
             folder,
+            "The largest values are in the table.",
         )
 
 
 def motion_figures(
-    number: int, name: str, bodies: Bodies, since: float, folder: Path
+    place: int, name: str, bodies: Bodies, since: float, folder: Path
 ) -> Iterator[Figure]:
     """Motions of one body, where it moves."""
-    motion = bodies.motion[:, number]
+    motion = bodies.motion[:, place]
+    late = np.abs(motion[bodies.times >= since])
     for first, kind, unit in ((0, "shifts", "m"), (3, "turns", "degrees")):
         modes = range(first, first + 3)
         if np.nan_to_num(motion[:, modes]).any():
             yield _three(
-                f"{kind}-{number + 1}",
+                f"{kind}-{place + 1}",
                 f"How {name} moves from its mean position: {kind}.",
                 bodies.times,
                 {"force": motion[:, modes]},
                 [f"{MODES[m]}, {unit}" for m in modes],
                 since,
                 folder,
+                f"Up to {number(float(np.nanmax(late[:, modes], initial=0.0)))} {unit}.",
             )
 
 
@@ -133,6 +137,7 @@ def _three(
     labels: Sequence[str],
     since: float,
     folder: Path,
+    told: str,
 ) -> Figure:
     """Three rows over one time axis, each with the same lines."""
 
@@ -150,7 +155,7 @@ def _three(
             handles, texts = axes.get_legend_handles_labels()
             sheet.legend(handles, texts, loc="outside upper left", ncols=3)
 
-    return drawn(name, caption, "The largest values are in the table.", draw, folder, 4.2)
+    return drawn(name, caption, told, draw, folder, 4.2)
 
 
 def balance_figure(delivery: Delivery, folder: Path) -> Figure:
