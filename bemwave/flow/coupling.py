@@ -44,6 +44,7 @@ DEEP = 2.0  # spacings under which hulls see no cells, only nodes
 ACCURACY = 1e-5  # of the few rows that stand for all
 SAMPLE = 1200  # nodes of each zone by which they are chosen
 FEW = 8  # columns of a product
+POINTS = 64  # of hulls that are integrated for at a time
 AT_ONCE = 2_000_000  # dipoles at points that are held in memory
 
 
@@ -150,18 +151,18 @@ class Coupling:
         used = np.asarray(stencil @ owned.astype(float)) > 0.0
         triangles = triangles[used[triangles].any(axis=1)]
         fine = np.column_stack([plan, np.zeros(len(plan))])
-        to_fine = sparse.csr_matrix(_hat_projection(nx + 1, ny + 1) @ stencil[:, self.close])
+        to_fine = _hat_projection(nx + 1, ny + 1) @ stencil[:, self.close]
         deep = self._points.at[:, 2] < -DEEP * sheet.spacing
         # deep down, and so below the bed's images, the sum over nodes is as good,
         # exp(-2 pi depth/spacing), and quicker
         whole = sheet.depth < DEEP * sheet.spacing
         shallow, nodes = np.flatnonzero(~deep), sheet.xy[self.close]
-        rows = self._points.of_triangles(fine, triangles, shallow, whole)
-        maps = np.asarray((to_fine.T @ rows.T).T)
+        weights = sparse.csr_matrix(to_fine.T)
+        maps = self._points.of_triangles(fine, triangles, weights, shallow, whole)
         maps += self._points.of_nodes(nodes, np.flatnonzero(deep)) * sheet.spacing**2
         if not whole:
             maps += self._points.of_nodes(nodes, shallow, mirrored=True) * sheet.spacing**2
-        return np.ascontiguousarray(maps)
+        return maps
 
 
 @dataclass(frozen=True)
@@ -242,22 +243,24 @@ class _Rule:
         hats = self.by_hat.shape[0]
         return np.append(np.zeros(hats), np.asarray(self.by_panel.sum(axis=1)))
 
-    def of_triangles(self, nodes: Array, triangles: Ints, used: Ints, whole: bool) -> Array:
-        """(hull nodes + panels, n) `pull` of hats on triangles of the surface, at some points.
+    def of_triangles(
+        self, nodes: Array, triangles: Ints, weights: sparse.csr_matrix, used: Ints, whole: bool
+    ) -> Array:
+        """(hull nodes + panels, n) `pull` of sums of hats on triangles, at some points.
 
-        `whole`: with the bed's images.
+        `weights` (n, nodes): of the hats in each sum. `whole`: with the bed's images.
         """
         around = self._around if whole else self._here
         table = kernel.pack(nodes[triangles])
         curls = hat_curls(nodes[triangles], table)
-        result = np.zeros((self._weights.shape[0], len(nodes)))
-        for start in range(0, len(used), 192):
-            part = used[start : start + 192]
+        result = np.zeros((self._weights.shape[0], weights.shape[0]))
+        for start in range(0, len(used), POINTS):
+            part = used[start : start + POINTS]
             at = np.ascontiguousarray(self.at[part])
             velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *around)[1]
             slope = np.einsum("pcn,pc->pn", velocity, self.normal[part])
             level = kernel.potential_at(at, table, triangles, len(nodes), *around)[1]
-            self._add(result, part, slope, level)
+            self._add(result, part, (weights @ slope.T).T, (weights @ level.T).T)
         return result
 
     def of_nodes(self, at: Array, used: Ints, mirrored: bool = False) -> Array:
@@ -267,8 +270,8 @@ class _Rule:
         """
         around = self._mirrored if mirrored else self._around
         result = np.zeros((self._weights.shape[0], len(at)))
-        for start in range(0, len(used), 192):
-            part = used[start : start + 192]
+        for start in range(0, len(used), POINTS):
+            part = used[start : start + POINTS]
             maps = _surface_dipoles(self.at[part], self.normal[part], at, around)
             self._add(result, part, *maps)
         return result

@@ -10,11 +10,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from bemwave.errors import InputError
-from bemwave.flow.coupling import CLOSE, FINER
+from bemwave.flow.coupling import AT_ONCE, CLOSE, FINER, POINTS
 from bemwave.flow.elements import split
 from bemwave.flow.images import make_images
 from bemwave.flow.sheet import Sheet
 from bemwave.geometry.surface_mesh import SurfaceMesh
+from bemwave.geometry.waterplane import WATERPLANE
 from bemwave.running.route import MOST_TRIANGLES
 from bemwave.running.solution import STEPS_PER_PERIOD
 from bemwave.running.survey import Survey
@@ -28,8 +29,8 @@ _INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and writ
 _FIELDS, _PART, _SAMPLED = 380, 213, 120
 _OF_LIBRARIES = 0.12 * GIGABYTE
 _ON_PANELS = 0.25 * GIGABYTE  # libraries and kernels together, measured
-_OF_KERNELS = 0.2 * GIGABYTE  # while they are loaded and integrate
-_POINTS = 192  # of hull panels that are integrated for at a time
+_ASSEMBLING = 0.295 * GIGABYTE  # libraries and kernels together on the grid, measured
+_FEW = 170  # rows that stand for all
 
 
 @dataclass(frozen=True)
@@ -78,21 +79,23 @@ def _on_panels(survey: Survey, mesh: SurfaceMesh) -> tuple[int, int, float]:
 def _on_grid(survey: Survey, mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int, float]:
     """The same on the grid: fields of its nodes, and dense maps between hulls and nodes near.
 
-    These are made from a finer sheet round the hulls, which takes more than they do.
+    These are made from a finer sheet round the hulls, some points of hulls at a time.
     """
-    case, panels, nodes = survey.case, len(mesh.triangles), len(mesh.points)
+    case, triangles, nodes = survey.case, len(mesh.triangles), len(mesh.points)
+    hull = mesh.triangles[mesh.part != mesh.part_names.index(WATERPLANE)]
+    panels, rows = len(hull), len(hull) + len(np.unique(hull))
     near = 2.0 * CLOSE[1] + np.ptp(mesh.points[:, :2], axis=0) / sheet.spacing if nodes else 0.0
     close = float(np.prod(near))
-    dense = 3 * panels**2 + 4 * nodes**2 + (panels + nodes) * close
-    fine = FINER**2 * close
-    # two copies, of which waterplanes have no part; measured
-    assembling = 1.3 * (panels + nodes) * fine + 5 * _POINTS * fine + 3 * panels**2 + 4 * nodes**2
+    fine = FINER**2 * float(np.prod(near + 2.0)) if nodes else 0.0
+    held = nodes**2 + nodes * panels + rows * (close + _FEW)
+    parts = max(15 * POINTS * fine, 10 * AT_ONCE if nodes else 0)  # at a time; measured
+    assembling = max(2 * triangles**2, held + 2 * nodes**2 + nodes * panels + parts)
     scattered = bool(survey.scattered.count or case.hump or case.pressure)
     moved = any(body.attitude not in ("fixed", "follow") for body in case.body)
     sampled = bool(case.gauge or case.handoff or case.frames)
     a_node = _FIELDS + _PART * max(1, scattered + moved) + _SAMPLED * sampled
-    most = max(8.0 * assembling + _OF_KERNELS, 8.0 * dense + a_node * sheet.size)
-    return panels, sheet.size, most + _OF_LIBRARIES
+    running = 8.0 * held + a_node * sheet.size + _OF_LIBRARIES
+    return triangles, sheet.size, max(8.0 * assembling + _ASSEMBLING, running)
 
 
 def memory_allowed(survey: Survey) -> float:
