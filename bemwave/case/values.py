@@ -28,10 +28,10 @@ Number = Annotated[float, number, expecting("a number")]
 Positive = Annotated[float, positive, expecting("a number above 0")]
 NotNegative = Annotated[float, not_negative, expecting("a number of 0 or more")]
 Count = Annotated[
-    int, Field(strict=True, ge=1, le=10**6), expecting("a whole number from 1 to a million")
+    int, Field(strict=True, ge=1, le=10**5), expecting("a whole number from 1 to 100000")
 ]
 Whole = Annotated[
-    int, Field(strict=True, ge=0, le=10**9), expecting("a whole number from 0 to 1e9")
+    int, Field(strict=True, ge=0, le=10**9), expecting("a whole number from 0 to 1000000000")
 ]
 Flag = Annotated[bool, Field(strict=True), expecting("true or false")]
 Text = Annotated[str, Field(strict=True), expecting("a text in quotes")]

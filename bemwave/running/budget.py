@@ -23,6 +23,7 @@ from bemwave.running.survey import Survey
 GIGABYTE = 1e9
 
 INSTANTS_PER_PERIOD = 20  # at gauges, and for loads and energy, in the shortest period of all
+_COMPONENT = 1e-8  # s, of a component of the sea at one of three points of a hull's panel: measured
 _INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and write them: measured
 
 # bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
@@ -141,7 +142,7 @@ def budget(survey: Survey) -> Budget:
     assembly = _assembly_seconds(survey) + product * flops
     steps = _steps(survey)
     # a step and a state read off are about four products bound by memory, 8 bytes an entry
-    stepping = steps * 4 * nodes**2 * 8 / 1.5e10 + instants_between(survey) * _INSTANT
+    stepping = steps * 4 * nodes**2 * 8 / 1.5e10 + _beside_flow(survey, steps)
     return Budget(triangles, nodes, memory, assembly, stepping)
 
 
@@ -156,8 +157,17 @@ def _grid_budget(survey: Survey, sheet: Sheet, panels: int, memory: float) -> Bu
     steps = _steps(survey)
     # the bed's images are sums over nodes, which cost little beside the fine sheet: measured
     a_panel = 0.005 if math.isinf(sheet.depth) else 0.01
-    stepping = steps * 8.0 * pair + instants_between(survey) * _INSTANT
+    stepping = steps * 8.0 * pair + _beside_flow(survey, steps)
     return Budget(panels, sheet.size, memory, panels * a_panel, stepping)
+
+
+def _beside_flow(survey: Survey, steps: float) -> float:
+    """Seconds for the sea at the hulls, at steps and at instants, and for what is written then."""
+    assert survey.mesh is not None
+    instants = instants_between(survey)
+    points = 3 * (len(survey.mesh.triangles) - len(survey.water.triangles))
+    sea = _COMPONENT * survey.scattered.count * points * (steps + 2.0 * instants)
+    return sea + instants * _INSTANT
 
 
 def instants_between(survey: Survey) -> int:

@@ -31,7 +31,7 @@ def waves() -> st.SearchStrategy[dict[str, Any]]:
     drawn: dict[str, st.SearchStrategy[Any]] = {
         "heading": number,
         "spreading": above_0,
-        "components": st.integers(1, 10**6),
+        "components": st.integers(1, 10**5),
         "seed": st.integers(0, 2**64 - 1),
         "band": st.tuples(st.floats(0.1, 0.9), st.floats(1.0, 9.0)),
         "peakedness": above_0,
