@@ -25,7 +25,7 @@ from bemwave.geometry.water_surface import expected_triangles, fitted_water, wat
 from bemwave.geometry.waterplane import closed_bodies
 from bemwave.handoff.box import Box
 from bemwave.handoff.plan import grid_quadrature, water_quadrature
-from bemwave.running.route import choose
+from bemwave.running.route import MOST_TRIANGLES, choose
 from bemwave.running.sea import incident_sea, length_of_period, period_of_length, scattered_sea
 from bemwave.stepping.absorber import Layer, layer_for
 from bemwave.stepping.damped_line import Behind
@@ -131,7 +131,8 @@ def survey(case: Case) -> Survey:
     periods = _periods(case, sea, scattered, list(_periods_made(case, hulls, files)))
     check_layout(hulls + riders, useful_water(case))
     _refuse_without_waterplane(riders)
-    route = choose(case, hulls, _expected_triangles(case, periods, hulls))
+    expected = _expected_triangles(case, periods, hulls)
+    route = choose(case, hulls, expected)
     _refuse_single_on_panels(case, route)
     layer = _layer(case, periods, behind(route[0], closed))
     outline = _outline(case, 0.0 if layer is None else layer.width)
@@ -143,7 +144,7 @@ def survey(case: Case) -> Survey:
         outline = Rectangle(*sheet.extent)
         mesh = closed_bodies(hulls) if solved else None
     else:
-        _refuse_on_panels(case)
+        _refuse_on_panels(case, expected)
         meshed = _meshed_water(case, outline, hulls)
         walls = ([RIM] if surface.outline == "circle" else list(SIDES)) if closed else []
         mesh = boundary_mesh(meshed, hulls, walls, water.depth) if solved else None
@@ -308,7 +309,14 @@ def _expected_triangles(case: Case, periods: Periods, hulls: tuple[Hull, ...]) -
     return on_hulls + expected_triangles(outline, case.surface.spacing, hulls, fine)
 
 
-def _refuse_on_panels(case: Case) -> None:
+def _refuse_on_panels(case: Case, expected: int) -> None:
+    if expected > 5 * MOST_TRIANGLES:  # nearer to it the mesh itself tells, with its memory
+        fits = case.surface.spacing * (expected / MOST_TRIANGLES) ** 0.5
+        raise InputError(
+            f"[surface] spacing = {case.surface.spacing:g} m makes about {expected:.2g} triangles; "
+            f"expected at most {MOST_TRIANGLES} on panels: about spacing = {fits:.2g} m would fit, "
+            "or less water"
+        )
     if case.run.history_region is not None:
         raise InputError(
             "[run] history_region was given on route panels; expected it on the grid alone, whose "
