@@ -247,6 +247,8 @@ velocity = [0.5, 0.2]
     + RIDER.replace("[1.0, 0.8]", "[1.0, -1.5]")
 )
 
+GRID_SINGLE = GRID.replace("[run]\n", '[run]\nprecision = "single"\n')
+
 # a later route, body or frame format adds its case here, and every test of interruptions tries it
 CASES = {
     "tank": TANK,
@@ -257,6 +259,7 @@ CASES = {
     "grid": GRID,
     "hump on the grid": GRID_HUMP,
     "grid, moved by file": GRID_MOVED,
+    "grid, single": GRID_SINGLE,
 }
 
 

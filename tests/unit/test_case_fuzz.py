@@ -181,6 +181,7 @@ KEYS = {
         "ramp": ["0.5"],
         "record_every": ["0.25", "0.3"],
         "checkpoint_every": ["0.01"],
+        "precision": ['"single"'],
         "memory_limit": ["0.1", "0.5"],
         "history_region": ["{ size = [2.0, 2.0] }"],
     },
