@@ -135,7 +135,8 @@ def read_manifest(path: Path) -> Manifest:
         for period in _PERIODS:
             content[period] = math.inf if content[period] is None else content[period]
         for group in ("bodies", "riders"):
-            content[group] = {name: Rest(**rest) for name, rest in content[group].items()}
+            rests = content.get(group, {})
+            content[group] = {name: Rest(**rest) for name, rest in rests.items()}
         return Manifest(**content)
     except FileNotFoundError:
         raise InputError(

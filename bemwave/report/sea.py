@@ -15,7 +15,7 @@ from bemwave.report.maps import elevation_maps, height_map, scattered_map
 from bemwave.report.water import water_json
 from bemwave.report.words import number
 
-SEEN = 0.02  # of the water's diagonal: how high a wave should look at first
+SEEN = 0.012  # of the water's diagonal: how high a wave looks at first; hulls are drawn out with it
 
 
 def sea(material: Material) -> Section:

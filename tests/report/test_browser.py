@@ -186,8 +186,11 @@ note();
 def test_the_button_plays_at_the_pace_of_the_clock(look: Open) -> None:
     driver = look()
     move_slider(driver, "time", 0)
-    passed, told, _ = driver.execute_async_script(WATCH, 2.5)[-1]
-    assert told == pytest.approx(passed, abs=0.4)
+    passed, told, _ = np.array(driver.execute_async_script(WATCH, 2.5)).T
+    # it was drawn at some moment between two looks, which a busy machine takes seldom
+    last = np.flatnonzero(np.diff(told))[-1]
+    assert told[-1] > 1.0
+    assert passed[last] - 0.4 < told[-1] < passed[last + 1] + 0.4
 
 
 def test_the_slider_changes_the_picture(look: Open) -> None:
@@ -243,6 +246,22 @@ def test_the_canvas_holds_water_and_the_names_of_things(look: Open) -> None:
     image = picture(driver, ".stage canvas")
     blue = (image[..., 2] > image[..., 0] + 30).mean()
     assert blue > 0.1
+
+
+def test_names_stand_clear_of_one_another_and_inside_the_picture(look: Open) -> None:
+    driver = look(360)
+    holder = driver.find_element(By.CSS_SELECTOR, ".stage").rect
+    spans = driver.find_elements(By.CSS_SELECTOR, ".labels span")
+    boxes = [span.rect for span in spans if span.is_displayed()]
+    assert len(boxes) >= 5
+    for k, one in enumerate(boxes):
+        assert one["x"] + one["width"] <= holder["x"] + holder["width"] + 1
+        for other in boxes[:k]:
+            gaps = [
+                max(one[at], other[at]) - min(one[at] + one[size], other[at] + other[size])
+                for at, size in (("x", "width"), ("y", "height"))
+            ]
+            assert max(gaps) > -0.5
 
 
 def test_less_motion_means_a_still_a_second(look: Open) -> None:
