@@ -6,21 +6,22 @@ A checkpoint is one file: a line with the SHA-256 of the rest, then a NumPy arch
 from __future__ import annotations
 
 import hashlib
-import io
 import json
 import zipfile
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from io import BufferedRandom, BufferedReader
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from bemwave.records.folder import write_whole
+from bemwave.records.folder import whole
 
 KEPT = 2
-_MARK = b"bemwave checkpoint 1 sha256 "
+_MARK = b"bemwave checkpoint 2 sha256 "
+_LENGTH = len(_MARK) + 64 + 1  # of the first line
 _FACTS = "facts"
 
 
@@ -49,13 +50,16 @@ def write_checkpoint(checkpoint: Checkpoint, folder: Path, number: int) -> Path:
     number : int
         Grows from one checkpoint to the next: the step it was made after.
     """
-    archive = io.BytesIO()
     facts = np.frombuffer(json.dumps(checkpoint.facts).encode("utf-8"), dtype=np.uint8)
-    np.savez(archive, allow_pickle=False, **{_FACTS: facts, **checkpoint.arrays})
-    body = archive.getvalue()
     folder.mkdir(parents=True, exist_ok=True)
     path = folder / f"{number:012d}.ckpt"
-    write_whole(path, _MARK + hashlib.sha256(body).hexdigest().encode("ascii") + b"\n" + body)
+    # not made in memory first: it may be the larger part of what the run takes
+    with whole(path) as beside, beside.open("w+b") as file:
+        file.write(bytes(_LENGTH))
+        np.savez(file, allow_pickle=False, **{_FACTS: facts, **checkpoint.arrays})
+        head = _head(file)
+        file.seek(0)
+        file.write(head)
     for old in folder.glob("*.ckpt"):  # halves that an interrupted write left, too
         if old not in _newest_first(folder)[:KEPT]:
             old.unlink()
@@ -94,16 +98,21 @@ def _newest_first(folder: Path) -> list[Path]:
 def _read(path: Path) -> Checkpoint | None:
     """The checkpoint in a file, or None if the file is not what was written."""
     try:
-        head, _, body = path.read_bytes().partition(b"\n")
-    except OSError:
-        return None
-    if head != _MARK + hashlib.sha256(body).hexdigest().encode("ascii"):
-        return None
-    try:
-        with np.load(io.BytesIO(body), allow_pickle=False) as archive:
-            if any(entry.compress_type for entry in archive.zip.infolist()):
-                return None  # not how it is written; it might unfold without end
-            arrays = {name: archive[name] for name in archive.files}
+        with path.open("rb") as file:
+            head = _head(file)
+            file.seek(0)
+            if file.read(len(head)) != head:
+                return None
+            with np.load(file, allow_pickle=False) as archive:
+                if any(entry.compress_type for entry in archive.zip.infolist()):
+                    return None  # not how it is written; it might unfold without end
+                arrays = {name: archive[name] for name in archive.files}
         return Checkpoint(arrays, json.loads(arrays.pop(_FACTS).tobytes()))
-    except (ValueError, KeyError, MemoryError, zipfile.BadZipFile):
+    except (OSError, ValueError, KeyError, MemoryError, zipfile.BadZipFile):
         return None
+
+
+def _head(file: BufferedReader | BufferedRandom) -> bytes:
+    """The first line that a file should have."""
+    file.seek(_LENGTH)
+    return _MARK + hashlib.file_digest(file, "sha256").hexdigest().encode("ascii") + b"\n"

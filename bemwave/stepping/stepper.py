@@ -182,12 +182,17 @@ class Stepper:
         return self.count >= STENCIL - 1 and time <= (self.count - after + 1e-9) * self.step
 
     def history(self) -> dict[str, Array]:
-        """What `restore` needs to go on bit for bit, beside the count of steps."""
-        return {"potentials": np.array(self._potentials), "mean": self._mean.copy()}
+        """What `restore` needs to go on bit for bit, beside the count of steps.
+
+        These are the stepper's own arrays, and change with its next step.
+        """
+        kept = {f"potential {n}": potential for n, potential in enumerate(self._potentials)}
+        return {**kept, "mean": self._mean}
 
     def restore(self, history: dict[str, Array], count: int) -> None:
         """Go back to where `history()` was taken, after `count` steps."""
-        self._potentials = [np.array(potential, order="F") for potential in history["potentials"]]
+        kept = [history[f"potential {n}"] for n in range(len(history) - 1)]
+        self._potentials = [np.array(potential, order="F") for potential in kept]
         self._mean, self.count = np.array(history["mean"], order="F"), count
 
     def parts_at(self, time: float) -> tuple[Array, Array]:

@@ -36,10 +36,11 @@ def test_a_wave_train_keeps_phase_and_amplitude_for_1000_periods(depth):
     stepper, first = Stepper(flow, G, step, []), STENCIL - 1
     mean = np.sinc(0.5 * w * step / math.pi) * np.cos(phase - w * (first - 0.5) * step)
     past = np.array([potential(count) for count in range(STENCIL)])
-    stepper.restore({"potentials": past, "mean": mean[:, None]}, first)
+    kept = {f"potential {n}": potential for n, potential in enumerate(past)}
+    stepper.restore({**kept, "mean": mean[:, None]}, first)
     while stepper.time < 1000 * 2 * math.pi / w:
         stepper.advance()
-    found = stepper.history()["potentials"][-1]
+    found = list(stepper.history().values())[-2]
     # amplitude and phase of what is found over what should be
     train = np.exp(1j * phase)
     wave = (train @ found[:, 0]) / (train @ potential(stepper.count)[:, 0])

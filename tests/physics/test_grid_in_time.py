@@ -64,9 +64,9 @@ def energy_over(flow, stepper, until):
     while stepper.time < until:
         stepper.advance()
         history = stepper.history()
-        if len(history["potentials"]) > 1:
-            before, after = history["potentials"][-2:]
-            mean = history["mean"]
+        *potentials, mean = history.values()
+        if len(potentials) > 1:
+            before, after = potentials[-2:]
             moving = flow.mass @ march.flux(after, still)
             kept.append(0.5 * float((G * mean * (flow.mass @ mean) + before * moving).sum()))
             times.append(stepper.time)

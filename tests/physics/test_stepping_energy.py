@@ -131,7 +131,7 @@ def test_the_absorber_only_takes_energy(seed):
         if stepper.count > 1:
             # kept by free steps to the last bit: g E'ME/2 + phi_n' M A_dt phi_n+1/2
             history = stepper.history()
-            before, after = (p[:, 0] for p in history["potentials"][-2:])
+            before, after = (p[:, 0] for p in list(history.values())[-3:-1])
             mean = history["mean"][:, 0]
             lifted, moving = flow.mass @ mean, flow.mass @ (exact @ after)
             kept.append(0.5 * (G * mean @ lifted + before @ moving))

@@ -160,7 +160,7 @@ def test_two_hundred_flips_before_resuming(
 
 
 def test_a_checkpoint_cannot_bring_code_or_endless_data(tmp_path: Path) -> None:
-    mark = b"bemwave checkpoint 1 sha256 "
+    mark = b"bemwave checkpoint 2 sha256 "
     for archive in (_pickled(io.BytesIO(), pickle.dumps(print)), _folded(io.BytesIO())):
         head = mark + hashlib.sha256(archive).hexdigest().encode()
         (tmp_path / "000000000001.ckpt").write_bytes(head + b"\n" + archive)
