@@ -27,10 +27,9 @@ _COMPONENT = 1e-8  # s, of a component of the sea at one of three points of a hu
 _INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and write them: measured
 
 # bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
-_FIELDS, _PART, _SAMPLED = 380, 213, 120
-_OF_LIBRARIES = 0.12 * GIGABYTE
+_FIELDS, _PART, _SAMPLED = 114, 213, 120
 _ON_PANELS = 0.25 * GIGABYTE  # libraries and kernels together, measured
-_ASSEMBLING = 0.295 * GIGABYTE  # libraries and kernels together on the grid, measured
+_ASSEMBLING, _RUNNING = 0.295 * GIGABYTE, 0.4 * GIGABYTE  # the same on the grid
 _FEW = 170  # rows that stand for all
 
 
@@ -94,8 +93,10 @@ def _on_grid(survey: Survey, mesh: SurfaceMesh, sheet: Sheet) -> tuple[int, int,
     scattered = bool(survey.scattered.count or case.hump or case.pressure)
     moved = any(body.attitude not in ("fixed", "follow") for body in case.body)
     sampled = bool(case.gauge or case.handoff or case.frames)
-    a_node = _FIELDS + _PART * max(1, scattered + moved) + _SAMPLED * sampled
-    running = 8.0 * held + a_node * sheet.size + _OF_LIBRARIES
+    # nine arrays of a part are kept from step to step
+    a_part = _PART - (36 if case.run.precision == "single" else 0)
+    a_node = _FIELDS + a_part * max(1, scattered + moved) + _SAMPLED * sampled
+    running = 8.0 * held + a_node * sheet.size + _RUNNING
     return triangles, sheet.size, max(8.0 * assembling + _ASSEMBLING, running)
 
 

@@ -35,9 +35,9 @@ def on_panels(spacing, edges):
     return Case(**tables)
 
 
-def on_grid(nodes, parts, sampled):
+def on_grid(nodes, parts, sampled, panel_size=1.2):
     """A ball in regular waves, held or heaved, in a sea of so many nodes a side; a few steps."""
-    body = {"name": "ball", "form": "sphere", "radius": 6.0, "panel_size": 1.2}
+    body = {"name": "ball", "form": "sphere", "radius": 6.0, "panel_size": panel_size}
     if parts == 2:
         forced = {"mode": "heave", "amplitude": 0.1, "period": 3.0}
         body |= {"attitude": "forced", "forced": forced}
@@ -67,9 +67,11 @@ SIZES = [
     ("panels", 1.4, "closed"),
     ("panels", 1.1, "closed"),
     ("grid", 256, 1, 0),
+    ("grid", 256, 1, 0, 0.45),
     ("grid", 512, 2, 1),
     ("grid", 1024, 1, 0),
     ("grid", 1024, 2, 1),
+    ("grid", 2048, 2, 1),
 ]
 
 
