@@ -27,7 +27,7 @@ _COMPONENT = 1e-8  # s, of a component of the sea at one of three points of a hu
 _INSTANT = 1.5e-3  # s, to read the field off, reckon energy and loads, and write them: measured
 
 # bytes a node of the grid, measured; a part of the field is kept at eight steps and two rates
-_FIELDS, _PART, _SAMPLED = 114, 213, 120
+_FIELDS, _PART, _SAMPLED = 125, 200, 85
 _ON_PANELS = 0.25 * GIGABYTE  # libraries and kernels together, measured
 _ASSEMBLING, _RUNNING = 0.295 * GIGABYTE, 0.4 * GIGABYTE  # the same on the grid
 _FEW = 170  # rows that stand for all
