@@ -12,7 +12,7 @@ from bemwave.flow.state import SurfaceState
 from bemwave.geometry.inside import inside
 from bemwave.handoff import HandoffSampler, free_points
 from bemwave.running.budget import refuse_too_large
-from bemwave.running.solution import STEPS_PER_PERIOD, Solution, nothing_solved
+from bemwave.running.solution import STEPS_PER_PERIOD, Solution, nothing_solved, products
 from bemwave.running.survey import Survey, survey
 
 Array = npt.NDArray[np.float64]
@@ -89,16 +89,19 @@ def steps(case: Case) -> Iterator[LiveState]:
     """
     surveyed = survey(case)
     refuse_too_large(surveyed)
-    solution = None if surveyed.mesh is None else Solution(surveyed)
+    with products(surveyed):
+        solution = None if surveyed.mesh is None else Solution(surveyed)
     field = LiveField(surveyed, solution)
     step = solution.step if solution is not None else _sea_step(surveyed)
     count = int(np.floor(case.run.duration / step + 1e-9))
     for time in step * np.arange(count + 1):
         if solution is None:
             yield LiveState(field, nothing_solved(float(time)))
-        else:
+            continue
+        with products(surveyed):
             solution.advance_to(float(time))
-            yield LiveState(field, solution.state(float(time)))
+            state = solution.state(float(time))
+        yield LiveState(field, state)
 
 
 def _sea_step(surveyed: Survey) -> float:

@@ -47,7 +47,7 @@ from bemwave.running.outputs import EnergyOutput, Output, outputs_of
 from bemwave.running.progress import kept_in, log, progress
 from bemwave.running.resuming import refuse_changed, restore, save, tell_what_changed
 from bemwave.running.sampling import refuse_unfit
-from bemwave.running.solution import Solution, nothing_solved
+from bemwave.running.solution import Solution, nothing_solved, products
 from bemwave.running.survey import Survey, survey
 from bemwave.waves import write_sea
 
@@ -105,6 +105,11 @@ def solve(surveyed: Survey, folder: RunFolder, before: Manifest | None = None) -
 
     `before`: of the run to go on with; None starts anew.
     """
+    with products(surveyed):
+        return _solve(surveyed, folder, before)
+
+
+def _solve(surveyed: Survey, folder: RunFolder, before: Manifest | None) -> Run:
     started = clock.monotonic()
     refuse_unfit(surveyed)
     solution = _assemble(surveyed)

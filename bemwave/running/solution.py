@@ -4,9 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from contextlib import AbstractContextManager, nullcontext
+from functools import cache
 
 import numpy as np
 import numpy.typing as npt
+from threadpoolctl import ThreadpoolController
 
 from bemwave.bodies.loads import BodyLoads
 from bemwave.bodies.modes import panels_of, stiffness
@@ -183,6 +186,23 @@ def _flow(survey: Survey, progress: Callable[[float], None]) -> PanelFlow | Grid
         mirrors=survey.mirrors,
         progress=progress,
     )
+
+
+def products(survey: Survey) -> AbstractContextManager[object]:
+    """While it lasts, dense products are made on one thread if the route is the grid.
+
+    Its products are too small to gain by more, and on a machine that does other work as well each
+    would wait for the busier core.
+    """
+    if survey.sheet is None:
+        return nullcontext()
+    one: AbstractContextManager[object] = _libraries().limit(limits=1, user_api="blas")
+    return one
+
+
+@cache
+def _libraries() -> ThreadpoolController:
+    return ThreadpoolController()
 
 
 def nothing_solved(time: float) -> SurfaceState:
