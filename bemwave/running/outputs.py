@@ -28,7 +28,6 @@ from bemwave.running.survey import Survey
 Array = npt.NDArray[np.float64]
 
 
-
 class Output(Protocol):
     """One output of a run."""
 
@@ -245,7 +244,6 @@ def recorded(survey: Survey) -> npt.NDArray[np.int64] | None:
 def fine_times(survey: Survey) -> Array:
     """Instants of gauges, loads and energy: every record, and enough between to draw waves."""
     return np.linspace(0.0, survey.case.run.duration, instants_between(survey) + 1)
-
 
 
 def dry_places(survey: Survey, xy: Array) -> npt.NDArray[np.bool_]:
