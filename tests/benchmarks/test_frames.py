@@ -39,6 +39,7 @@ def test_a_hundred_frames(benchmark, tmp_path, formats):
     assert frames.count == 100
 
 
+@pytest.mark.slow
 def test_memory_does_not_grow_with_the_frames(tmp_path):
     pytest.importorskip("pxr")
     # in a process of its own: the greatest memory of this one may be of another test

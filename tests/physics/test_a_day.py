@@ -18,6 +18,10 @@ from bemwave.records.energy import read_energy
 from bemwave.running import run
 
 DAY = 86400.0  # s
+DURATIONS = [
+    pytest.param(2000.0, marks=pytest.mark.slow),
+    pytest.param(DAY, marks=pytest.mark.long),
+]
 BOX = {"name": "barge", "form": "box", "length": 80.0, "beam": 40.0, "draught": 12.0}
 WATER = {"depth": 30.0}
 
@@ -42,7 +46,7 @@ def basin(duration: float) -> Case:
     )
 
 
-@pytest.mark.parametrize("duration", [2000.0, pytest.param(DAY, marks=pytest.mark.long)])
+@pytest.mark.parametrize("duration", DURATIONS)
 def test_a_basin_with_a_held_hull_keeps_its_energy(
     duration: float, tmp_path: Path, needs_gmsh: None
 ) -> None:
@@ -75,7 +79,7 @@ def open_water(duration: float, home: Path) -> Case:
     )
 
 
-@pytest.mark.parametrize("duration", [2000.0, pytest.param(DAY, marks=pytest.mark.long)])
+@pytest.mark.parametrize("duration", DURATIONS)
 def test_open_water_on_the_grid_comes_to_rest_and_stays_so(duration: float, tmp_path: Path) -> None:
     times, energy = energy_of(open_water(duration, tmp_path), tmp_path / "run")
     peak, spans = energy.max(), np.array_split(energy[times > MOVED], round(duration / 200.0))
