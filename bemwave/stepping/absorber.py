@@ -28,7 +28,7 @@ from bemwave.stepping.damped_line import Behind, Waves, returned
 Array = npt.NDArray[np.float64]
 
 LIMIT = 0.005  # reflected, and passed on: what a layer of automatic width keeps to
-NARROWEST, WIDEST = 0.02, 10.0  # of the longest waves: a given width beyond is a slip of the pen
+NARROWEST, WIDEST = 0.02, 25.0  # of the longest waves: a given width beyond is a slip of the pen
 
 _STRENGTHS = np.geomspace(0.3, 8.0, 26)  # tried, over the waves' frequency
 
@@ -101,7 +101,7 @@ def layer_for(
             raise InputError(
                 f"[surface] absorber = {width:g} m was given for waves of up to {wavelength:.3g} m "
                 f"and a spacing of {spacing:g} m; expected a width from {narrowest:.3g} to "
-                f'{widest:.3g} m, or "auto"'
+                f'{widest:.4g} m, or "auto"'
             )
         return _tuned(width, waves, spacing, behind)
     first = math.ceil(wavelength / spacing * (1.0 - 1e-9))
