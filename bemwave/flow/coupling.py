@@ -32,6 +32,7 @@ from bemwave.flow.images import Images
 from bemwave.flow.sheet import Complex, Sheet, touched
 from bemwave.geometry.patterns import grid_triangles
 from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import potential_at, velocity_at
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
@@ -257,9 +258,9 @@ class _Rule:
         for start in range(0, len(used), POINTS):
             part = used[start : start + POINTS]
             at = np.ascontiguousarray(self.at[part])
-            velocity = kernel.velocity_at(at, table, triangles, curls, len(nodes), *around)[1]
+            velocity = velocity_at(at, table, triangles, curls, len(nodes), *around)[1]
             slope = np.einsum("pcn,pc->pn", velocity, self.normal[part])
-            level = kernel.potential_at(at, table, triangles, len(nodes), *around)[1]
+            level = potential_at(at, table, triangles, len(nodes), *around)[1]
             self._add(result, part, (weights @ slope.T).T, (weights @ level.T).T)
         return result
 

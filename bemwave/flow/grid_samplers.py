@@ -20,7 +20,7 @@ from bemwave.flow.images import make_images
 from bemwave.flow.samplers import influences, under_water
 from bemwave.flow.sheet import Sheet
 from bemwave.flow.state import SurfaceState
-from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import potential_at
 
 Array = npt.NDArray[np.float64]
 Bools = npt.NDArray[np.bool_]
@@ -121,7 +121,7 @@ class GridSamplers:
         angle = np.zeros(len(points))
         for corners, table in ((e.hull, e.hull_table), (e.water, e.water_table)):
             if len(corners):
-                seen = kernel.potential_at(points, table, corners, len(e.points), *around)[1]
+                seen = potential_at(points, table, corners, len(e.points), *around)[1]
                 angle += seen.sum(axis=1)
         return np.abs(angle) > 0.5
 

@@ -20,7 +20,7 @@ from bemwave.flow.lattice import potentials
 from bemwave.flow.recovery import Recovery, recover
 from bemwave.flow.state import SurfaceState
 from bemwave.geometry.surface_mesh import SurfaceMesh
-from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import potential_at, velocity_at
 
 Array = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
@@ -239,9 +239,9 @@ def influences(
     rows = components * len(points)
     if components == 3:
         curls = hat_curls(vertices, table)
-        single, double = kernel.velocity_at(points, table, corners, curls, len(nodes), *around)
+        single, double = velocity_at(points, table, corners, curls, len(nodes), *around)
     else:
-        single, double = kernel.potential_at(points, table, corners, len(nodes), *around)
+        single, double = potential_at(points, table, corners, len(nodes), *around)
         of_flux, of_dipoles = potentials(images.beyond, vertices, table[:, 9:12])
         single += of_flux
         far = np.zeros(len(nodes))

@@ -1,7 +1,6 @@
-"""Integrals of the Laplace kernel over flat triangles, between triangles and at points.
+"""Integrals of the Laplace kernel over flat triangles, and between them; at points: `points`.
 
-Everything here is a plain function on arrays, compiled by numba; functions that call each
-other share this file, so that a cached compilation is never older than what it calls.
+Everything here is a plain function on arrays, compiled by numba.
 Loops run in parallel over targets only, each written by one thread: results do not depend
 on the number of threads.
 
@@ -37,10 +36,6 @@ FOUR_PI = 4.0 * math.pi
 # touching, or as near.  Chosen so that the single layer stays positive definite.
 TOUCHING = 1.05
 NEAR = 4.0
-
-# Distance of a point from a triangle's centroid over its radius, beyond which the rule of three
-# points has the triangle's potential to 2e-5 and its velocity to 1e-4.
-DISTANT = 10.0
 
 # Columns of the packed triangle table.
 _VERTEX, _NORMAL, _EDGE, _LENGTH, _CENTROID, _RADIUS, _AREA, _WIDTH = 0, 9, 12, 21, 24, 27, 28, 29
@@ -104,7 +99,7 @@ def pack(vertices: Array) -> Array:
 
 
 @njit(cache=True, error_model="numpy", inline="always")
-def _edge_sums(x: float, y: float, z: float, tri: Array) -> Any:
+def edge_sums(x: float, y: float, z: float, tri: Array) -> Any:
     """Per edge: log term and in-plane distance; then height above the plane and solid angle."""
     ax, ay, az = tri[0] - x, tri[1] - y, tri[2] - z
     bx, by, bz = tri[3] - x, tri[4] - y, tri[5] - z
@@ -132,16 +127,16 @@ def _edge_sums(x: float, y: float, z: float, tri: Array) -> Any:
 
 
 @njit(cache=True, error_model="numpy", inline="always")
-def _potential(x: float, y: float, z: float, tri: Array) -> float:
+def uniform_potential(x: float, y: float, z: float, tri: Array) -> float:
     """int 1/r over the triangle."""
-    g0, g1, g2, d0, d1, d2, height, angle = _edge_sums(x, y, z, tri)
+    g0, g1, g2, d0, d1, d2, height, angle = edge_sums(x, y, z, tri)
     return d0 * g0 + d1 * g1 + d2 * g2 - height * angle
 
 
 @njit(cache=True, error_model="numpy", inline="always")
-def _hat_angles(x: float, y: float, z: float, tri: Array) -> Any:
+def hat_angles(x: float, y: float, z: float, tri: Array) -> Any:
     """int hat_j d(1/r)/dn' over the triangle for its three hats; zero in the triangle's plane."""
-    g0, g1, g2, d0, d1, d2, height, angle = _edge_sums(x, y, z, tri)
+    g0, g1, g2, d0, d1, d2, height, angle = edge_sums(x, y, z, tri)
     if abs(height) < 1e-12 * tri[27]:
         return 0.0, 0.0, 0.0
     mx = tri[12] * g0 + tri[15] * g1 + tri[18] * g2
@@ -169,7 +164,7 @@ def _mean_potential(target: Array, source: Array, sign: Array, shift: Array, rul
         x = sign[0] * (_corner_sum(target, l0, l1, l2, 0) - shift[0])
         y = sign[1] * (_corner_sum(target, l0, l1, l2, 1) - shift[1])
         z = sign[2] * (_corner_sum(target, l0, l1, l2, 2) - shift[2])
-        total += rule[q, 3] * _potential(x, y, z, source)
+        total += rule[q, 3] * uniform_potential(x, y, z, source)
     return total * target[28]
 
 
@@ -182,7 +177,7 @@ def _separation(target: Array, source: Array, sign: Array, shift: Array) -> floa
 
 
 @njit(cache=True, error_model="numpy")
-def _rule_points(table: Array, rule: Array) -> Array:
+def rule_points(table: Array, rule: Array) -> Array:
     """(3, points, m) coordinates of a rule's points on every triangle."""
     points = np.empty((3, rule.shape[0], table.shape[0]))
     for axis in range(3):
@@ -263,7 +258,7 @@ def single_layer(
     (k, n, m) [m^3].
     """
     out = np.zeros((weights.shape[1], targets.shape[0], sources.shape[0]))
-    points = _rule_points(sources, THREE)
+    points = rule_points(sources, THREE)
     for s in prange(targets.shape[0]):
         _single_layer_row(s, 0, targets, sources, points, signs, shifts, weights, out)
     return out
@@ -277,7 +272,7 @@ def single_layer_self(table: Array, signs: Array, shifts: Array, weights: Array)
     """
     n = table.shape[0]
     out = np.zeros((weights.shape[1], n, n))
-    points = _rule_points(table, THREE)
+    points = rule_points(table, THREE)
     for pair in prange((n + 1) // 2):
         # a long row and a short one together, so that threads get equal shares
         _single_layer_row(pair, pair, table, table, points, signs, shifts, weights, out)
@@ -329,7 +324,7 @@ def double_layer(
     (n, nodes) [m^2]; a triangle has no effect on points of its own plane.
     """
     out = np.zeros((targets.shape[0], nodes))
-    points = _rule_points(sources, THREE)
+    points = rule_points(sources, THREE)
     normals = np.ascontiguousarray(sources[:, 9:12].T)
     for s in prange(targets.shape[0]):
         target = targets[s]
@@ -359,7 +354,7 @@ def double_layer(
                         x = sign[0] * (_corner_sum(target, l0, l1, l2, 0) - shift[0])
                         y = sign[1] * (_corner_sum(target, l0, l1, l2, 1) - shift[1])
                         z = sign[2] * (_corner_sum(target, l0, l1, l2, 2) - shift[2])
-                        a0, a1, a2 = _hat_angles(x, y, z, source)
+                        a0, a1, a2 = hat_angles(x, y, z, source)
                         w = rule[q, 3] * target[28]
                         h0, h1, h2 = h0 + w * a0, h1 + w * a1, h2 + w * a2
                 scale = weights[image] / FOUR_PI
@@ -367,199 +362,3 @@ def double_layer(
                 out[s, corners[t, 1]] += scale * h1
                 out[s, corners[t, 2]] += scale * h2
     return out
-
-
-# Triangles whose influences on a point are summed over the images before they are handed on:
-# few enough to stay in the fastest cache.
-TILE = 256
-
-
-@njit(
-    cache=True, error_model="numpy", fastmath={"reassoc", "contract", "arcp", "afn", "nsz"}
-)
-def _far_dipoles(
-    x: float, y: float, z: float, weight: float, geometry: Array, points: Array, sums: Array
-) -> None:
-    """Adds 1/r and (x - x').n'/r^3 at three points of each triangle that is far, else nothing."""
-    share = weight / 3.0
-    for t in range(sums.shape[1]):
-        dx, dy, dz = x - geometry[0, t], y - geometry[1, t], z - geometry[2, t]
-        far = dx * dx + dy * dy + dz * dz > geometry[3, t]
-        for q in range(3):
-            dx, dy, dz = x - points[0, q, t], y - points[1, q, t], z - points[2, q, t]
-            square = dx * dx + dy * dy + dz * dz
-            source = share * geometry[4, t] / math.sqrt(square)
-            height = dx * geometry[5, t] + dy * geometry[6, t] + dz * geometry[7, t]
-            sums[0, t] += source if far else 0.0
-            sums[1 + q, t] += source * height / square if far else 0.0
-
-
-@njit(
-    cache=True, error_model="numpy", fastmath={"reassoc", "contract", "arcp", "afn", "nsz"}
-)
-def _far_pulls(
-    x: float, y: float, z: float, weight: float, geometry: Array, points: Array, sums: Array
-) -> None:
-    """Adds the gradient of 1/r at three points of each triangle that is far, else nothing."""
-    share = -weight / 3.0
-    for t in range(sums.shape[1]):
-        dx, dy, dz = x - geometry[0, t], y - geometry[1, t], z - geometry[2, t]
-        far = dx * dx + dy * dy + dz * dz > geometry[3, t]
-        ex, ey, ez = 0.0, 0.0, 0.0
-        for q in range(3):
-            dx, dy, dz = x - points[0, q, t], y - points[1, q, t], z - points[2, q, t]
-            square = dx * dx + dy * dy + dz * dz
-            pull = share * geometry[4, t] / (square * math.sqrt(square))
-            ex, ey, ez = ex + pull * dx, ey + pull * dy, ez + pull * dz
-        # chosen, not multiplied by zero: a point of a near triangle may coincide
-        sums[0, t] += ex if far else 0.0
-        sums[1, t] += ey if far else 0.0
-        sums[2, t] += ez if far else 0.0
-
-
-@njit(cache=True, error_model="numpy", inline="always")
-def _is_near(x: float, y: float, z: float, tri: Array) -> bool:
-    dx, dy, dz = x - tri[24], y - tri[25], z - tri[26]
-    return not dx * dx + dy * dy + dz * dz > DISTANT * DISTANT * tri[27] * tri[27]
-
-
-@njit(cache=True, error_model="numpy")
-def _far_geometry(sources: Array) -> Array:
-    """(8, m) centroid, squared distance beyond which it is far, area and normal, by rows."""
-    rows = np.empty((8, sources.shape[0]))
-    for t in range(sources.shape[0]):
-        rows[0:3, t] = sources[t, 24:27]
-        rows[3, t] = DISTANT * DISTANT * sources[t, 27] * sources[t, 27]
-        rows[4, t] = sources[t, 28]
-        rows[5:8, t] = sources[t, 9:12]
-    return rows
-
-
-@njit(cache=True, error_model="numpy", parallel=True)
-def potential_at(
-    x: Array,
-    sources: Array,
-    corners: Ints,
-    nodes: int,
-    signs: Array,
-    shifts: Array,
-    weights: Array,
-) -> tuple[Array, Array]:
-    """Potentials at points: of uniform sources, and minus those of linear dipoles.
-
-    Parameters
-    ----------
-    x : (n, 3) points [m].  Others as in `double_layer`.
-
-    Returns
-    -------
-    (n, m) int G per triangle [m], and (n, nodes) - int hat_j dG/dn' per node.
-    """
-    single = np.zeros((x.shape[0], sources.shape[0]))
-    double = np.zeros((x.shape[0], nodes))
-    geometry, points = _far_geometry(sources), _rule_points(sources, THREE)
-    for p in prange(x.shape[0]):
-        sums = np.empty((4, TILE))
-        for first in range(0, sources.shape[0], TILE):
-            last = min(first + TILE, sources.shape[0])
-            part = sums[:, : last - first]
-            part[:] = 0.0
-            for image in range(signs.shape[0]):
-                px = signs[image, 0] * (x[p, 0] - shifts[image, 0])
-                py = signs[image, 1] * (x[p, 1] - shifts[image, 1])
-                pz = signs[image, 2] * (x[p, 2] - shifts[image, 2])
-                weight = weights[image] / FOUR_PI
-                shape, rule = geometry[:, first:last], points[:, :, first:last]
-                _far_dipoles(px, py, pz, weight, shape, rule, part)
-                for t in range(first, last):
-                    if _is_near(px, py, pz, sources[t]):
-                        h0, h1, h2 = _hat_angles(px, py, pz, sources[t])
-                        single[p, t] += weight * _potential(px, py, pz, sources[t])
-                        double[p, corners[t, 0]] -= weight * h0
-                        double[p, corners[t, 1]] -= weight * h1
-                        double[p, corners[t, 2]] -= weight * h2
-            for t in range(first, last):
-                total, r0, r1, r2 = part[:, t - first]
-                single[p, t] += total
-                rest = (r0 + r1 + r2) / 6.0
-                double[p, corners[t, 0]] -= 0.5 * r0 + rest
-                double[p, corners[t, 1]] -= 0.5 * r1 + rest
-                double[p, corners[t, 2]] -= 0.5 * r2 + rest
-    return single, double
-
-
-@njit(cache=True, error_model="numpy", inline="always")
-def _attraction(x: float, y: float, z: float, tri: Array) -> Any:
-    """Gradient at the point of int 1/r over the triangle."""
-    g0, g1, g2, _d0, _d1, _d2, _height, angle = _edge_sums(x, y, z, tri)
-    return (
-        -(tri[12] * g0 + tri[15] * g1 + tri[18] * g2 + tri[9] * angle),
-        -(tri[13] * g0 + tri[16] * g1 + tri[19] * g2 + tri[10] * angle),
-        -(tri[14] * g0 + tri[17] * g1 + tri[20] * g2 + tri[11] * angle),
-    )
-
-
-@njit(cache=True, error_model="numpy", parallel=True)
-def velocity_at(
-    x: Array,
-    sources: Array,
-    corners: Ints,
-    curls: Array,
-    nodes: int,
-    signs: Array,
-    shifts: Array,
-    weights: Array,
-) -> tuple[Array, Array]:
-    """Gradients of the two potentials of `potential_at`.
-
-    A dipole sheet of strength phi moves the water as the vortex sheet n x grad phi does, uniform
-    on each triangle when phi is linear: grad int phi dG/dn' = (grad int G) x (n x grad phi).
-    The phi must be continuous and zero on open edges of the sheet.
-
-    Parameters
-    ----------
-    curls : (m, 3, 3) n x grad hat_j of each triangle's three hats [1/m].
-
-    Returns
-    -------
-    (n, 3, m) per triangle, (n, 3, nodes) per node.
-    """
-    single = np.zeros((x.shape[0], 3, sources.shape[0]))
-    double = np.zeros((x.shape[0], 3, nodes))
-    geometry, points = _far_geometry(sources), _rule_points(sources, THREE)
-    images = signs.shape[0]
-    for p in prange(x.shape[0]):
-        sums = np.empty((3, TILE))
-        for first in range(0, sources.shape[0], TILE):
-            last = min(first + TILE, sources.shape[0])
-            part = sums[:, : last - first]
-            part[:] = 0.0
-            for image in range(images):
-                sign = signs[image]
-                px = sign[0] * (x[p, 0] - shifts[image, 0])
-                py = sign[1] * (x[p, 1] - shifts[image, 1])
-                pz = sign[2] * (x[p, 2] - shifts[image, 2])
-                weight = weights[image] / FOUR_PI
-                shape, rule = geometry[:, first:last], points[:, :, first:last]
-                _far_pulls(px, py, pz, weight, shape, rule, part)
-                for t in range(first, last):
-                    if _is_near(px, py, pz, sources[t]):
-                        ex, ey, ez = _attraction(px, py, pz, sources[t])
-                        part[0, t - first] += weight * ex
-                        part[1, t - first] += weight * ey
-                        part[2, t - first] += weight * ez
-                if image + 1 < images and (signs[image + 1] == sign).all():
-                    continue  # images that mirror alike are summed before they are turned
-                for t in range(first, last):
-                    ex, ey, ez = part[:, t - first]
-                    single[p, 0, t] += sign[0] * ex
-                    single[p, 1, t] += sign[1] * ey
-                    single[p, 2, t] += sign[2] * ez
-                    for j in range(3):
-                        cx, cy, cz = curls[t, j, 0], curls[t, j, 1], curls[t, j, 2]
-                        node = corners[t, j]
-                        double[p, 0, node] -= sign[0] * (ey * cz - ez * cy)
-                        double[p, 1, node] -= sign[1] * (ez * cx - ex * cz)
-                        double[p, 2, node] -= sign[2] * (ex * cy - ey * cx)
-                part[:] = 0.0
-    return single, double

@@ -5,6 +5,7 @@ import pytest
 
 from bemwave.geometry.forms import sphere
 from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import potential_at, velocity_at
 
 SIGNS, SHIFTS, WEIGHT = np.ones((1, 3)), np.zeros((1, 3)), np.ones(1)
 
@@ -45,8 +46,8 @@ def test_uniform_sources(scene):
     nodes = len(mesh.points)
     curls = np.zeros((len(table), 3, 3))
     around = (mesh.triangles, nodes, SIGNS, SHIFTS, WEIGHT)
-    single, _ = kernel.potential_at(points, table, *around)
-    velocity, _ = kernel.velocity_at(points, table, mesh.triangles, curls, *around[1:])
+    single, _ = potential_at(points, table, *around)
+    velocity, _ = velocity_at(points, table, mesh.triangles, curls, *around[1:])
     error = np.abs(4 * np.pi * single @ strength / potential - 1.0).max()
     off = 4 * np.pi * velocity @ strength - gradient
     slope_error = (np.linalg.norm(off, axis=1) / np.linalg.norm(gradient, axis=1)).max()

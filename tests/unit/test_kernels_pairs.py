@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 
 from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import potential_at, velocity_at
 
 SIGNS, SHIFTS = np.ones((1, 3)), np.zeros((1, 3))
 ONE = np.ones((1, 1))
@@ -52,13 +53,13 @@ def points_of(target, levels=2):
 
 def fine_single(target, source):
     x, weights = points_of(target)
-    single, _ = kernel.potential_at(x, source, CORNERS, 3, SIGNS, SHIFTS, ONE[0])
+    single, _ = potential_at(x, source, CORNERS, 3, SIGNS, SHIFTS, ONE[0])
     return weights @ single[:, 0]
 
 
 def fine_double(target, source):
     x, weights = points_of(target)
-    _, double = kernel.potential_at(x, source, CORNERS, 3, SIGNS, SHIFTS, ONE[0])
+    _, double = potential_at(x, source, CORNERS, 3, SIGNS, SHIFTS, ONE[0])
     return -weights @ double
 
 
@@ -136,7 +137,7 @@ def test_uniform_dipoles_on_a_closed_surface():
     np.testing.assert_allclose(layer.sum(axis=1), -0.5 * table[:, 28], rtol=1e-4)
     inside, outside = np.array([[0.05, 0.1, -0.1]]), np.array([[1.0, 0.9, 0.8]])
     for x, exact in ((inside, 1.0), (outside, 0.0)):
-        _, double = kernel.potential_at(x, table, corners, len(points), SIGNS, SHIFTS, ONE[0])
+        _, double = potential_at(x, table, corners, len(points), SIGNS, SHIFTS, ONE[0])
         assert double.sum() == pytest.approx(exact, abs=1e-12)
 
 
@@ -164,8 +165,8 @@ def test_images_stand_for_reflected_triangles():
     found = (
         kernel.single_layer(other, table, *IMAGES[:2], IMAGES[2][:, None])[0],
         kernel.double_layer(other, table, corners, nodes, *IMAGES),
-        *kernel.potential_at(x, table, corners, nodes, *IMAGES),
-        *kernel.velocity_at(x, table, corners, curls, nodes, *IMAGES),
+        *potential_at(x, table, corners, nodes, *IMAGES),
+        *velocity_at(x, table, corners, curls, nodes, *IMAGES),
     )
     exact = [0.0] * 6
     for sign, shift, weight in zip(*IMAGES, strict=True):
@@ -176,8 +177,8 @@ def test_images_stand_for_reflected_triangles():
         parts = (
             kernel.single_layer(other, image, SIGNS, SHIFTS, ONE)[0],
             kernel.double_layer(other, image, turned, nodes, SIGNS, SHIFTS, ONE[0]),
-            *kernel.potential_at(x, image, turned, nodes, SIGNS, SHIFTS, ONE[0]),
-            *kernel.velocity_at(x, image, turned, its_curls, nodes, SIGNS, SHIFTS, ONE[0]),
+            *potential_at(x, image, turned, nodes, SIGNS, SHIFTS, ONE[0]),
+            *velocity_at(x, image, turned, its_curls, nodes, SIGNS, SHIFTS, ONE[0]),
         )
         exact = [total + weight * part for total, part in zip(exact, parts, strict=True)]
     for one, other_one in zip(found, exact, strict=True):
@@ -206,8 +207,8 @@ def test_results_do_not_depend_on_the_number_of_threads(threads):
             kernel.single_layer(table[:5], table, *IMAGES[:2], columns),
             kernel.single_layer_self(table, *IMAGES[:2], columns),
             kernel.double_layer(table, table, corners, nodes, *IMAGES),
-            *kernel.potential_at(x, table, corners, nodes, *IMAGES),
-            *kernel.velocity_at(x, table, corners, curls, nodes, *IMAGES),
+            *potential_at(x, table, corners, nodes, *IMAGES),
+            *velocity_at(x, table, corners, curls, nodes, *IMAGES),
         )
 
     threads(1)

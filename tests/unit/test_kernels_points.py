@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 
 from bemwave.kernels import panels as kernel
+from bemwave.kernels.points import DISTANT, potential_at, velocity_at
 
 IDENTITY = (np.ones((1, 3)), np.zeros((1, 3)), np.ones(1))
 CORNERS = np.array([[0, 1, 2]])
@@ -87,7 +88,7 @@ def test_potential_of_a_uniform_triangle(number, kind):
     triangle = triangles()[number]
     x = point(kind, triangle, np.random.default_rng(number))
     exact = integral(lambda y, _: 1.0 / np.linalg.norm(x - y, axis=-1), x, triangle)
-    single, _ = kernel.potential_at(x[None], kernel.pack(triangle[None]), CORNERS, 3, *IDENTITY)
+    single, _ = potential_at(x[None], kernel.pack(triangle[None]), CORNERS, 3, *IDENTITY)
     # measured: 7e-15
     assert single[0, 0] == pytest.approx(exact / (4 * np.pi), rel=1e-12)
 
@@ -104,7 +105,7 @@ def test_potential_of_linear_dipoles(number, kind):
         return hats * ((r @ table[0, 9:12]) / np.linalg.norm(r, axis=-1) ** 3)[..., None]
 
     exact = -integral(dipoles, x, triangle) / (4 * np.pi)
-    _, double = kernel.potential_at(x[None], table, CORNERS, 3, *IDENTITY)
+    _, double = potential_at(x[None], table, CORNERS, 3, *IDENTITY)
     # measured: 6e-15; the whole is a share of the solid angle, at most 1/2
     np.testing.assert_allclose(double[0], exact, atol=1e-12)
 
@@ -113,7 +114,7 @@ def test_potential_of_linear_dipoles(number, kind):
 def test_dipoles_have_no_effect_in_their_own_plane(kind):
     for number, triangle in enumerate(triangles()):
         x = point(kind, triangle, np.random.default_rng(number))
-        _, double = kernel.potential_at(x[None], kernel.pack(triangle[None]), CORNERS, 3, *IDENTITY)
+        _, double = potential_at(x[None], kernel.pack(triangle[None]), CORNERS, 3, *IDENTITY)
         assert np.abs(double).max() < 1e-15
 
 
@@ -124,7 +125,7 @@ def test_velocity_of_a_uniform_triangle(number, kind):
     table = kernel.pack(triangle[None])
     x = point(kind, triangle, np.random.default_rng(number))
     exact = integral(attraction(x), x, triangle) / (4 * np.pi)
-    single, _ = kernel.velocity_at(x[None], table, CORNERS, np.zeros((1, 3, 3)), 3, *IDENTITY)
+    single, _ = velocity_at(x[None], table, CORNERS, np.zeros((1, 3, 3)), 3, *IDENTITY)
     # measured: 2e-13
     size = np.linalg.norm(exact)
     np.testing.assert_allclose(single[0, :, 0], exact, atol=1e-10 * size)
@@ -137,14 +138,14 @@ def test_far_away_by_three_points():
         triangle = rng.normal(size=(3, 3))
         table = kernel.pack(triangle[None])
         turn = rng.normal(size=3)
-        away = 1.001 * kernel.DISTANT * table[0, 27] * turn / np.linalg.norm(turn)
+        away = 1.001 * DISTANT * table[0, 27] * turn / np.linalg.norm(turn)
         x = table[0, 24:27] + away
         exact = integral(lambda y, hats, x=x: 1.0 / np.linalg.norm(x - y, axis=-1), x, triangle)
-        single, _ = kernel.potential_at(x[None], table, CORNERS, 3, *IDENTITY)
+        single, _ = potential_at(x[None], table, CORNERS, 3, *IDENTITY)
         # measured: 1.1e-5
         assert single[0, 0] == pytest.approx(exact / (4 * np.pi), rel=2e-5)
         pull = integral(attraction(x), x, triangle) / (4 * np.pi)
-        single, _ = kernel.velocity_at(x[None], table, CORNERS, np.zeros((1, 3, 3)), 3, *IDENTITY)
+        single, _ = velocity_at(x[None], table, CORNERS, np.zeros((1, 3, 3)), 3, *IDENTITY)
         # measured: 5e-5
         assert np.linalg.norm(single[0, :, 0] - pull) < 1e-4 * np.linalg.norm(pull)
 
@@ -177,7 +178,7 @@ def test_velocity_of_a_dipole_sheet(number):
 
     normals = table[:, 9:12]
     exact = sum(integral(dipoles(normals[k]), x, points[corners[k]]) for k in range(5))
-    _, double = kernel.velocity_at(x[None], table, corners, curls, 6, *IDENTITY)
+    _, double = velocity_at(x[None], table, corners, curls, 6, *IDENTITY)
     size = np.linalg.norm(exact) / (4 * np.pi)
     # measured: 1e-13
     np.testing.assert_allclose(double[0, :, 0], exact / (4 * np.pi), atol=1e-10 * size)
