@@ -191,9 +191,9 @@ class GridFlow:
             vector = np.zeros((self.sheet.size, 1))
             vector[self._near, 0] = np.random.default_rng(1).standard_normal(len(self._near))
             vector = self.continuation(vector)
-            still = np.zeros((len(self.elements.hull), 1))
+            still = self.given(np.zeros((len(self.elements.hull), 1)))
             for _ in range(ITERATIONS):
-                image = self.surface_flux(vector, still)
+                image = self.moved(vector, still)[0]
                 ratio = float(np.linalg.norm(image) / np.linalg.norm(vector))
                 vector = image / np.linalg.norm(image)
             largest = max(largest, 1.05 * ratio)
